@@ -1,0 +1,96 @@
+//! From a path or a text to a checked model.
+
+use std::ffi::OsStr;
+use std::fs;
+use std::path::Path;
+use std::sync::Arc;
+
+use sha2::{Digest, Sha256};
+
+use super::draft::Draft;
+use super::fault::{Fault, FaultKind, ModelError, Place};
+use super::{InputFile, Model, table, toml_file};
+
+/// What a table cannot say of itself.
+#[derive(Debug, Clone, Default, PartialEq, Eq)]
+pub struct ReadOptions {
+    /// The state in which every replication starts; it replaces the start of a model file.
+    pub start: Option<String>,
+    /// States that are absorbing although they have no row.
+    pub absorbing: Vec<String>,
+}
+
+impl Model {
+    /// Reads a model: TOML if the name ends in `.toml`, a table (CSV) otherwise.
+    ///
+    /// # Errors
+    /// [`ModelError::Read`] when a file cannot be read, [`ModelError::Faulty`] with every fault otherwise.
+    pub fn read(path: &Path, options: &ReadOptions) -> Result<Self, ModelError> {
+        let (bytes, input) = read_bytes(path)?;
+        let shown = path.display().to_string();
+        let is_toml = path.extension().and_then(OsStr::to_str).is_some_and(|end| end.eq_ignore_ascii_case("toml"));
+        let mut inputs = vec![input];
+        let mut draft = if is_toml {
+            let text = std::str::from_utf8(&bytes).map_err(|error| not_text(&shown, &bytes, error.valid_up_to()))?;
+            let directory = path.parent().unwrap_or(Path::new(""));
+            let (draft, more) = toml_file::read(text, Some(&shown), directory)?;
+            inputs.extend(more);
+            draft
+        } else {
+            let mut draft = Draft::new(path.file_stem().and_then(OsStr::to_str).unwrap_or_default());
+            draft.files.push(Arc::from(shown.as_str()));
+            table::read(&bytes, &mut draft);
+            draft
+        };
+        draft.apply(options);
+        let mut model = draft.check()?;
+        model.inputs = inputs;
+        Ok(model)
+    }
+
+    /// Reads a model from the text of a TOML file; a `moves_file` is looked for in the working directory.
+    ///
+    /// # Errors
+    /// [`ModelError::Faulty`] with every fault.
+    pub fn from_toml(text: &str) -> Result<Self, ModelError> {
+        toml_file::read(text, None, Path::new(""))?.0.check()
+    }
+
+    /// Reads a model from the text of a table: moves (`from,to,probability`) or a square table with names.
+    ///
+    /// # Errors
+    /// [`ModelError::Faulty`] with every fault.
+    pub fn from_table(text: &str, options: &ReadOptions) -> Result<Self, ModelError> {
+        let mut draft = Draft::default();
+        table::read(text.as_bytes(), &mut draft);
+        draft.apply(options);
+        draft.check()
+    }
+}
+
+impl Draft {
+    fn apply(&mut self, options: &ReadOptions) {
+        for name in &options.absorbing {
+            self.absorbing(name);
+        }
+        if let Some(start) = &options.start {
+            self.starts.clear();
+            self.start(start);
+        }
+    }
+}
+
+/// The bytes of a file and its entry among the inputs.
+pub(super) fn read_bytes(path: &Path) -> Result<(Vec<u8>, InputFile), ModelError> {
+    let bytes = fs::read(path).map_err(|source| ModelError::Read { path: path.to_owned(), source })?;
+    let hash = Sha256::digest(&bytes);
+    let sha256 = hash.iter().fold(String::with_capacity(64), |hex, byte| hex + &format!("{byte:02x}"));
+    Ok((bytes, InputFile { file: path.display().to_string(), sha256 }))
+}
+
+fn not_text(file: &str, bytes: &[u8], valid: usize) -> ModelError {
+    let line = bytes[..valid].iter().filter(|b| **b == b'\n').count() as u64 + 1;
+    let place = Place { file: Some(Arc::from(file)), line: Some(line) };
+    let remedy = "save the file as UTF-8";
+    ModelError::Faulty(vec![Fault::new(FaultKind::Syntax, place, "the file is not UTF-8 text", remedy)])
+}

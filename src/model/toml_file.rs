@@ -1,0 +1,381 @@
+//! The reader of model files in TOML: our own schema, every key known, every fault with its line.
+
+use std::collections::HashMap;
+use std::ops::Range;
+use std::path::Path;
+use std::sync::Arc;
+
+use toml::Spanned;
+use toml::de::{DeArray, DeTable, DeValue};
+
+use super::draft::{Draft, DraftMove, NamedList};
+use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean};
+use super::quantity::Quantity;
+use super::tolerance::{Tolerance, ToleranceKey};
+use super::{source, table};
+
+const KEYS: [&str; 11] = [
+    "title",
+    "clock",
+    "clock_unit",
+    "start",
+    "absorbing",
+    "compare",
+    "moves",
+    "moves_file",
+    "classes",
+    "groups",
+    "tolerance",
+];
+/// Keys that the format reserves; this version does not read them yet.
+const RESERVED: [&str; 2] = ["costs", "hits"];
+
+/// Reads the text of a model file. `directory` is where a `moves_file` is looked for.
+pub(super) fn read(
+    text: &str,
+    file: Option<&str>,
+    directory: &Path,
+) -> Result<(Draft, Vec<super::InputFile>), ModelError> {
+    let text = text.strip_prefix('\u{feff}').unwrap_or(text);
+    let mut reader = Reader { draft: Draft::default(), lines: Lines::of(text), inputs: Vec::new() };
+    reader.draft.files.extend(file.map(Arc::from));
+    let (document, errors) = DeTable::parse_recoverable(text);
+    for error in errors {
+        let place = reader.place(&error.span().unwrap_or(0..0));
+        let said = format!("this is not valid TOML: {}", error.message().trim());
+        let remedy = "correct the line; names with blanks or dots need quotes";
+        reader.draft.fault(Fault::new(FaultKind::Syntax, place, said, remedy));
+    }
+    if !reader.draft.faults.is_empty() {
+        return Err(ModelError::Faulty(reader.draft.faults));
+    }
+    reader.model(document.get_ref(), directory)?;
+    Ok((reader.draft, reader.inputs))
+}
+
+struct Reader {
+    draft: Draft,
+    lines: Lines,
+    inputs: Vec<super::InputFile>,
+}
+
+impl Reader {
+    fn line(&self, span: &Range<usize>) -> u64 {
+        self.lines.of_byte(span.start)
+    }
+
+    fn place(&self, span: &Range<usize>) -> Place {
+        self.draft.place(0, self.line(span))
+    }
+
+    fn model(&mut self, document: &DeTable<'_>, directory: &Path) -> Result<(), ModelError> {
+        let entries: HashMap<&str, &Spanned<DeValue<'_>>> =
+            document.iter().map(|(key, value)| (key.get_ref().as_ref(), value)).collect();
+        self.check_keys(document);
+        self.plain_texts(&entries);
+        // States are numbered in the order of the moves, then of the absorbing states.
+        if let Some(moves) = entries.get("moves") {
+            self.register_rows(moves);
+        }
+        if let Some(absorbing) = entries.get("absorbing") {
+            self.absorbing(absorbing);
+        }
+        match (entries.get("moves"), entries.get("moves_file")) {
+            (Some(_), Some(file)) => {
+                let said = "the model has both [moves] and moves_file";
+                let fault = Fault::new(FaultKind::Shape, self.place(&file.span()), said, "keep one of the two");
+                self.draft.fault(fault);
+            }
+            (Some(moves), None) => self.moves(moves),
+            (None, Some(file)) => self.moves_file(file, directory)?,
+            (None, None) => {}
+        }
+        if let Some(start) = entries.get("start") {
+            self.start(start);
+        }
+        if let Some(classes) = entries.get("classes") {
+            self.draft.classes = self.named_lists(classes, "classes");
+        }
+        if let Some(groups) = entries.get("groups") {
+            self.draft.groups = self.named_lists(groups, "groups");
+        }
+        if let Some(compare) = entries.get("compare") {
+            self.compare(compare);
+        }
+        if let Some(tolerance) = entries.get("tolerance") {
+            self.tolerances(tolerance);
+        }
+        Ok(())
+    }
+
+    fn check_keys(&mut self, document: &DeTable<'_>) {
+        for (key, _) in document {
+            let name = key.get_ref().as_ref();
+            let place = self.place(&key.span());
+            if RESERVED.contains(&name) {
+                let said = format!("the key `{name}` is not read by this version");
+                let fault = Fault::new(FaultKind::Unsupported, place, said, "take it out for now");
+                self.draft.fault(fault.valued(name));
+            } else if !KEYS.contains(&name) {
+                let known = KEYS.iter().copied();
+                let remedy = did_you_mean(name, known, &format!("the keys are {}", KEYS.join(", ")));
+                let said = format!("the key `{name}` means nothing here");
+                self.draft.fault(Fault::new(FaultKind::UnknownKey, place, said, remedy).valued(name));
+            }
+        }
+    }
+
+    fn plain_texts(&mut self, entries: &HashMap<&str, &Spanned<DeValue<'_>>>) {
+        if let Some(title) = entries.get("title") {
+            self.draft.title = self.text(title, "title").unwrap_or_default();
+        }
+        if let Some(unit) = entries.get("clock_unit") {
+            self.draft.clock_unit = self.text(unit, "clock_unit");
+        }
+        let Some(clock) = entries.get("clock") else { return };
+        match self.text(clock, "clock").as_deref() {
+            None | Some("steps") => {}
+            Some("rates") => {
+                let said = "clock = \"rates\" is not supported by this version";
+                let fault =
+                    Fault::new(FaultKind::Unsupported, self.place(&clock.span()), said, "use clock = \"steps\"");
+                self.draft.fault(fault.valued("rates"));
+            }
+            Some(other) => {
+                let said = format!("`{other}` is no clock");
+                let fault =
+                    Fault::new(FaultKind::WrongType, self.place(&clock.span()), said, "write clock = \"steps\"");
+                self.draft.fault(fault.valued(other));
+            }
+        }
+    }
+
+    fn register_rows(&mut self, moves: &Spanned<DeValue<'_>>) {
+        for (from, _) in moves.get_ref().as_table().into_iter().flatten() {
+            let line = self.line(&from.span());
+            let state = self.draft.state(from.get_ref(), 0, line);
+            self.draft.states[state as usize].row = Some(line);
+        }
+    }
+
+    fn absorbing(&mut self, absorbing: &Spanned<DeValue<'_>>) {
+        for (name, line) in self.names(absorbing, "absorbing") {
+            let state = self.draft.state(&name, 0, line);
+            self.draft.states[state as usize].absorbing = Some(line);
+        }
+    }
+
+    fn moves(&mut self, moves: &Spanned<DeValue<'_>>) {
+        let Some(table) = self.table(moves, "moves", "[moves] holds one table a state") else { return };
+        for (from, row) in table {
+            let name = from.get_ref().as_ref();
+            let Some(row) = self.table(row, name, "write the moves of a state as { target = probability }") else {
+                continue;
+            };
+            if row.is_empty() {
+                let said = format!("`{name}` has an empty table of moves");
+                let remedy = "give it moves, or declare it absorbing instead";
+                let fault = Fault::new(FaultKind::RowSum, self.place(&from.span()), said, remedy);
+                self.draft.fault(fault.about(name));
+            }
+            let from_state = self.draft.state(name, 0, self.line(&from.span()));
+            for (to, value) in row {
+                let line = self.line(&to.span());
+                let to_state = self.draft.state(to.get_ref(), 0, line);
+                let Some(written) = self.number_text(value, name) else { continue };
+                let place = self.draft.place(0, line);
+                if let Some(value) = self.draft.written(&written, name, place) {
+                    self.draft.moves.push(DraftMove { from: from_state, to: to_state, value, line });
+                }
+            }
+        }
+    }
+
+    fn moves_file(&mut self, value: &Spanned<DeValue<'_>>, directory: &Path) -> Result<(), ModelError> {
+        let Some(name) = self.text(value, "moves_file") else { return Ok(()) };
+        let path = directory.join(&name);
+        let (bytes, input) = source::read_bytes(&path)?;
+        self.inputs.push(input);
+        self.draft.files.push(path.display().to_string().into());
+        self.draft.moves_file = self.draft.files.len() - 1;
+        table::read_moves(&bytes, &mut self.draft);
+        Ok(())
+    }
+
+    fn start(&mut self, start: &Spanned<DeValue<'_>>) {
+        let line = self.line(&start.span());
+        match start.get_ref() {
+            DeValue::String(name) => {
+                let state = self.draft.state(name, 0, line);
+                if let Some(all) = self.draft.written("1", name, Place::default()) {
+                    self.draft.starts.push((state, all, line));
+                }
+            }
+            DeValue::Table(shares) => {
+                for (name, share) in shares {
+                    let line = self.line(&name.span());
+                    let state = self.draft.state(name.get_ref(), 0, line);
+                    let place = self.draft.place(0, line);
+                    let Some(written) = self.number_text(share, "start") else { continue };
+                    if let Some(share) = self.draft.written(&written, "start", place) {
+                        self.draft.starts.push((state, share, line));
+                    }
+                }
+            }
+            other => {
+                let remedy = "write start = \"STATE\", or start = { STATE = share, … }";
+                self.wrong_type("start", other, &start.span(), remedy);
+            }
+        }
+    }
+
+    fn named_lists(&mut self, lists: &Spanned<DeValue<'_>>, key: &str) -> Vec<NamedList> {
+        let mut found = Vec::new();
+        let Some(table) = self.table(lists, key, "write NAME = [\"STATE\", …] below it") else { return found };
+        for (name, members) in table {
+            let line = self.line(&name.span());
+            let members: Vec<String> =
+                self.names(members, name.get_ref()).into_iter().map(|(member, _)| member).collect();
+            if members.is_empty() {
+                let said = format!("`{}` under [{key}] lists nothing", name.get_ref());
+                let fault = Fault::new(FaultKind::Shape, self.draft.place(0, line), said, "list at least one name");
+                self.draft.fault(fault.about(name.get_ref().as_ref()));
+                continue;
+            }
+            found.push(NamedList { name: name.get_ref().to_string(), members, line });
+        }
+        found
+    }
+
+    fn compare(&mut self, compare: &Spanned<DeValue<'_>>) {
+        let mut rows = Vec::new();
+        for (name, line) in self.names(compare, "compare") {
+            match Quantity::parse(&name) {
+                Ok(quantity) => rows.push((quantity, line)),
+                Err(reason) => self.unknown_quantity(&name, line, reason.text, reason.remedy),
+            }
+        }
+        if rows.is_empty() && self.draft.faults.is_empty() {
+            let said = "compare lists nothing";
+            let remedy = "name quantities, or take the key out for the default rows";
+            let fault = Fault::new(FaultKind::Shape, self.place(&compare.span()), said, remedy);
+            self.draft.fault(fault);
+        }
+        self.draft.compare = Some(rows);
+    }
+
+    fn unknown_quantity(&mut self, name: &str, line: u64, text: String, remedy: String) {
+        let fault = Fault::new(FaultKind::UnknownName, self.draft.place(0, line), text, remedy);
+        self.draft.fault(fault.valued(name));
+    }
+
+    fn tolerances(&mut self, tolerance: &Spanned<DeValue<'_>>) {
+        let Some(table) = self.table(tolerance, "tolerance", "write NAME = VALUE below [tolerance]") else { return };
+        for (name, value) in table {
+            let line = self.line(&name.span());
+            let name = name.get_ref().as_ref();
+            if let DeValue::Table(by_argument) = value.get_ref() {
+                for (argument, value) in by_argument {
+                    let line = self.line(&argument.span());
+                    if argument.get_ref() == "default" {
+                        self.tolerance(name, value, line);
+                    } else {
+                        self.tolerance(&format!("{name}:{}", argument.get_ref()), value, line);
+                    }
+                }
+            } else {
+                self.tolerance(name, value, line);
+            }
+        }
+    }
+
+    fn tolerance(&mut self, key: &str, value: &Spanned<DeValue<'_>>, line: u64) {
+        let key = if Quantity::is_name(key) {
+            ToleranceKey::All(key.to_owned())
+        } else {
+            match Quantity::parse(key) {
+                Ok(quantity) => ToleranceKey::One(quantity),
+                Err(reason) => return self.unknown_quantity(key, line, reason.text, reason.remedy),
+            }
+        };
+        let Some(text) = self.number_text(value, "tolerance") else { return };
+        match Tolerance::parse(&text) {
+            Ok(value) => self.draft.tolerances.push((key, value, line)),
+            Err(reason) => {
+                let remedy = "write an absolute one such as 0.005, or a relative one such as \"1 %\"";
+                let fault = Fault::new(FaultKind::WrongType, self.draft.place(0, line), reason, remedy);
+                self.draft.fault(fault.valued(text));
+            }
+        }
+    }
+
+    /// A number or text as written, so that its exact value is not lost in a double.
+    fn number_text(&mut self, value: &Spanned<DeValue<'_>>, what: &str) -> Option<String> {
+        match value.get_ref() {
+            DeValue::String(text) => Some(text.to_string()),
+            DeValue::Float(number) => Some(number.as_str().to_owned()),
+            DeValue::Integer(number) if number.radix() == 10 => Some(number.as_str().to_owned()),
+            other => {
+                let remedy = "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"";
+                self.wrong_type(what, other, &value.span(), remedy);
+                None
+            }
+        }
+    }
+
+    fn text(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Option<String> {
+        match value.get_ref() {
+            DeValue::String(text) => Some(text.to_string()),
+            other => {
+                self.wrong_type(key, other, &value.span(), "put the text in quotes");
+                None
+            }
+        }
+    }
+
+    fn table<'a, 'b>(&mut self, value: &'a Spanned<DeValue<'b>>, key: &str, remedy: &str) -> Option<&'a DeTable<'b>> {
+        let table = value.get_ref().as_table();
+        if table.is_none() {
+            self.wrong_type(key, value.get_ref(), &value.span(), remedy);
+        }
+        table
+    }
+
+    fn names(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Vec<(String, u64)> {
+        let empty = DeArray::new();
+        let items = value.get_ref().as_array().unwrap_or_else(|| {
+            self.wrong_type(key, value.get_ref(), &value.span(), "write a list of names in quotes: [\"a\", \"b\"]");
+            &empty
+        });
+        let mut names = Vec::new();
+        for item in items {
+            if let Some(name) = self.text(item, key) {
+                names.push((name, self.line(&item.span())));
+            }
+        }
+        names
+    }
+
+    fn wrong_type(&mut self, key: &str, value: &DeValue<'_>, span: &Range<usize>, remedy: &str) {
+        let said = format!("`{key}` holds a value of type {}, which does not belong there", value.type_str());
+        let fault = Fault::new(FaultKind::WrongType, self.place(span), said, remedy);
+        self.draft.fault(fault.about(key));
+    }
+}
+
+/// Where each line of a text begins.
+struct Lines(Vec<usize>);
+
+impl Lines {
+    fn of(text: &str) -> Self {
+        Self(
+            std::iter::once(0)
+                .chain(text.bytes().enumerate().filter(|(_, b)| *b == b'\n').map(|(at, _)| at + 1))
+                .collect(),
+        )
+    }
+
+    fn of_byte(&self, at: usize) -> u64 {
+        self.0.partition_point(|start| *start <= at) as u64
+    }
+}
