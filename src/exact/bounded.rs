@@ -1,0 +1,85 @@
+//! Answers with their proven bounds.
+
+use super::dd::Dd;
+
+/// An answer and an interval that certainly holds the truth.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Bounded {
+    /// The answer, rounded to a double.
+    pub value: f64,
+    /// Not above the truth.
+    pub low: f64,
+    /// Not below the truth.
+    pub high: f64,
+}
+
+impl Bounded {
+    /// A number that is known exactly.
+    pub fn exactly(value: f64) -> Self {
+        Self { value, low: value, high: value }
+    }
+
+    /// A double-double within `error` of the truth; `least` is a bound that the quantity obeys anyway.
+    pub(super) fn within(value: Dd, error: f64, least: f64) -> Self {
+        if value.lo == 0.0 && error == 0.0 {
+            return Self::exactly(value.hi);
+        }
+        // The comparisons hold a unit of slack, since the error itself is a rounded number.
+        let slack = error * (1.0 + 1e-10) + f64::MIN_POSITIVE;
+        let low = if value.lo >= slack { value.hi } else { outwards(value.hi, value.lo - slack) };
+        let high = if value.lo <= -slack { value.hi } else { outwards(value.hi, value.lo + slack) };
+        Self { value: value.hi.max(least), low: low.max(least), high: high.max(least) }
+    }
+
+    /// A double-double within the share `relative` of a truth that is not negative.
+    pub(super) fn relative(value: Dd, relative: f64) -> Self {
+        Self::within(value, value.hi * relative * (1.0 + 1e-10), 0.0)
+    }
+
+    /// The same, for a probability.
+    pub(super) fn probability(value: Dd, relative: f64) -> Self {
+        let bounded = Self::relative(value, relative);
+        Self { value: bounded.value.min(1.0), low: bounded.low.min(1.0), high: bounded.high.min(1.0) }
+    }
+
+    /// The square root, for an answer that is not negative.
+    #[must_use]
+    pub fn sqrt(self) -> Self {
+        let value = self.value.sqrt();
+        Self { value, low: self.low.sqrt().next_down().max(0.0), high: self.high.sqrt().next_up() }
+    }
+
+    /// Largest distance between the answer and the truth.
+    pub fn error(&self) -> f64 {
+        (self.high - self.value).max(self.value - self.low)
+    }
+
+    /// Whether a number may be the truth.
+    pub fn contains(&self, value: f64) -> bool {
+        (self.low..=self.high).contains(&value)
+    }
+}
+
+/// `base + step`, rounded away from `base` by one double more than needed.
+fn outwards(base: f64, step: f64) -> f64 {
+    let sum = base + step;
+    if step < 0.0 { sum.min(base).next_down() } else { sum.max(base).next_up() }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn bounds_face_outwards_and_exact_numbers_have_none() {
+        assert_eq!(Bounded::within(Dd::of(21.0), 0.0, 0.0), Bounded::exactly(21.0));
+        let tight = Bounded::within(Dd { hi: 21.0, lo: 1e-17 }, 1e-25, 0.0);
+        assert_eq!(tight.low, 21.0);
+        assert!(tight.high > 21.0 && tight.high <= 21.0f64.next_up().next_up());
+        let wide = Bounded::within(Dd::of(1e-3), 1e-2, 0.0);
+        assert_eq!(wide.low, 0.0);
+        assert!(wide.high > 1.1e-2);
+        let root = Bounded::exactly(2.0).sqrt();
+        assert!(root.low < root.value && root.value < root.high);
+    }
+}

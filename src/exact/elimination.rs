@@ -1,0 +1,186 @@
+//! The whole chain by classes: each is factored once and serves every right-hand side.
+
+use crate::model::{Chain, Progress, Row, Weights};
+
+use super::ExactError;
+use super::dd::{Dd, INPUT, U2, power_of_two};
+use super::envelope::{Class, Factor, Refusal, product};
+use super::kernel::Kernel;
+
+/// One move in double-double.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Move {
+    pub(super) to: u32,
+    pub(super) probability: Dd,
+}
+
+/// The exact probabilities of a row in double-double, each within [`INPUT`] units.
+pub(super) fn probabilities(row: Row<'_>) -> impl Iterator<Item = Move> + '_ {
+    let at = move |i: usize| match row.weights {
+        Weights::Narrow { numerators, denominator } => Dd::of_u64(numerators[i]).over(Dd::of_u64(denominator)),
+        Weights::Wide { numerators, denominator } => {
+            let ((over, up), (under, down)) = (Dd::of_big(&numerators[i]), Dd::of_big(denominator));
+            let ratio = over.over(under);
+            let scale = power_of_two(up - down);
+            Dd { hi: ratio.hi * scale, lo: ratio.lo * scale }
+        }
+    };
+    row.targets.iter().enumerate().map(move |(i, to)| Move { to: *to, probability: at(i) })
+}
+
+/// The factored chain: everything that is reachable and transient.
+#[derive(Debug)]
+pub(super) struct Elimination<'a> {
+    chain: &'a Chain,
+    factors: Vec<Factor>,
+    /// Class and place in it of each state; `u32::MAX` for ends and unreachable states.
+    class_of: Vec<u32>,
+    place_of: Vec<u32>,
+    /// Moves of each state, stays left out.
+    moves: Vec<Vec<Move>>,
+    widest: usize,
+}
+
+/// A number for every state, each within `error` relatively.
+#[derive(Debug, Clone)]
+pub(super) struct Solution {
+    pub(super) of: Vec<Dd>,
+    pub(super) error: f64,
+}
+
+impl<'a> Elimination<'a> {
+    /// Factors every class.
+    ///
+    /// # Errors
+    /// A class that would cost too much is refused before any work; numbers too small for the arithmetic are refused.
+    pub(super) fn of(chain: &'a Chain, progress: &dyn Progress) -> Result<Self, ExactError> {
+        let n = chain.states();
+        let mut class_of = vec![u32::MAX; n];
+        let mut place_of = vec![u32::MAX; n];
+        for (class, states) in chain.components().iter().enumerate() {
+            for (place, state) in states.iter().enumerate() {
+                class_of[*state as usize] = class as u32;
+                place_of[*state as usize] = place as u32;
+            }
+        }
+        let moves: Vec<Vec<Move>> = (0..n)
+            .map(|state| match class_of[state] {
+                u32::MAX => Vec::new(),
+                _ => probabilities(chain.row(state)).filter(|one| one.to as usize != state).collect(),
+            })
+            .collect();
+        let widest = moves.iter().map(Vec::len).max().unwrap_or(0) + 1;
+        let mut all = Self { chain, factors: Vec::new(), class_of, place_of, moves, widest };
+        progress.begin("elimination", "states", Some(chain.components().iter().map(|class| class.len() as u64).sum()));
+        let kernel = Kernel::new();
+        for (number, states) in chain.components().iter().enumerate() {
+            if progress.interrupted() {
+                return Err(ExactError::Interrupted);
+            }
+            let factor = all.class(number, states).factor(kernel).map_err(|why| all.refused(why, states))?;
+            all.factors.push(factor);
+            progress.advance(states.len() as u64);
+        }
+        progress.end();
+        Ok(all)
+    }
+
+    fn class(&self, number: usize, states: &[u32]) -> Class {
+        let mut inside = Vec::with_capacity(states.len());
+        let mut exit = Vec::with_capacity(states.len());
+        for state in states {
+            let (within, out): (Vec<&Move>, Vec<&Move>) = self.moves[*state as usize]
+                .iter()
+                .partition(|one| self.class_of[one.to as usize] as usize == number);
+            inside.push(within.iter().map(|one| (self.place_of[one.to as usize], one.probability)).collect());
+            exit.push(out.iter().fold(Dd::ZERO, |sum, one| sum.plus(one.probability)));
+        }
+        Class { inside, exit, widest: self.widest }
+    }
+
+    fn refused(&self, why: Refusal, states: &[u32]) -> ExactError {
+        let example = self.chain.name(states[0] as usize).to_owned();
+        match why {
+            Refusal::TooLarge { states, work } => ExactError::TooLarge { states, example, work },
+            Refusal::Underflow => ExactError::Underflow { example },
+        }
+    }
+
+    pub(super) fn chain(&self) -> &Chain {
+        self.chain
+    }
+
+    /// Moves of a state, stays left out; empty for ends and unreachable states.
+    pub(super) fn moves(&self, state: usize) -> &[Move] {
+        &self.moves[state]
+    }
+
+    /// Relative error, in units of u², of a sum over the moves of one state.
+    pub(super) fn row_sum_error(&self) -> f64 {
+        U2 * (3.0 * self.widest as f64 + INPUT + 10.0)
+    }
+
+    /// Solves `x = b + P x` over transient states, `x = 0` at ends, for `b` that is not negative: `x = N b`.
+    pub(super) fn column(&self, b: &Solution) -> Result<Solution, ExactError> {
+        let mut x = vec![Dd::ZERO; b.of.len()];
+        let mut errors = vec![0.0f64; self.factors.len()];
+        let mut worst = b.error;
+        for (number, states) in self.chain.components().iter().enumerate().rev() {
+            let factor = &self.factors[number];
+            let mut error = b.error;
+            let mut right: Vec<Dd> = Vec::with_capacity(states.len());
+            for state in states {
+                let mut sum = b.of[*state as usize];
+                for one in &self.moves[*state as usize] {
+                    let class = self.class_of[one.to as usize];
+                    if class != u32::MAX && class as usize != number {
+                        let term = product(one.probability, x[one.to as usize]);
+                        sum = sum.plus(term.map_err(|why| self.refused(why, states))?);
+                        error = error.max(errors[class as usize]);
+                    }
+                }
+                right.push(sum);
+            }
+            factor.solve_column(&mut right).map_err(|why| self.refused(why, states))?;
+            states.iter().zip(right).for_each(|(state, value)| x[*state as usize] = value);
+            errors[number] = error + self.row_sum_error() + factor.error + factor.solve_error();
+            worst = worst.max(errors[number]);
+        }
+        Ok(Solution { of: x, error: worst })
+    }
+
+    /// Solves `y = a + y P` over transient states for `a` that is not negative: `y = a N`.
+    pub(super) fn row(&self, a: &Solution) -> Result<Solution, ExactError> {
+        let mut y = a.of.clone();
+        let mut errors = vec![a.error; self.factors.len()];
+        let mut worst = a.error;
+        for (number, states) in self.chain.components().iter().enumerate() {
+            let factor = &self.factors[number];
+            let mut right: Vec<Dd> = states.iter().map(|state| y[*state as usize]).collect();
+            factor.solve_row(&mut right).map_err(|why| self.refused(why, states))?;
+            // Every arrival from an earlier class was one more addition: at most one a move of the chain.
+            let error = errors[number] + factor.error + factor.solve_error();
+            worst = worst.max(error);
+            for (state, value) in states.iter().zip(right) {
+                y[*state as usize] = value;
+                for one in &self.moves[*state as usize] {
+                    let class = self.class_of[one.to as usize];
+                    if class != u32::MAX && class as usize != number {
+                        let term = product(one.probability, value).map_err(|why| self.refused(why, states))?;
+                        let into = &mut y[one.to as usize];
+                        *into = into.plus(term);
+                        let after = &mut errors[class as usize];
+                        *after = after.max(error) + U2 * 3.0;
+                    }
+                }
+            }
+            for class in &mut errors[number + 1..] {
+                // A product and the given probability, once a class on the way.
+                if *class >= error {
+                    *class += U2 * (INPUT + 5.0) / self.factors.len() as f64;
+                }
+            }
+        }
+        Ok(Solution { of: y, error: worst })
+    }
+}

@@ -1,0 +1,257 @@
+//! Elimination without subtraction inside one communicating class.
+//!
+//! The diagonal of `I − Q` is never formed: a pivot is the sum of what leaves the state, so nothing cancels and every
+//! answer keeps its relative accuracy however rarely the class is left.
+//!
+//! # Formula
+//! With moves `q_ij` (`i ≠ j`) inside the class and exits `r_i` out of it, state `k` is censored by
+//! `s_k = r_k + Σ_{j>k} q_kj`, `f_ik = q_ik / s_k`, `q_ij += f_ik q_kj`, `r_i += f_ik r_k`. Rows are finished one after
+//! another and kept only between their first and last entry, so a band costs what a band must.
+//!
+//! # Accuracy
+//! The bound is derived in [`crate::exact`].
+//!
+//! # Reference
+//! Grassmann, Taksar & Heyman, Oper. Res. 33 (1985) 1107, doi:10.1287/opre.33.5.1107.
+
+use super::dd::{Dd, INPUT, U2};
+use super::kernel::{Kernel, Stretch};
+
+/// Numbers below this could lose their low-order part to underflow.
+pub(super) const SMALLEST: f64 = 1.183_129_797_395_182_6e-271; // 2^-900
+/// Multiply-adds that one class may cost: 2,000 states when every row is full.
+pub(super) const WORK_LIMIT: u64 = 2_700_000_000;
+
+/// The moves of one class in local numbers: for each state the moves inside the class and the sum of those out of it.
+#[derive(Debug)]
+pub(super) struct Class {
+    pub(super) inside: Vec<Vec<(u32, Dd)>>,
+    pub(super) exit: Vec<Dd>,
+    /// Most moves of one state, for the bound of the exit sums.
+    pub(super) widest: usize,
+}
+
+/// The factor of one class.
+#[derive(Debug)]
+pub(super) struct Factor {
+    rows: Vec<FactorRow>,
+    /// Local position of each elimination step.
+    order: Vec<u32>,
+    /// Relative error bound of a solution with exact right-hand side.
+    pub(super) error: f64,
+    /// Longest row, for the bounds of the solves.
+    widest: usize,
+}
+
+#[derive(Debug)]
+struct FactorRow {
+    /// Column of the first entry.
+    first: usize,
+    /// `f` below the diagonal, an unused cell on it, `u` above.
+    entries: Stretch,
+    /// The pivot.
+    leave: Dd,
+}
+
+/// Why a class could not be eliminated.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Refusal {
+    /// The predicted number of multiply-adds passes the limit.
+    TooLarge { states: usize, work: u64 },
+    /// Numbers became too small for double-double arithmetic.
+    Underflow,
+}
+
+impl Class {
+    /// The cheaper of the order as given and its reverse, with the predicted multiply-adds.
+    fn order(&self) -> (Vec<u32>, u64) {
+        let n = self.inside.len() as u32;
+        let forward: Vec<u32> = (0..n).collect();
+        let backward: Vec<u32> = (0..n).rev().collect();
+        let (there, back) = (self.work(&forward), self.work(&backward));
+        if back < there { (backward, back) } else { (forward, there) }
+    }
+
+    /// Multiply-adds that the elimination will take in a given order, saturating above the limit.
+    fn work(&self, order: &[u32]) -> u64 {
+        let position = inverse(order);
+        // Last columns of finished rows that no later row exceeds: the widest row above a column is found by bisection.
+        let mut tops: Vec<(usize, usize)> = Vec::new();
+        let mut widths: Vec<u64> = vec![0];
+        let mut work = 0u64;
+        for (i, state) in order.iter().enumerate() {
+            let columns = self.inside[*state as usize].iter().map(|(to, _)| position[*to as usize] as usize);
+            let (first, mut last) = columns.fold((i, i), |(low, high), column| (low.min(column), high.max(column)));
+            if first < i {
+                let at = tops.partition_point(|(row, _)| *row < first);
+                last = last.max(tops.get(at).map_or(i, |(_, last)| *last));
+            }
+            work = work.saturating_add(widths[i] - widths[first]);
+            if work > 64 * WORK_LIMIT {
+                return work;
+            }
+            widths.push(widths[i] + (last - i) as u64 + 1);
+            while tops.last().is_some_and(|(_, earlier)| *earlier <= last) {
+                tops.pop();
+            }
+            tops.push((i, last));
+        }
+        work
+    }
+
+    /// Eliminates the class.
+    ///
+    /// # Errors
+    /// [`Refusal`] before any work when it would cost too much, or when numbers become too small.
+    ///
+    /// # Complexity
+    /// At most n³/3 multiply-adds for n states; n·b² for a band of width b.
+    pub(super) fn factor(&self, kernel: Kernel) -> Result<Factor, Refusal> {
+        let n = self.inside.len();
+        let (order, work) = self.order();
+        if work > WORK_LIMIT {
+            return Err(Refusal::TooLarge { states: n, work });
+        }
+        let position = inverse(&order);
+        let mut rows: Vec<FactorRow> = Vec::with_capacity(n);
+        let mut exits: Vec<Dd> = Vec::with_capacity(n);
+        // The smallest non-zero entry right of the diagonal, so that a vanishing product is seen before it is formed.
+        let mut smallest: Vec<f64> = Vec::with_capacity(n);
+        let mut widest = self.widest;
+        for (i, state) in order.iter().enumerate() {
+            let moves = &self.inside[*state as usize];
+            let columns = moves.iter().map(|(to, _)| position[*to as usize] as usize);
+            let (first, last) = columns.fold((i, i), |(low, high), column| (low.min(column), high.max(column)));
+            let mut entries = Stretch::zeros(last - first + 1);
+            for (to, q) in moves {
+                entries.set(position[*to as usize] as usize - first, *q);
+            }
+            let mut exit = self.exit[*state as usize];
+            for k in first..i {
+                let q = entries.get(k - first);
+                if q.is_zero() {
+                    continue;
+                }
+                let above: &FactorRow = &rows[k];
+                let f = q.over(above.leave);
+                if f.hi < SMALLEST || f.hi * smallest[k] < SMALLEST {
+                    return Err(Refusal::Underflow);
+                }
+                entries.set(k - first, f);
+                exit = exit.plus(f.times(exits[k]));
+                let from = k + 1 - above.first;
+                let end = above.first + above.entries.hi.len();
+                let missing = end.saturating_sub(first + entries.hi.len());
+                entries.hi.resize(entries.hi.len() + missing, 0.0);
+                entries.lo.resize(entries.lo.len() + missing, 0.0);
+                let range = k + 1 - first..end - first;
+                kernel.add_multiple(
+                    f,
+                    (&above.entries.hi[from..], &above.entries.lo[from..]),
+                    (&mut entries.hi[range.clone()], &mut entries.lo[range]),
+                );
+            }
+            let own = i - first;
+            // What leads back to the state itself is a stay: it has no part in what leaves.
+            entries.set(own, Dd::ZERO);
+            let beyond = own + 1..entries.hi.len();
+            let leave = beyond.clone().fold(exit, |sum, at| sum.plus(entries.get(at)));
+            let least = beyond.map(|at| entries.hi[at]).filter(|x| *x > 0.0).fold(f64::INFINITY, f64::min);
+            let least = if exit.hi > 0.0 { least.min(exit.hi) } else { least };
+            if least < SMALLEST || leave.hi < SMALLEST {
+                return Err(Refusal::Underflow);
+            }
+            widest = widest.max(entries.hi.len());
+            smallest.push(least);
+            exits.push(exit);
+            rows.push(FactorRow { first, entries, leave });
+        }
+        Ok(Factor { rows, order, error: elimination_error(n, widest), widest })
+    }
+}
+
+/// Relative error of `N`, `B` and `h` after eliminating `n` states whose rows have at most `width` entries.
+fn elimination_error(n: usize, width: usize) -> f64 {
+    let step = 3.0 * width as f64 + 25.0;
+    // Step m leaves m states, and moves every answer by at most 2 m times its own error; the given moves count once more.
+    let n = n as f64;
+    U2 * (n * (n + 1.0) * step + 2.0 * n * (INPUT + 3.0 * width as f64))
+}
+
+impl Factor {
+    /// Relative error that a solve adds to those of the factor and of its right-hand side.
+    pub(super) fn solve_error(&self) -> f64 {
+        U2 * self.rows.len() as f64 * 2.0 * (3.0 * self.widest as f64 + 25.0)
+    }
+
+    /// Solves `x = b + Q x` for a right-hand side that is not negative, in place, in local numbers.
+    ///
+    /// # Errors
+    /// [`Refusal::Underflow`].
+    ///
+    /// # Complexity
+    /// Two operations an entry of the factor.
+    pub(super) fn solve_column(&self, b: &mut [Dd]) -> Result<(), Refusal> {
+        let mut x: Vec<Dd> = self.order.iter().map(|state| b[*state as usize]).collect();
+        for (i, row) in self.rows.iter().enumerate() {
+            let mut sum = x[i];
+            for k in row.first..i {
+                sum = sum.plus(product(row.entries.get(k - row.first), x[k])?);
+            }
+            x[i] = sum;
+        }
+        for (i, row) in self.rows.iter().enumerate().rev() {
+            let mut sum = x[i];
+            for j in i + 1..row.first + row.entries.hi.len() {
+                sum = sum.plus(product(row.entries.get(j - row.first), x[j])?);
+            }
+            x[i] = sum.over(row.leave);
+        }
+        self.give_back(&x, b)
+    }
+
+    /// Solves `y = a + y Q` likewise.
+    ///
+    /// # Errors
+    /// [`Refusal::Underflow`].
+    ///
+    /// # Complexity
+    /// Two operations an entry of the factor.
+    pub(super) fn solve_row(&self, a: &mut [Dd]) -> Result<(), Refusal> {
+        let mut y: Vec<Dd> = self.order.iter().map(|state| a[*state as usize]).collect();
+        for (i, row) in self.rows.iter().enumerate() {
+            y[i] = y[i].over(row.leave);
+            for j in i + 1..row.first + row.entries.hi.len() {
+                y[j] = y[j].plus(product(row.entries.get(j - row.first), y[i])?);
+            }
+        }
+        for (i, row) in self.rows.iter().enumerate().rev() {
+            for k in row.first..i {
+                y[k] = y[k].plus(product(row.entries.get(k - row.first), y[i])?);
+            }
+        }
+        self.give_back(&y, a)
+    }
+
+    fn give_back(&self, solution: &[Dd], into: &mut [Dd]) -> Result<(), Refusal> {
+        for (state, value) in self.order.iter().zip(solution) {
+            if !value.hi.is_finite() || (value.hi != 0.0 && value.hi < SMALLEST) {
+                return Err(Refusal::Underflow);
+            }
+            into[*state as usize] = *value;
+        }
+        Ok(())
+    }
+}
+
+/// A product of numbers that are not negative, refused when it could lose its low-order part.
+pub(super) fn product(a: Dd, b: Dd) -> Result<Dd, Refusal> {
+    let p = a.times(b);
+    if p.hi < SMALLEST && !a.is_zero() && !b.is_zero() { Err(Refusal::Underflow) } else { Ok(p) }
+}
+
+fn inverse(order: &[u32]) -> Vec<u32> {
+    let mut position = vec![0; order.len()];
+    order.iter().enumerate().for_each(|(at, state)| position[*state as usize] = at as u32);
+    position
+}
