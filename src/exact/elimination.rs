@@ -4,7 +4,7 @@ use crate::model::{Chain, Progress, Row, Weights};
 
 use super::ExactError;
 use super::dd::{Dd, INPUT, U2, power_of_two};
-use super::envelope::{Class, Factor, Refusal, product};
+use super::envelope::{Class, Factor, Refusal, WORK_LIMIT, product};
 use super::kernel::Kernel;
 
 /// One move in double-double.
@@ -101,8 +101,8 @@ impl<'a> Elimination<'a> {
     fn refused(&self, why: Refusal, states: &[u32]) -> ExactError {
         let example = self.chain.name(states[0] as usize).to_owned();
         match why {
-            Refusal::TooLarge { states, work } => ExactError::TooLarge { states, example, work },
-            Refusal::Underflow => ExactError::Underflow { example },
+            Refusal::TooLarge { states, work } => ExactError::TooLarge { states, example, work, limit: WORK_LIMIT },
+            Refusal::Underflow => ExactError::OutOfRange { example },
         }
     }
 

@@ -1,0 +1,6 @@
+//! (to come)
+
+/// Runs the program.
+pub fn main() -> std::process::ExitCode {
+    todo!()
+}
