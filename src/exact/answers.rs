@@ -7,9 +7,11 @@ use super::linear::Linear;
 use super::support::{Support, only_time};
 use super::{Bounded, ExactError, Law, LawRefusal, Shape};
 
-/// What the law must reach.
+/// What is asked beyond probabilities, means and variances.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct Request {
+    /// Whether the law of end and time is wanted at all; quantiles and survival probabilities rest on it.
+    pub law: bool,
     /// Probabilities whose quantiles are wanted.
     pub levels: Vec<f64>,
     /// Times whose survival probabilities are wanted.
@@ -24,8 +26,10 @@ impl Request {
             match quantity {
                 Quantity::TimeQuantile(p) => request.levels.push(*p),
                 Quantity::SurvivalProbability(time) => request.times.push(*time),
-                _ => {}
+                Quantity::Law => {}
+                _ => continue,
             }
+            request.law = true;
         }
         request
     }

@@ -175,6 +175,9 @@ impl Law {
         request: &Request,
         progress: &dyn Progress,
     ) -> Result<Result<Self, LawRefusal>, ExactError> {
+        if !request.law {
+            return Ok(Err(LawRefusal::NotRequested));
+        }
         let moves: usize = chain.components().iter().flatten().map(|state| chain.row(*state as usize).targets.len()).sum();
         // An exponential tail falls below the limit after some twenty means.
         let expected = moves as f64 * mean * 21.0;
@@ -326,7 +329,7 @@ fn partition(count: u64, holds: impl Fn(u64) -> bool) -> u64 {
 }
 
 fn refusal(moves: usize, steps: f64) -> LawRefusal {
-    LawRefusal { moves: moves as u64, steps: steps as u64, budget: BUDGET }
+    LawRefusal::TooLong { moves: moves as u64, steps: steps as u64, budget: BUDGET, longest: LONGEST }
 }
 
 #[cfg(test)]
@@ -359,7 +362,7 @@ mod tests {
 
     #[test]
     fn a_quantile_on_a_jump_has_two_candidates_and_others_one() {
-        let law = law::<Dd>(COIN, &Request { levels: vec![0.999_999_999_999], times: vec![] });
+        let law = law::<Dd>(COIN, &Request { levels: vec![0.999_999_999_999], ..Request::default() });
         let half = law.quantile(0.5).unwrap();
         assert_eq!((half.low, half.high), (1.0, 2.0));
         assert_eq!(law.quantile(0.9).unwrap(), Bounded::exactly(4.0));
@@ -369,7 +372,7 @@ mod tests {
 
     #[test]
     fn times_asked_for_are_reached() {
-        let law = law::<f64>(COIN, &Request { levels: vec![], times: vec![500] });
+        let law = law::<f64>(COIN, &Request { times: vec![500], ..Request::default() });
         assert!((law.survival(500).value / 0.5f64.powi(500) - 1.0).abs() < 1e-12);
     }
 }
