@@ -89,9 +89,8 @@ impl<'a> Elimination<'a> {
         let mut inside = Vec::with_capacity(states.len());
         let mut exit = Vec::with_capacity(states.len());
         for state in states {
-            let (within, out): (Vec<&Move>, Vec<&Move>) = self.moves[*state as usize]
-                .iter()
-                .partition(|one| self.class_of[one.to as usize] as usize == number);
+            let (within, out): (Vec<&Move>, Vec<&Move>) =
+                self.moves[*state as usize].iter().partition(|one| self.class_of[one.to as usize] as usize == number);
             inside.push(within.iter().map(|one| (self.place_of[one.to as usize], one.probability)).collect());
             exit.push(out.iter().fold(Dd::ZERO, |sum, one| sum.plus(one.probability)));
         }

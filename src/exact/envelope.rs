@@ -9,7 +9,7 @@
 //! another and kept only between their first and last entry, so a band costs what a band must.
 //!
 //! # Accuracy
-//! The bound is derived in [`crate::exact`].
+//! The bound is derived in the documentation of [`crate::exact`].
 //!
 //! # Reference
 //! Grassmann, Taksar & Heyman, Oper. Res. 33 (1985) 1107, doi:10.1287/opre.33.5.1107.
