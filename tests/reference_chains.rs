@@ -210,7 +210,7 @@ fn a13_collector() {
     near(solve(&chains::collector(6)).mean_time(), 14.7);
     near(solve(&chains::collector(6)).variance_time(), 38.99);
     near(solve(&chains::collector(52)).mean_time(), 235.978_285_436_267_36);
-    near(solve(&chains::collector(365)).mean_time(), 2364.646_023_436_338);
+    near(solve(&chains::collector(365)).mean_time(), 2_364.646_023_436_338);
 }
 
 #[test]

@@ -67,6 +67,7 @@ impl WithSimd for AddMultiple<'_> {
 }
 
 #[inline(always)]
+#[expect(clippy::needless_pass_by_value, reason = "a pair of slices is a view")]
 fn each(f: Dd, x: (&[f64], &[f64]), y: (&mut [f64], &mut [f64]), product: &impl Fn(f64, f64) -> (f64, f64)) {
     let n = x.0.len();
     let (x_hi, x_lo, y_hi, y_lo) = (&x.0[..n], &x.1[..n], &mut y.0[..n], &mut y.1[..n]);
