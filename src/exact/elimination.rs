@@ -244,17 +244,17 @@ mod tests {
     #[test]
     fn a_class_too_large_is_refused_before_any_work() {
         let mut draft = Draft::new("full");
-        for i in 0..3000usize {
+        for i in 0..6000usize {
             // Far moves both ways make the envelope full.
-            draft.moves(&format!("s{i}"), &format!("s{}", (i * 977 + 7) % 3000), "0.5");
-            draft.moves(&format!("s{i}"), &format!("s{}", (i + 1) % 3000), "0.25");
+            draft.moves(&format!("s{i}"), &format!("s{}", (i * 977 + 7) % 6000), "0.5");
+            draft.moves(&format!("s{i}"), &format!("s{}", (i + 1) % 6000), "0.25");
             draft.moves(&format!("s{i}"), "end", "rest");
         }
         draft.absorbing("end");
         draft.start("s0");
         let model = draft.check().unwrap();
         match Elimination::of(model.chain(), &Silent) {
-            Err(ExactError::TooLarge { states, work, limit, .. }) => assert!(states == 3000 && work > limit),
+            Err(ExactError::TooLarge { states, work, limit, .. }) => assert!(states == 6000 && work > limit),
             other => panic!("{:?}", other.err()),
         }
     }
