@@ -152,32 +152,28 @@ impl<'a> Elimination<'a> {
     /// Solves `y = a + y P` over transient states for `a` that is not negative: `y = a N`.
     pub(super) fn row(&self, a: &Solution) -> Result<Solution, ExactError> {
         let mut y = a.of.clone();
-        let mut errors = vec![a.error; self.factors.len()];
+        // What arrives at a state from earlier classes: how many terms, and the worst of their errors by class.
+        let mut arrivals = vec![0u32; y.len()];
+        let mut arrived = vec![a.error; self.factors.len()];
         let mut worst = a.error;
         for (number, states) in self.chain.components().iter().enumerate() {
             let factor = &self.factors[number];
             let mut right: Vec<Dd> = states.iter().map(|state| y[*state as usize]).collect();
             factor.solve_row(&mut right).map_err(|why| self.refused(why, states))?;
-            // Every arrival from an earlier class was one more addition: at most one a move of the chain.
-            let error = errors[number] + factor.error + factor.solve_error();
+            let most = states.iter().map(|state| arrivals[*state as usize]).max().unwrap_or(0);
+            let adding = U2 * (3.0 * f64::from(most) + INPUT + 5.0);
+            let error = arrived[number] + adding + factor.error + factor.solve_error();
             worst = worst.max(error);
             for (state, value) in states.iter().zip(right) {
                 y[*state as usize] = value;
                 for one in &self.moves[*state as usize] {
-                    let class = self.class_of[one.to as usize];
-                    if class != u32::MAX && class as usize != number {
+                    let class = self.class_of[one.to as usize] as usize;
+                    if class != number && class < self.factors.len() {
                         let term = product(one.probability, value).map_err(|why| self.refused(why, states))?;
-                        let into = &mut y[one.to as usize];
-                        *into = into.plus(term);
-                        let after = &mut errors[class as usize];
-                        *after = after.max(error) + U2 * 3.0;
+                        y[one.to as usize] = y[one.to as usize].plus(term);
+                        arrivals[one.to as usize] += 1;
+                        arrived[class] = arrived[class].max(error);
                     }
-                }
-            }
-            for class in &mut errors[number + 1..] {
-                // A product and the given probability, once a class on the way.
-                if *class >= error {
-                    *class += U2 * (INPUT + 5.0) / self.factors.len() as f64;
                 }
             }
         }

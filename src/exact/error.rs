@@ -46,17 +46,26 @@ pub enum ExactError {
     Interrupted,
 }
 
-/// Why the law of the time is not computed, while the other answers are.
+/// Why the law of the time is not there, while the other answers are.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
-#[error(
-    "the law of the time would take more than {budget:.0e} multiply-adds ({moves} moves over more than {steps} steps); \
-     quantiles, survival and the law are left out"
-)]
-pub struct LawRefusal {
-    /// Moves among reachable transient states.
-    pub moves: u64,
-    /// Steps that the budget allows.
-    pub steps: u64,
-    /// Multiply-adds that are allowed.
-    pub budget: f64,
+#[non_exhaustive]
+pub enum LawRefusal {
+    /// It would take too long.
+    #[error(
+        "the law of the time would take more than {steps} steps over {moves} moves, beyond the budget of {budget:.0e} \
+         multiply-adds or of {longest} steps"
+    )]
+    TooLong {
+        /// Moves among reachable transient states.
+        moves: u64,
+        /// Steps that it would take at least.
+        steps: u64,
+        /// Multiply-adds that are allowed.
+        budget: f64,
+        /// Steps that are allowed.
+        longest: u64,
+    },
+    /// The request did not ask for it.
+    #[error("the law of the time was not asked for")]
+    NotRequested,
 }

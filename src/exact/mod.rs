@@ -8,7 +8,10 @@ mod envelope;
 mod error;
 mod kernel;
 mod law;
+mod linear;
+mod reference;
 mod shape;
+mod support;
 
 pub use answers::{Exact, Request};
 pub use bounded::Bounded;

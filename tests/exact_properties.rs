@@ -1,0 +1,234 @@
+//! Properties of the exact answers over thousands of random chains: the truth, from fractions, lies inside every bound;
+//! and the laws that any answer must obey. Chains are made from fixed seeds, so a pass or a failure repeats.
+
+mod naive;
+
+use dashu_ratio::RBig;
+use rand_pcg::Lcg128CmDxsm64;
+use rand_pcg::rand_core::Rng;
+use tallystone::exact::{Bounded, Exact, Request};
+use tallystone::model::{Draft, Model, Silent};
+
+/// A random chain as weights: `rows[i][j]` leads from state i to state j, the last `ends` columns being ends.
+#[derive(Clone)]
+struct Weights {
+    rows: Vec<Vec<u128>>,
+    ends: usize,
+    start: Vec<u128>,
+}
+
+fn below(rng: &mut Lcg128CmDxsm64, n: u64) -> u64 {
+    rng.next_u64() % n
+}
+
+/// Up to seven states, sparse, with weights from 1 to 1e18, so that some states are left with a probability of 1e-18.
+fn random(rng: &mut Lcg128CmDxsm64) -> Weights {
+    let (states, ends) = (1 + below(rng, 7) as usize, 1 + below(rng, 3) as usize);
+    let largest_power = [0, 3, 9, 18][below(rng, 4) as usize];
+    let weight = |rng: &mut Lcg128CmDxsm64| {
+        u128::from(1 + below(rng, 9)) * 10u128.pow(below(rng, largest_power + 1) as u32)
+    };
+    let mut rows = vec![vec![0; states + ends]; states];
+    for (i, row) in rows.iter_mut().enumerate() {
+        for cell in row.iter_mut() {
+            if below(rng, 3) == 0 {
+                *cell = weight(rng);
+            }
+        }
+        // A way onwards, so that every state reaches an end.
+        let onwards = if below(rng, 2) == 0 { states + below(rng, ends as u64) as usize } else { i + 1 };
+        row[onwards] = row[onwards].max(1);
+    }
+    let mut start = vec![0; states];
+    start[below(rng, states as u64) as usize] = 1;
+    if below(rng, 3) == 0 {
+        start.iter_mut().for_each(|share| *share += u128::from(below(rng, 3)));
+    }
+    Weights { rows, ends, start }
+}
+
+impl Weights {
+    /// The model, its states mentioned in the given order.
+    fn model(&self, order: &[usize]) -> Model {
+        let states = self.rows.len();
+        let name = |state: usize| if state < states { format!("s{state}") } else { format!("end{}", state - states) };
+        let mut draft = Draft::new("random");
+        for from in order {
+            let row = &self.rows[*from];
+            let sum: u128 = row.iter().sum();
+            for (to, weight) in row.iter().enumerate().filter(|(_, weight)| **weight > 0) {
+                draft.moves(&name(*from), &name(to), &format!("{weight}/{sum}"));
+            }
+        }
+        for end in 0..self.ends {
+            if self.rows.iter().any(|row| row[states + end] > 0) {
+                draft.absorbing(&name(states + end));
+            }
+        }
+        let sum: u128 = self.start.iter().sum();
+        for (state, share) in self.start.iter().enumerate().filter(|(_, share)| **share > 0) {
+            draft.start_with(&name(state), &format!("{share}/{sum}"));
+        }
+        draft.check().unwrap_or_else(|error| panic!("{error}\n{:?}", self.rows))
+    }
+
+    fn in_order(&self) -> Model {
+        self.model(&(0..self.rows.len()).collect::<Vec<_>>())
+    }
+}
+
+fn solve(model: &Model) -> Exact<'_> {
+    Exact::solve(model, &Request::default(), &Silent).unwrap()
+}
+
+/// Whether a fraction lies within bounds, compared exactly.
+#[track_caller]
+fn holds(bounded: Bounded, truth: &RBig, what: &str) {
+    let exactly = |value: f64| RBig::try_from(value).unwrap();
+    assert!(
+        exactly(bounded.low) <= *truth && *truth <= exactly(bounded.high),
+        "{what}: {bounded:?} does not hold {}",
+        truth.to_f64().value()
+    );
+    assert!(bounded.low <= bounded.value && bounded.value <= bounded.high, "{what}: {bounded:?}");
+}
+
+/// Relative width, in units in the last place of a double.
+fn units(bounded: Bounded) -> f64 {
+    if bounded.value == 0.0 { 0.0 } else { (bounded.high - bounded.low) / (bounded.value.abs() * f64::EPSILON) }
+}
+
+#[test]
+fn the_truth_lies_inside_every_bound_and_the_bounds_are_tight() {
+    let mut rng = Lcg128CmDxsm64::new(20_261_201, 1);
+    let mut slowest = 0.0f64;
+    for _ in 0..3000 {
+        let model = random(&mut rng).in_order();
+        let exact = solve(&model);
+        let truth = naive::solve(model.chain());
+        slowest = slowest.max(exact.mean_time().value);
+        holds(exact.mean_time(), &truth.mean, "mean");
+        assert!(units(exact.mean_time()) <= 3.0);
+        holds(exact.variance_time(), &truth.variance, "variance");
+        for (end, (probability, time)) in truth.ends.iter().enumerate() {
+            let answer = exact.absorption(&[end]);
+            holds(answer, probability, "probability");
+            assert!(units(answer) <= 3.0);
+            match exact.mean_time_given(&[end]) {
+                Some(given) => holds(given, &(time / probability), "mean given"),
+                None => assert!(probability.is_zero()),
+            }
+        }
+    }
+    // The draws reach the hard cases.
+    assert!(slowest > 1e17, "{slowest}");
+}
+
+#[test]
+fn probabilities_sum_to_one_and_groups_add_up() {
+    let mut rng = Lcg128CmDxsm64::new(20_261_201, 2);
+    for _ in 0..2000 {
+        let model = random(&mut rng).in_order();
+        let exact = solve(&model);
+        let all: Vec<usize> = (0..model.chain().ends().len()).collect();
+        assert_eq!(exact.absorption(&all), Bounded::exactly(1.0));
+        let parts: Vec<Bounded> = all.iter().map(|end| exact.absorption(&[*end])).collect();
+        let slack = 4.0 * f64::EPSILON;
+        assert!(parts.iter().map(|part| part.low).sum::<f64>() <= 1.0 + slack);
+        assert!(parts.iter().map(|part| part.high).sum::<f64>() >= 1.0 - slack);
+        if all.len() > 1 {
+            let pair = exact.absorption(&all[..2]);
+            assert!((pair.value - parts[0].value - parts[1].value).abs() <= 4.0 * f64::EPSILON * pair.value);
+        }
+    }
+}
+
+#[test]
+fn names_and_order_do_not_matter() {
+    let mut rng = Lcg128CmDxsm64::new(20_261_201, 3);
+    for _ in 0..2000 {
+        let weights = random(&mut rng);
+        let mut order: Vec<usize> = (0..weights.rows.len()).collect();
+        for i in (1..order.len()).rev() {
+            order.swap(i, below(&mut rng, i as u64 + 1) as usize);
+        }
+        let (one, other) = (weights.in_order(), weights.model(&order));
+        let (first, second) = (solve(&one), solve(&other));
+        let meet = |a: Bounded, b: Bounded| assert!(a.low <= b.high && b.low <= a.high, "{a:?} {b:?}");
+        meet(first.mean_time(), second.mean_time());
+        meet(first.variance_time(), second.variance_time());
+        for (end, found) in one.chain().ends().iter().enumerate() {
+            let same = other.ends_named(&found.name).unwrap();
+            meet(first.absorption(&[end]), second.absorption(&same));
+        }
+    }
+}
+
+#[test]
+fn a_stay_added_to_every_state_scales_the_time_and_keeps_the_ends() {
+    let mut rng = Lcg128CmDxsm64::new(20_261_201, 4);
+    for _ in 0..2000 {
+        let weights = random(&mut rng);
+        let mut slower = weights.clone();
+        // Every move has a quarter of its probability left; so the time is four times as long in the mean.
+        for (state, row) in slower.rows.iter_mut().enumerate() {
+            row[state] += 3 * row.iter().sum::<u128>();
+        }
+        let (one, other) = (weights.in_order(), slower.in_order());
+        let (fast, slow) = (solve(&one), solve(&other));
+        let near = |a: f64, b: f64| assert!((a - b).abs() <= 4.0 * f64::EPSILON * b.abs(), "{a} {b}");
+        near(slow.mean_time().value, 4.0 * fast.mean_time().value);
+        for end in 0..one.chain().ends().len() {
+            near(slow.absorption(&[end]).value, fast.absorption(&[end]).value);
+        }
+        // Given M moves the time is M plus negative-binomial stays: Var T = 16 Var M + 12 E M.
+        let expected = 16.0 * fast.variance_time().value + 12.0 * fast.mean_time().value;
+        assert!((slow.variance_time().value / expected - 1.0).abs() < 1e-14);
+    }
+}
+
+#[test]
+fn the_law_agrees_with_fractions_step_by_step() {
+    let mut rng = Lcg128CmDxsm64::new(20_261_201, 5);
+    for _ in 0..300 {
+        let model = random(&mut rng).in_order();
+        // Long lives only cost time here.
+        if solve(&model).mean_time().value > 1e3 {
+            continue;
+        }
+        let exact = Exact::solve(&model, &Request { law: true, levels: vec![0.5, 0.9], times: vec![12] }, &Silent).unwrap();
+        let Ok(law) = exact.law() else { continue };
+        let chain = model.chain();
+        let mut mass = vec![RBig::ZERO; chain.states()];
+        let start = chain.start();
+        start.targets.iter().enumerate().for_each(|(i, state)| mass[*state as usize] += start.probability(i));
+        for time in 0..=12u64.min(law.horizon()) {
+            let transient = (0..chain.states()).filter(|state| chain.end_of(*state).is_none());
+            let survival = naive::total(transient.map(|state| mass[state].clone()));
+            holds(law.survival(time), &survival, "survival");
+            if let Ok(edge) = law.edges().binary_search(&time) {
+                for (end, found) in chain.ends().iter().enumerate() {
+                    let entered = naive::total(found.states.iter().map(|state| mass[*state].clone()));
+                    holds(law.at_edge(end, edge), &entered, "law");
+                }
+            }
+            for level in ["1/2", "9/10"] {
+                let p = level.parse::<RBig>().unwrap();
+                let quantile = law.quantile(p.to_f64().value());
+                let reached = RBig::ONE - &survival >= p;
+                if let Some(quantile) = quantile {
+                    assert!(if reached { quantile.low <= time as f64 } else { quantile.high > time as f64 });
+                }
+            }
+            let mut next = vec![RBig::ZERO; chain.states()];
+            for (state, here) in mass.iter().enumerate().filter(|(_, here)| !here.is_zero()) {
+                if chain.end_of(state).is_some() {
+                    next[state] += here;
+                }
+                let row = chain.row(state);
+                row.targets.iter().enumerate().for_each(|(i, to)| next[*to as usize] += row.probability(i) * here);
+            }
+            mass = next;
+        }
+    }
+}
