@@ -46,49 +46,66 @@ impl<'a> Curves<'a> {
         self.ends.len() as u64 + 1
     }
 
-    /// Each function as points; `share` gives the sample's share up to an edge, or all of it, of an end or of all.
+    /// Each function as points; `share` gives the sample's share up to a time, or in all, of an end or of all.
+    ///
+    /// Before each edge stands the time one step earlier. What of an end lies between the edges before and that time is no
+    /// more than what of all ends does, which the law knows at every step; so a step of any size ends a cell alone.
     fn all<'c>(
         &'c self,
-        share: impl Fn(Option<usize>, Option<usize>) -> f64 + Copy + 'c,
+        share: impl Fn(Option<usize>, Option<u64>) -> f64 + Copy + 'c,
     ) -> impl Iterator<Item = impl Iterator<Item = Point> + 'c> + 'c {
         let curves = self.ends.iter().map(|(end, all)| (Some(*end), *all)).chain([(None, Bounded::exactly(1.0))]);
         curves.map(move |(end, all)| {
-            let edges = self.law.edges();
-            let at = move |edge: usize| match end {
-                Some(end) => self.law.at_edge(end, edge),
-                None => self.law.at_or_below(edges[edge]),
-            };
-            let inner = (0..edges.len()).map(move |edge| Point {
-                time: Some(edges[edge]),
-                exact: at(edge),
-                share: share(end, Some(edge)),
-            });
-            inner.chain([Point { time: None, exact: all, share: share(end, None) }])
+            let times = steps(self.law.edges()).map(Some).chain([None]);
+            let mut edge = 0;
+            times.map(move |time| {
+                let share = share(end, time);
+                let Some(at) = time else { return Point { time, exact: all, share } };
+                let exact = match end {
+                    None => self.law.at_or_below(at),
+                    Some(end) if self.law.edges()[edge] == at => self.law.at_edge(end, edge),
+                    Some(end) => self.before_edge(end, edge, share),
+                };
+                edge += usize::from(self.law.edges()[edge] == at);
+                Point { time, exact, share }
+            })
         })
+    }
+
+    /// P(end = e, time < edge), where only that of all ends is known. The value is the one nearest to the sample.
+    fn before_edge(&self, end: usize, edge: usize, share: f64) -> Bounded {
+        let nothing = Bounded::exactly(0.0);
+        let (left, all_left) = match edge.checked_sub(1) {
+            Some(before) => (self.law.at_edge(end, before), self.law.at_or_below(self.law.edges()[before])),
+            None => (nothing, nothing),
+        };
+        let between = self.law.at_or_below(self.law.edges()[edge] - 1).high - all_left.low;
+        let low = left.low;
+        let high = (left.high + between).min(self.law.at_edge(end, edge).high).max(low);
+        Bounded { value: share.clamp(low, high), low, high }
     }
 
     /// How far a tally is from the law.
     fn distance(&self, tally: &Tally) -> Distance {
         let n = tally.replications() as f64;
-        let counts = Counts::new(tally, self.law.edges());
-        let share = |end: Option<usize>, edge: Option<usize>| counts.of(end, edge) as f64 / n;
+        let counts = Counts::new(tally);
+        let share = |end: Option<usize>, time: Option<u64>| counts.of(end, time) as f64 / n;
         self.all(&share).map(Distance::of).fold(Distance::default(), Distance::max)
     }
 
     /// The test of equal laws; `None` when too little is expected for two cells.
     fn chi_square(&self, tally: &Tally) -> Option<GoodnessOfFit> {
-        let counts = Counts::new(tally, self.law.edges());
+        let counts = Counts::new(tally);
         let mut observed = Vec::new();
         let mut expected = Vec::new();
         for (end, all) in &self.ends {
-            let edges = (0..self.law.edges().len()).map(Some).chain([None]);
+            let edges = self.law.edges().iter().enumerate().map(|(edge, time)| (self.law.at_edge(*end, edge), Some(*time)));
             let (mut count_before, mut probability_before) = (0, 0.0);
-            for edge in edges {
-                let count = counts.of(Some(*end), edge);
-                let probability = edge.map_or(*all, |edge| self.law.at_edge(*end, edge)).value;
+            for (probability, time) in edges.chain([(*all, None)]) {
+                let count = counts.of(Some(*end), time);
                 observed.push(count - count_before);
-                expected.push((probability - probability_before).max(0.0));
-                (count_before, probability_before) = (count, probability);
+                expected.push((probability.value - probability_before).max(0.0));
+                (count_before, probability_before) = (count, probability.value);
             }
         }
         let fewest = FEWEST_EXPECTED.max(SMALLEST_SHARE * tally.replications() as f64);
@@ -96,44 +113,51 @@ impl<'a> Curves<'a> {
     }
 }
 
-/// Counts of a tally up to the edges of a law.
-struct Counts {
-    /// For every end, and for all together at the end.
+/// The times at which a tally must cut for a law that is kept at these edges: each with the step before it.
+fn steps(edges: &[u64]) -> impl Iterator<Item = u64> {
+    edges.iter().enumerate().flat_map(|(at, edge)| {
+        let after = at.checked_sub(1).map_or(0, |before| edges[before] + 1);
+        let before = edge.checked_sub(1).filter(|before| *before >= after);
+        before.into_iter().chain([*edge])
+    })
+}
+
+/// Counts of a tally up to its cuts.
+struct Counts<'t> {
+    tally: &'t Tally,
+    /// Up to each cut and in all: for every end, and for all together at the end.
     up_to: Vec<Vec<u64>>,
 }
 
-impl Counts {
-    fn new(tally: &Tally, edges: &[u64]) -> Self {
-        let mut total = vec![0; edges.len() + 1];
-        let mut up_to: Vec<Vec<u64>> = (0..tally.ends())
-            .map(|end| {
-                let mut cells = tally.cells(end).iter();
-                let mut sum = 0;
-                let mut done = 0;
-                let mut counts: Vec<u64> = edges
-                    .iter()
-                    .map(|edge| {
-                        let Some(last) = tally.grid().cell_ending_at(*edge) else {
-                            panic!("the tally does not cut at time {edge}")
-                        };
-                        sum += cells.by_ref().take(last + 1 - done).sum::<u64>();
-                        done = last + 1;
-                        sum
-                    })
-                    .collect();
-                counts.push(tally.count(end));
-                total.iter_mut().zip(&counts).for_each(|(sum, count)| *sum += count);
-                counts
-            })
-            .collect();
+impl<'t> Counts<'t> {
+    fn new(tally: &'t Tally) -> Self {
+        let mut total = vec![0; tally.grid().cells()];
+        let mut up_to: Vec<Vec<u64>> = Vec::with_capacity(tally.ends() + 1);
+        for end in 0..tally.ends() {
+            let mut sum = 0;
+            let running = tally.cells(end).iter().map(|count| {
+                sum += count;
+                sum
+            });
+            let counts: Vec<u64> = running.collect();
+            total.iter_mut().zip(&counts).for_each(|(sum, count)| *sum += count);
+            up_to.push(counts);
+        }
         up_to.push(total);
-        Self { up_to }
+        Self { tally, up_to }
     }
 
-    /// Up to an edge, or in all; of an end, or of all.
-    fn of(&self, end: Option<usize>, edge: Option<usize>) -> u64 {
-        let counts = &self.up_to[end.unwrap_or(self.up_to.len() - 1)];
-        counts[edge.unwrap_or(counts.len() - 1)]
+    /// Up to a cut, or in all; of an end, or of all.
+    ///
+    /// # Panics
+    /// When the tally does not cut there.
+    fn of(&self, end: Option<usize>, time: Option<u64>) -> u64 {
+        let counts = &self.up_to[end.unwrap_or(self.tally.ends())];
+        let Some(time) = time else { return counts[counts.len() - 1] };
+        match self.tally.grid().cell_ending_at(time) {
+            Some(cell) => counts[cell],
+            None => panic!("the tally does not cut at time {time}"),
+        }
     }
 }
 
@@ -151,7 +175,7 @@ impl Method for Band<'_> {
     }
 
     fn cuts(&self, _tolerance: f64) -> Vec<u64> {
-        self.0.law.edges().to_vec()
+        steps(self.0.law.edges()).collect()
     }
 
     fn miss_probability(&self, tolerance: f64, n: u64, alpha: f64) -> f64 {
@@ -203,7 +227,7 @@ impl Method for ChiSquare<'_> {
     }
 
     fn cuts(&self, _tolerance: f64) -> Vec<u64> {
-        self.0.law.edges().to_vec()
+        steps(self.0.law.edges()).collect()
     }
 
     /// The size from which the band of D would see the tolerance: chi-square has no size for a distance.

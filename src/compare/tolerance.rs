@@ -3,7 +3,6 @@
 use crate::exact::Bounded;
 use crate::model::{Quantity, Tolerance};
 
-use super::method::Method;
 use super::quantile::Quantile;
 use super::{AppliedTolerance, ToleranceSource};
 
@@ -123,9 +122,4 @@ fn next_step(value: f64) -> f64 {
     // Read as decimals, so that 0.05 is the double that everybody writes.
     let mut steps = steps.filter_map(|text| text.parse().ok());
     steps.find(|step| *step > value * (1.0 + 1e-9)).unwrap_or(10.0 * value)
-}
-
-/// Whether a row is decided by [`WIDENED_ABOVE`] replications with the power asked.
-pub(super) fn is_affordable(method: &dyn Method, tolerance: f64, alpha: f64, power: f64) -> bool {
-    method.never_agrees(tolerance).is_none() && method.miss_probability(tolerance, WIDENED_ABOVE, alpha) <= 1.0 - power
 }

@@ -72,7 +72,9 @@ pub(super) fn of_table(rows: &[Row], findings: &[Finding]) -> Verdict {
 
 #[cfg(test)]
 mod tests {
+    use super::super::{AppliedTolerance, Guarantee, ToleranceSource};
     use super::*;
+    use crate::model::{Quantity, Tolerance};
 
     const EXACT: Bounded = Bounded { value: 10.0, low: 9.75, high: 10.25 };
 
@@ -154,11 +156,30 @@ mod tests {
         assert_eq!(of_certainty(100, true), Verdict::Disagree);
     }
 
+    fn row(verdict: Verdict) -> Row {
+        let tolerance = Tolerance::Absolute(0.0);
+        Row {
+            quantity: Quantity::MeanTime,
+            exact: None,
+            estimate: None,
+            standard_error: None,
+            interval: None,
+            level: 1.0,
+            tolerance: AppliedTolerance { tolerance, value: 0.0, source: ToleranceSource::Default },
+            method: "",
+            guarantee: Guarantee::Exact,
+            p_value: None,
+            p_adjusted: None,
+            verdict,
+            replications_needed: None,
+            note: None,
+        }
+    }
+
     #[test]
     fn the_table_says_the_worst_and_a_finding_disagrees() {
-        use super::super::test_rows::row;
-        let rows = |verdicts: &[Verdict]| verdicts.iter().map(|verdict| row(*verdict)).collect::<Vec<_>>();
         use Verdict::{Agree, Consistent, Disagree, Inconclusive};
+        let rows = |verdicts: &[Verdict]| verdicts.iter().map(|verdict| row(*verdict)).collect::<Vec<_>>();
         for (verdicts, table) in [
             (&[Agree, Agree][..], Agree),
             (&[Agree, Consistent], Consistent),
