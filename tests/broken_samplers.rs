@@ -25,7 +25,12 @@ fn bench(rework: &str) -> Model {
 }
 
 /// Compares what a source samples with the exact answers of a model.
-fn compare(model: &Model, source: &dyn OutcomeSource, settings: &Settings, seeds: std::ops::Range<u64>) -> Vec<Comparison> {
+fn compare(
+    model: &Model,
+    source: &dyn OutcomeSource,
+    settings: &Settings,
+    seeds: std::ops::Range<u64>,
+) -> Vec<Comparison> {
     let exact = Exact::solve(model, &Request::of(&Study::quantities(model, settings)), &Silent).unwrap();
     let study = Study::new(&exact, settings).unwrap();
     let replications = study.plan().replications.expect("default rows can all be decided");
@@ -38,9 +43,9 @@ fn compare(model: &Model, source: &dyn OutcomeSource, settings: &Settings, seeds
 }
 
 /// Counts one step too many in every replication.
-struct OneStepMore<'a>(Sampler<'a>);
+struct OneStepMore(Sampler);
 
-impl OutcomeSource for OneStepMore<'_> {
+impl OutcomeSource for OneStepMore {
     fn ends(&self) -> usize {
         self.0.ends()
     }
@@ -51,11 +56,11 @@ impl OutcomeSource for OneStepMore<'_> {
         block: u64,
         replications: u64,
         tally: &mut Tally,
-        _progress: &dyn Progress,
+        progress: &dyn Progress,
     ) -> Result<(), Interrupted> {
         let mut rng = streams.block(block);
         for _ in 0..replications {
-            let outcome = self.0.walk(&mut rng);
+            let outcome = self.0.walk(&mut rng, progress)?;
             tally.add(outcome.end as usize, outcome.time + 1);
         }
         Ok(())

@@ -135,9 +135,7 @@ fn method<'a>(
         Quantity::AbsorptionProbability(name) => {
             Ok(Chosen::of(Share { event: Event::Ends(named(exact, name)), exact: bounds }))
         }
-        Quantity::SurvivalProbability(time) => {
-            Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds }))
-        }
+        Quantity::SurvivalProbability(time) => Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds })),
         Quantity::MeanTime => {
             let spread = Spread::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
             Ok(Chosen::of(Mean { ends: None, share: 1.0, exact: bounds, spread }))

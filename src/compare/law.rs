@@ -2,9 +2,7 @@
 
 use crate::exact::{Bounded, Exact, Law};
 use crate::sampling::Tally;
-use crate::statistics::{
-    GoodnessOfFit, Interval, dkw_half_width, dkw_level, law_size, pooled_chi_square,
-};
+use crate::statistics::{GoodnessOfFit, Interval, dkw_half_width, dkw_level, law_size, pooled_chi_square};
 
 use super::Guarantee;
 use super::distance::{Distance, Point, widest_gap};
@@ -99,7 +97,8 @@ impl<'a> Curves<'a> {
         let mut observed = Vec::new();
         let mut expected = Vec::new();
         for (end, all) in &self.ends {
-            let edges = self.law.edges().iter().enumerate().map(|(edge, time)| (self.law.at_edge(*end, edge), Some(*time)));
+            let edges =
+                self.law.edges().iter().enumerate().map(|(edge, time)| (self.law.at_edge(*end, edge), Some(*time)));
             let (mut count_before, mut probability_before) = (0, 0.0);
             for (probability, time) in edges.chain([(*all, None)]) {
                 let count = counts.of(Some(*end), time);
@@ -195,10 +194,8 @@ impl Method for Band<'_> {
         }
         let (distance, bands) = (self.0.distance(tally), self.0.bands());
         let half_width = dkw_half_width(n, bands, alpha);
-        let interval = Interval {
-            low: (distance.at_least - half_width).max(0.0),
-            high: (distance.at_most + half_width).min(1.0),
-        };
+        let interval =
+            Interval { low: (distance.at_least - half_width).max(0.0), high: (distance.at_most + half_width).min(1.0) };
         let detectable = self.0.chi_square(tally).filter(|fit| fit.p_value <= NOTE_LEVEL);
         Evidence {
             estimate: Some(distance.seen),
@@ -206,9 +203,8 @@ impl Method for Band<'_> {
             interval: Some(interval),
             p_value: Some(dkw_level(distance.at_least - tolerance, n, bands)),
             premature: None,
-            note: detectable.map(|fit| {
-                format!("the law differs detectably (pooled chi-square, p = {})", rounded(fit.p_value))
-            }),
+            note: detectable
+                .map(|fit| format!("the law differs detectably (pooled chi-square, p = {})", rounded(fit.p_value))),
         }
     }
 }

@@ -94,12 +94,17 @@ impl Method for Quantile<'_> {
         let Turns { within_all: (low, high), .. } = Turns::of(self.exact, tolerance);
         if low > high {
             let Bounded { low, high, .. } = self.exact;
-            return Some(format!("the law leaves {low} and {high} as the exact answer, which the tolerance tells apart"));
+            return Some(format!(
+                "the law leaves {low} and {high} as the exact answer, which the tolerance tells apart"
+            ));
         }
         let (above, below) = self.margins(tolerance);
         (above <= 0.0 || below <= 0.0).then(|| {
             let end = if above <= 0.0 { high } else { low.saturating_sub(1) };
-            format!("P(time ≤ {end}) is {} itself, so the interval reaches beyond it however many replications there are", self.p)
+            format!(
+                "P(time ≤ {end}) is {} itself, so the interval reaches beyond it however many replications there are",
+                self.p
+            )
         })
     }
 
@@ -109,7 +114,11 @@ impl Method for Quantile<'_> {
         let estimate = located.first(|count| count as f64 / n as f64 >= self.p);
         let Some(ranks) = quantile_ranks(n, self.p, alpha) else {
             let few = format!("{} replications are too few to enclose this quantile", counted(n));
-            return Evidence { estimate: estimate.map(|cell| cell.1 as f64), premature: Some(few), ..Evidence::default() };
+            return Evidence {
+                estimate: estimate.map(|cell| cell.1 as f64),
+                premature: Some(few),
+                ..Evidence::default()
+            };
         };
         // Whoever lies in a cell of several times is taken at its outer end.
         let lower = located.first(|count| count >= ranks.lower).map(|cell| cell.0);
@@ -122,9 +131,9 @@ impl Method for Quantile<'_> {
             interval: lower.zip(upper).map(|(low, high)| Interval { low: low as f64, high: high as f64 }),
             p_value: Some(quantile_p_value(n, self.p, at_or_below(tally, high), below)),
             premature: None,
-            note: estimate.filter(|(from, to)| from < to).map(|(from, to)| {
-                format!("the estimate is located between {from} and {to} only")
-            }),
+            note: estimate
+                .filter(|(from, to)| from < to)
+                .map(|(from, to)| format!("the estimate is located between {from} and {to} only")),
         }
     }
 }

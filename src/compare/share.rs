@@ -2,9 +2,7 @@
 
 use crate::exact::Bounded;
 use crate::sampling::Tally;
-use crate::statistics::{
-    agree_miss_probability, binomial_agree_miss_probability, binomial_p_value, clopper_pearson,
-};
+use crate::statistics::{agree_miss_probability, binomial_agree_miss_probability, binomial_p_value, clopper_pearson};
 
 use super::Guarantee;
 use super::method::{Evidence, Method};

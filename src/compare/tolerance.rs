@@ -95,7 +95,8 @@ pub(super) fn widened(
     loop {
         let value = value_of(tolerance, exact);
         if affordable(value) {
-            let source = if tolerance == default { ToleranceSource::Default } else { ToleranceSource::Widened { from } };
+            let source =
+                if tolerance == default { ToleranceSource::Default } else { ToleranceSource::Widened { from } };
             return Some(AppliedTolerance { tolerance, value, source });
         }
         tolerance = match tolerance {

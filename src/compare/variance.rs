@@ -2,9 +2,7 @@
 
 use crate::exact::{Bounded, Shape};
 use crate::sampling::Tally;
-use crate::statistics::{
-    Interval, mean_least_size, normal_survival, normal_upper_quantile, variance_interval,
-};
+use crate::statistics::{Interval, mean_least_size, normal_survival, normal_upper_quantile, variance_interval};
 
 use super::Guarantee;
 use super::mean::FEWEST;
@@ -80,8 +78,7 @@ impl Method for Variance {
         let z = normal_upper_quantile(0.5 * alpha);
         let above = normal_survival((highest / value).ln() / standard_error - z);
         // Nothing is below a bound of 0.
-        let below =
-            if lowest <= 0.0 { 0.0 } else { normal_survival((value / lowest).ln() / standard_error - z) };
+        let below = if lowest <= 0.0 { 0.0 } else { normal_survival((value / lowest).ln() / standard_error - z) };
         (above + below).min(1.0)
     }
 
