@@ -4,7 +4,8 @@ use crate::exact::{Bounded, Exact};
 use crate::model::{Quantity, Tolerance};
 
 use super::certain::Certain;
-use super::law::{Band, ChiSquare, Curves};
+use super::curves::Curves;
+use super::law::{Band, ChiSquare};
 use super::mean::{Mean, Spread};
 use super::method::Method;
 use super::planned::{Basis, Outcomes, Planned, Tested};
@@ -135,9 +136,7 @@ fn method<'a>(
         Quantity::AbsorptionProbability(name) => {
             Ok(Chosen::of(Share { event: Event::Ends(named(exact, name)), exact: bounds }))
         }
-        Quantity::SurvivalProbability(time) => {
-            Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds }))
-        }
+        Quantity::SurvivalProbability(time) => Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds })),
         Quantity::MeanTime => {
             let spread = Spread::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
             Ok(Chosen::of(Mean { ends: None, share: 1.0, exact: bounds, spread }))

@@ -58,7 +58,8 @@ fn too_much(tested: &Tested<'_>, alpha: f64, power: f64) -> String {
         return reason;
     }
     let needed = smallest(1, |n| tested.method.miss_probability(widest, n, alpha) <= 1.0 - power);
-    let needs = needed.map_or_else(|| "more replications than can be run".to_owned(), |n| format!("{} replications", counted(n)));
+    let needs = needed
+        .map_or_else(|| "more replications than can be run".to_owned(), |n| format!("{} replications", counted(n)));
     format!(
         "even {WIDEST} times its default tolerance of {default} would take {needs}, more than {}; give a tolerance of your \
          own to compare it",

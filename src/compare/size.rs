@@ -76,7 +76,8 @@ pub(super) fn plan(rows: &[Planned<'_>], error_rate: f64, power: f64) -> SizePla
         let is_in = |at: &usize| Some(*at) != left_out;
         let spenders = (0..rows.len()).filter(is_in).filter(|at| rows[*at].spends()).count();
         let alpha = error_rate / spenders.max(1) as f64;
-        let tested: Vec<&Tested<'_>> = planned.iter().copied().filter(is_in).filter_map(|at| rows[at].tested()).collect();
+        let tested: Vec<&Tested<'_>> =
+            planned.iter().copied().filter(is_in).filter_map(|at| rows[at].tested()).collect();
         smallest(BLOCK, |n| tested.iter().map(|row| row.undecided(n, alpha)).sum::<f64>() <= 1.0 - power)
     };
     let decides = !planned.is_empty() || (never.is_empty() && !rows.is_empty());

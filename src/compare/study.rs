@@ -97,7 +97,11 @@ impl<'a> Study<'a> {
     /// # Panics
     /// When the tally is over another grid or other ends.
     pub fn compare(&self, tally: &Tally, mut findings: Vec<Finding>) -> Comparison {
-        assert_eq!(tally.ends(), self.exact.model().chain().ends().len(), "the tally is over other ends than the model");
+        assert_eq!(
+            tally.ends(),
+            self.exact.model().chain().ends().len(),
+            "the tally is over other ends than the model"
+        );
         assert!(tally.grid() == &*self.grid, "the tally cuts times elsewhere than the study asks for");
         findings.extend(impossible::findings(self.exact, tally, &findings));
         let rows: Vec<_> = (0..self.rows.len()).map(|at| evaluate(&self.rows, at, tally, self.terms)).collect();

@@ -27,7 +27,8 @@ pub(super) fn left_out(rows: &[NotCompared]) -> Vec<Warning> {
 /// Ends that are too many to have rows of their own. Those that cannot be reached are a matter of the model's warnings.
 pub(super) fn unlisted(rows: &[NotCompared]) -> Option<Warning> {
     let possible = rows.iter().filter(|row| row.exact.is_some_and(|exact| exact.high > 0.0)).count();
-    let text = || format!("{} less likely ends have no row of their own; ask for those that matter", counted(possible as u64));
+    let text =
+        || format!("{} less likely ends have no row of their own; ask for those that matter", counted(possible as u64));
     (possible > 0).then(|| warning(WarningKind::NotCompared, text()))
 }
 
@@ -102,7 +103,8 @@ pub(super) fn unused(
             ToleranceKey::One(quantity) => quantity.to_string(),
             ToleranceKey::All(name) => name.clone(),
         };
-        let text = format!("a tolerance is given for `{name}`, which is not compared; ask for the quantity, or drop it");
+        let text =
+            format!("a tolerance is given for `{name}`, which is not compared; ask for the quantity, or drop it");
         if !texts.contains(&text) {
             texts.push(text);
         }
