@@ -80,3 +80,72 @@ fn walk(points: impl IntoIterator<Item = Point>, mut visit: impl FnMut(Point, Po
         left = right;
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use rand_pcg::Lcg128CmDxsm64;
+    use rand_pcg::rand_core::Rng;
+
+    use super::*;
+
+    /// A distribution function on 0..len with many flat stretches, not reaching 1: some mass lies beyond.
+    fn function(draw: &mut impl FnMut(u64) -> u64, len: usize) -> Vec<f64> {
+        let steps: Vec<u64> = (0..len).map(|_| if draw(3) == 0 { draw(100) } else { 0 }).collect();
+        let total = steps.iter().sum::<u64>() + 1 + draw(20);
+        let mut sum = 0;
+        steps
+            .iter()
+            .map(|step| {
+                sum += step;
+                sum as f64 / total as f64
+            })
+            .collect()
+    }
+
+    // 2,000 pairs of functions with random cuts and bounds, against the maximum over all times.
+    #[test]
+    fn the_bounds_hold_the_largest_distance() {
+        let mut rng = Lcg128CmDxsm64::new(11, 5);
+        let mut draw = |below: u64| rng.next_u64() % below;
+        let mut exact_ones = 0;
+        for case in 0..2000 {
+            let len = 1 + draw(60) as usize;
+            let (law, sample) = (function(&mut draw, len), function(&mut draw, len));
+            let error = [0.0, 0.01][case % 2];
+            let beyond = (law[len - 1] - sample[len - 1]).abs();
+            let truth = law.iter().zip(&sample).map(|(f, g)| (f - g).abs()).fold(beyond, f64::max);
+            let every = draw(4) == 0;
+            // The last time is always cut, and nothing happens between it and the end of all times here.
+            let cuts: Vec<usize> = (0..len).filter(|time| every || *time == len - 1 || draw(3) == 0).collect();
+            let bounded = |value: f64| Bounded { value, low: value - error, high: value + 0.5 * error };
+            let inner =
+                cuts.iter().map(|t| Point { time: Some(*t as u64), exact: bounded(law[*t]), share: sample[*t] });
+            let last = Point { time: None, exact: bounded(law[len - 1]), share: sample[len - 1] };
+            let points: Vec<Point> = inner.chain([last]).collect();
+            let distance = Distance::of(points.iter().copied());
+            assert!(distance.at_least <= truth + 1e-15 && truth <= distance.at_most + 1e-15, "case {case}");
+            assert!(distance.at_least <= distance.seen && distance.seen <= distance.at_most);
+            // What the cells hide is bounded by what the law gains in the widest.
+            let at_points = points.iter().map(|p| (p.share - p.exact.value).abs()).fold(0.0, f64::max);
+            assert!(distance.at_most <= at_points + widest_gap(points) + 2.0 * error + 1e-15, "case {case}");
+            if every && error == 0.0 {
+                exact_ones += 1;
+                assert!((distance.at_least - truth).abs() < 1e-15);
+                assert!((distance.seen - truth).abs() < 1e-15);
+            }
+        }
+        assert!(exact_ones > 100);
+    }
+
+    #[test]
+    fn neighbouring_times_hide_nothing_and_others_do() {
+        let point = |time, value, share| Point { time, exact: Bounded::exactly(value), share };
+        let close = [point(Some(0), 0.0, 0.0), point(Some(1), 0.5, 0.5), point(None, 0.5, 0.5)];
+        assert_eq!(Distance::of(close), Distance::default());
+        assert_eq!(widest_gap(close), 0.0);
+        // Time 0 is not cut here: all of the half may come at 0 in one and at 1 in the other.
+        let apart = [point(Some(1), 0.5, 0.5), point(None, 0.5, 0.5)];
+        assert_eq!(Distance::of(apart), Distance { at_least: 0.0, seen: 0.0, at_most: 0.5 });
+        assert_eq!(widest_gap(apart), 0.5);
+    }
+}

@@ -4,7 +4,8 @@ use crate::exact::{Bounded, Exact};
 use crate::model::{Quantity, Tolerance};
 
 use super::certain::Certain;
-use super::law::{Band, ChiSquare, Curves};
+use super::curves::Curves;
+use super::law::{Band, ChiSquare};
 use super::mean::{Mean, Spread};
 use super::method::Method;
 use super::planned::{Basis, Outcomes, Planned, Tested};

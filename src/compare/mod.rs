@@ -2,6 +2,7 @@
 
 mod certain;
 mod comparison;
+mod curves;
 mod distance;
 mod draft;
 mod evaluate;
