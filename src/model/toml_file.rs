@@ -290,13 +290,9 @@ impl Reader {
     }
 
     fn tolerance(&mut self, key: &str, value: &Spanned<DeValue<'_>>, line: u64) {
-        let key = if Quantity::is_name(key) {
-            ToleranceKey::All(key.to_owned())
-        } else {
-            match Quantity::parse(key) {
-                Ok(quantity) => ToleranceKey::One(quantity),
-                Err(reason) => return self.unknown_quantity(key, line, reason.text, reason.remedy),
-            }
+        let key = match ToleranceKey::parse(key) {
+            Ok(key) => key,
+            Err(reason) => return self.unknown_quantity(key, line, reason.text, reason.remedy),
         };
         let Some(text) = self.number_text(value, "tolerance") else { return };
         match Tolerance::parse(&text) {
