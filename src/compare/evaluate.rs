@@ -151,3 +151,28 @@ fn replications_for(half_width: f64, gap: f64, n: u64, terms: Terms) -> Option<u
     // Casting saturates.
     Some(((replications / digits).ceil() * digits) as u64)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const TERMS: Terms = Terms { error_rate: 0.01, power: 0.95, alpha: 0.001 };
+
+    // z(0.0005) = 3.2905 and z(0.05) = 1.6449 (any table): a half width of 0.01 after 1,000 replications shrinks to a gap of
+    // 0.004 with power 0.95 after 1000 · (0.01 · (1 + 1.6449/3.2905)/0.004)² = 14,061.
+    #[test]
+    fn the_outlook_scales_the_interval_to_the_gap() {
+        assert_eq!(replications_for(0.01, 0.004, 1000, TERMS), Some(15_000));
+        assert_eq!(replications_for(0.01, 0.002, 1000, TERMS), None);
+        assert_eq!(replications_for(0.01, -0.1, 1000, TERMS), None);
+        assert_eq!(replications_for(0.01, 10.0, 5, TERMS), Some(1));
+    }
+
+    #[test]
+    fn the_gap_is_counted_to_the_nearer_side_with_the_bounds_taken_off() {
+        let exact = Bounded { value: 2.0, low: 1.75, high: 2.25 };
+        assert_eq!(gap(2.5, exact, 1.0), 0.25);
+        assert_eq!(gap(0.5, exact, 1.0), 0.25);
+        assert_eq!(gap(3.0, exact, 1.0), -0.25);
+    }
+}

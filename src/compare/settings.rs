@@ -124,3 +124,60 @@ fn check_tolerance(quantity: &Quantity, tolerance: Tolerance) -> Result<(), Stud
         _ => Ok(()),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn model() -> Model {
+        let text = "start = \"a\"\nabsorbing = [\"shipped\", \"parts\"]\n[moves]\na = { shipped = 0.5, parts = 0.5 }\n\
+                    [tolerance]\nmean_time = \"2 %\"\n";
+        Model::from_toml(text).unwrap()
+    }
+
+    fn with(key: &str, tolerance: Tolerance) -> Settings {
+        let mut settings = Settings::default();
+        let key = match Quantity::parse(key) {
+            Ok(quantity) => ToleranceKey::One(quantity),
+            Err(_) => ToleranceKey::All(key.to_owned()),
+        };
+        settings.tolerances.set(key, tolerance);
+        settings
+    }
+
+    #[test]
+    fn what_does_not_fit_names_the_value_and_the_remedy() {
+        use Tolerance::{Absolute, Relative};
+        let model = model();
+        let unknown = vec![Quantity::MeanTimeGiven("partz".to_owned())];
+        for (settings, wrong, remedy) in [
+            (Settings { error_rate: 0.0, ..Settings::default() }, "error rate 0", "0.01"),
+            (Settings { error_rate: f64::NAN, ..Settings::default() }, "error rate NaN", "0.01"),
+            (Settings { power: 1.0, ..Settings::default() }, "power 1", "0.95"),
+            (Settings { quantities: Some(unknown), ..Settings::default() }, "`partz`", "`parts`"),
+            (with("absorption_probability:shiped", Absolute(0.1)), "`shiped`", "`shipped`"),
+            (with("mean_tme", Absolute(0.1)), "`mean_tme`", "`mean_time`"),
+            (with("zzz", Absolute(0.1)), "`zzz`", "use one of"),
+            (with("mean_time", Absolute(-1.0)), "-1", "from 0 up"),
+            (with("mean_time", Absolute(f64::NAN)), "NaN", "from 0 up"),
+            (with("law", Relative(0.01)), "1 %", "0.01"),
+            (with("law", Absolute(1.0)), "1 of `law`", "below 1"),
+            (with("absorption_probability", Absolute(2.0)), "2 of `absorption_probability`", "below 1"),
+        ] {
+            let fault = settings.check(&model).unwrap_err();
+            assert!(fault.text.contains(wrong), "{fault}");
+            assert!(fault.remedy.contains(remedy), "{fault}");
+        }
+    }
+
+    #[test]
+    fn the_user_comes_before_the_model() {
+        let model = model();
+        let own = with("mean_time", Tolerance::Absolute(0.5));
+        assert_eq!(own.check(&model), Ok(()));
+        assert_eq!(own.tolerance(&model, &Quantity::MeanTime), Some(Tolerance::Absolute(0.5)));
+        assert_eq!(Settings::default().tolerance(&model, &Quantity::MeanTime), Some(Tolerance::Relative(0.02)));
+        assert_eq!(own.tolerance(&model, &Quantity::Law), None);
+        assert_eq!(own.asked(&model), None);
+    }
+}

@@ -88,3 +88,24 @@ pub(super) fn plan(rows: &[Planned<'_>], error_rate: f64, power: f64) -> SizePla
         never,
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_smallest_multiple_is_found_from_both_sides() {
+        for least in (1..200).chain([4095, 4096, 4097, 1 << 40]) {
+            for step in [1, 7, BLOCK] {
+                assert_eq!(smallest(step, |n| n >= least), Some(least.div_ceil(step) * step));
+            }
+        }
+        assert_eq!(smallest(BLOCK, |_| true), Some(BLOCK));
+        assert_eq!(smallest(1, |n| n > MOST), None);
+        assert_eq!(smallest(1, |n| n >= MOST), Some(MOST));
+        // What fits now and then: one that fits, while the one before does not.
+        let sawtooth = |n: u64| n > 90 && n % 10 != 3;
+        let found = smallest(1, sawtooth).unwrap();
+        assert!(sawtooth(found) && !sawtooth(found - 1));
+    }
+}
