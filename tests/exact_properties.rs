@@ -25,9 +25,8 @@ fn below(rng: &mut Lcg128CmDxsm64, n: u64) -> u64 {
 fn random(rng: &mut Lcg128CmDxsm64) -> Weights {
     let (states, ends) = (1 + below(rng, 7) as usize, 1 + below(rng, 3) as usize);
     let largest_power = [0, 3, 9, 18][below(rng, 4) as usize];
-    let weight = |rng: &mut Lcg128CmDxsm64| {
-        u128::from(1 + below(rng, 9)) * 10u128.pow(below(rng, largest_power + 1) as u32)
-    };
+    let weight =
+        |rng: &mut Lcg128CmDxsm64| u128::from(1 + below(rng, 9)) * 10u128.pow(below(rng, largest_power + 1) as u32);
     let mut rows = vec![vec![0; states + ends]; states];
     for (i, row) in rows.iter_mut().enumerate() {
         for cell in row.iter_mut() {
@@ -196,7 +195,8 @@ fn the_law_agrees_with_fractions_step_by_step() {
         if solve(&model).mean_time().value > 1e3 {
             continue;
         }
-        let exact = Exact::solve(&model, &Request { law: true, levels: vec![0.5, 0.9], times: vec![12] }, &Silent).unwrap();
+        let exact =
+            Exact::solve(&model, &Request { law: true, levels: vec![0.5, 0.9], times: vec![12] }, &Silent).unwrap();
         let Ok(law) = exact.law() else { continue };
         let chain = model.chain();
         let mut mass = vec![RBig::ZERO; chain.states()];

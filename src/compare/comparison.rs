@@ -13,7 +13,7 @@ pub enum ToleranceSource {
     Default,
     /// A default that was widened from this value until its row needed no more than 500,000 replications.
     Widened {
-        /// The default before.
+        /// The default before, in the unit of the quantity.
         from: f64,
     },
     /// The user's, which is never touched.
@@ -39,7 +39,7 @@ pub enum Guarantee {
     Exact,
     /// It does so in the limit of many replications.
     Approximate,
-    /// Nothing is random: the row spends no level.
+    /// The row spends no level: nothing is random, or it is decided by the same event as another row.
     Certain,
 }
 

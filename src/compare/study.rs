@@ -1,76 +1,69 @@
-//! A comparison before it is run: rows, tolerances, sizes.
+//! A comparison from its rows to its verdict.
 
 use std::sync::Arc;
 
 use crate::exact::Exact;
-use crate::model::{Quantity, Tolerances, Warning};
+use crate::model::{Model, Quantity, Warning};
 use crate::sampling::{Grid, Tally};
 
-use super::{Comparison, Finding};
-
-/// What the user asks of a comparison.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Settings {
-    /// Probability, at most, that any row of the table gives a wrong verdict; between 0 and 1 exclusively.
-    pub error_rate: f64,
-    /// Probability that every row agrees when there is no difference, to which the plan sizes itself.
-    pub power: f64,
-    /// Rows instead of those of the model or the default ones.
-    pub quantities: Option<Vec<Quantity>>,
-    /// Tolerances that take precedence over those of the model.
-    pub tolerances: Tolerances,
-}
-
-impl Default for Settings {
-    fn default() -> Self {
-        Self { error_rate: 0.01, power: 0.95, quantities: None, tolerances: Tolerances::default() }
-    }
-}
-
-/// Why a comparison cannot be set up: the user's settings do not fit the model.
-#[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
-#[error("{text}; {remedy}")]
-pub struct StudyFault {
-    /// What is wrong, with the value.
-    pub text: String,
-    /// What to do about it.
-    pub remedy: String,
-}
-
-/// How many replications the table needs.
-#[derive(Debug, Clone, PartialEq)]
-pub struct SizePlan {
-    /// The smallest multiple of a block at which every row is conclusive with the power asked, if there is one.
-    pub replications: Option<u64>,
-    /// The row that needs most by itself.
-    pub demanding: Option<Quantity>,
-    /// What the table would need without that row.
-    pub without: Option<u64>,
-    /// Rows that no number of replications decides, each with the reason.
-    pub never: Vec<(Quantity, String)>,
-}
+use super::draft::draft;
+use super::evaluate::{Terms, evaluate};
+use super::planned::Planned;
+use super::quantities::{candidates, select};
+use super::settle::settle;
+use super::size::{self, SizePlan, level};
+use super::{Comparison, Finding, NotCompared, Settings, StudyFault, impossible, verdict, warnings};
 
 /// A comparison before it is run.
 #[derive(Debug)]
 pub struct Study<'a> {
     exact: &'a Exact<'a>,
+    rows: Vec<Planned<'a>>,
+    not_compared: Vec<NotCompared>,
+    warnings: Vec<Warning>,
+    grid: Arc<Grid>,
+    terms: Terms,
 }
 
 impl<'a> Study<'a> {
     /// Lists the quantities that a check of this model compares by default or by the wish of its `compare`; the request of
-    /// the exact solver follows from them.
-    pub fn quantities(model: &crate::model::Model, settings: &Settings) -> Vec<Quantity> {
-        let _ = (model, settings);
-        todo!()
+    /// the exact solver follows from them. [`Study::new`] chooses among them by the exact answers.
+    pub fn quantities(model: &Model, settings: &Settings) -> Vec<Quantity> {
+        candidates(model, settings)
     }
 
     /// Sets up a comparison.
     ///
     /// # Errors
     /// Settings that do not fit the model.
+    ///
+    /// # Complexity
+    /// A few milliseconds besides what the law costs: some fifty looks at each row for its tolerance.
     pub fn new(exact: &'a Exact<'a>, settings: &Settings) -> Result<Self, StudyFault> {
-        let _ = settings;
-        Ok(Self { exact })
+        let model = exact.model();
+        settings.check(model)?;
+        let selection = select(exact, settings);
+        let mut drafted = Vec::new();
+        let mut refused = Vec::new();
+        for quantity in selection.rows {
+            let given = settings.tolerance(model, &quantity);
+            match draft(exact, quantity, given) {
+                Ok(row) => drafted.push(row),
+                Err(not_compared) => refused.push(not_compared),
+            }
+        }
+        let (rows, too_much) = settle(drafted, settings.error_rate, settings.power);
+        refused.extend(too_much);
+        let mut warnings = warnings::left_out(&refused);
+        warnings.extend(warnings::unlisted(&selection.left_out));
+        refused.extend(selection.left_out);
+        warnings.extend(warnings::wide(&rows, settings.power));
+        warnings.extend(warnings::unused(model, settings, &rows, &refused));
+        let grid = Arc::new(Grid::new(rows.iter().flat_map(Planned::cuts).collect()));
+        let alpha = level(&rows, settings.error_rate);
+        warnings.extend(warnings::never(&rows, alpha, settings.power));
+        let terms = Terms { error_rate: settings.error_rate, power: settings.power, alpha };
+        Ok(Self { exact, rows, not_compared: refused, warnings, grid, terms })
     }
 
     /// The exact answers that the study compares with.
@@ -80,30 +73,46 @@ impl<'a> Study<'a> {
 
     /// Number of rows.
     pub fn rows(&self) -> usize {
-        todo!()
+        self.rows.len()
     }
 
     /// Where the tally must cut times.
     pub fn grid(&self) -> Arc<Grid> {
-        todo!()
+        Arc::clone(&self.grid)
     }
 
     /// How many replications the table needs.
     pub fn plan(&self) -> SizePlan {
-        todo!()
+        size::plan(&self.rows, self.terms.error_rate, self.terms.power)
     }
 
-    /// What deserves a look before the run: wide tolerances, widened ones, rows left out.
+    /// What deserves a look before the run: wide tolerances, widened ones, rows left out, rows that are never decided.
     pub fn warnings(&self) -> Vec<Warning> {
-        todo!()
+        self.warnings.clone()
     }
 
     /// Compares a tally, whose grid must be [`Study::grid`]; `findings` are impossible outcomes that an audit saw.
+    /// Impossible outcomes that the tally shows by itself join them.
     ///
     /// # Panics
     /// When the tally is over another grid or other ends.
-    pub fn compare(&self, tally: &Tally, findings: Vec<Finding>) -> Comparison {
-        let _ = (tally, findings);
-        todo!()
+    pub fn compare(&self, tally: &Tally, mut findings: Vec<Finding>) -> Comparison {
+        assert_eq!(
+            tally.ends(),
+            self.exact.model().chain().ends().len(),
+            "the tally is over other ends than the model"
+        );
+        assert!(tally.grid() == &*self.grid, "the tally cuts times elsewhere than the study asks for");
+        findings.extend(impossible::findings(self.exact, tally, &findings));
+        let rows: Vec<_> = (0..self.rows.len()).map(|at| evaluate(&self.rows, at, tally, self.terms)).collect();
+        let verdict = verdict::of_table(&rows, &findings);
+        Comparison {
+            rows,
+            findings,
+            not_compared: self.not_compared.clone(),
+            verdict,
+            replications: tally.replications(),
+            error_rate: self.terms.error_rate,
+        }
     }
 }

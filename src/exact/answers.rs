@@ -1,5 +1,7 @@
 //! The answers of a model.
 
+use std::sync::OnceLock;
+
 use crate::model::{Model, Progress, Quantity};
 
 use super::dd::{Dd, U2};
@@ -42,7 +44,8 @@ pub struct Exact<'a> {
     linear: Linear,
     /// Ends that the start can reach.
     reachable: Vec<bool>,
-    support: Support,
+    /// Only audits ask for it.
+    support: OnceLock<Support>,
     law: Result<Law, LawRefusal>,
     shape: Shape,
 }
@@ -63,8 +66,9 @@ impl<'a> Exact<'a> {
         let chain = model.chain();
         let linear = Linear::solve(chain, progress)?;
         let law = Law::of(chain, linear.mean.value, request, progress)?;
-        let reachable = chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
-        let mut exact = Self { model, linear, reachable, support: Support::of(chain), law, shape: Shape::constant(0.0) };
+        let reachable =
+            chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
+        let mut exact = Self { model, linear, reachable, support: OnceLock::new(), law, shape: Shape::constant(0.0) };
         let all: Vec<usize> = (0..chain.ends().len()).collect();
         if let Some(shape) = exact.shape_given(&all) {
             exact.shape = shape;
@@ -149,7 +153,7 @@ impl<'a> Exact<'a> {
     /// # Panics
     /// When there is no such end.
     pub fn is_possible(&self, end: usize, time: u64) -> bool {
-        self.reachable[end] && self.support.is_possible(end, time)
+        self.reachable[end] && self.support.get_or_init(|| Support::of(self.model.chain())).is_possible(end, time)
     }
 
     /// Moments of the time, for planning.

@@ -89,9 +89,8 @@ impl<'a> Elimination<'a> {
         let mut inside = Vec::with_capacity(states.len());
         let mut exit = Vec::with_capacity(states.len());
         for state in states {
-            let (within, out): (Vec<&Move>, Vec<&Move>) = self.moves[*state as usize]
-                .iter()
-                .partition(|one| self.class_of[one.to as usize] as usize == number);
+            let (within, out): (Vec<&Move>, Vec<&Move>) =
+                self.moves[*state as usize].iter().partition(|one| self.class_of[one.to as usize] as usize == number);
             inside.push(within.iter().map(|one| (self.place_of[one.to as usize], one.probability)).collect());
             exit.push(out.iter().fold(Dd::ZERO, |sum, one| sum.plus(one.probability)));
         }
@@ -178,5 +177,85 @@ impl<'a> Elimination<'a> {
             }
         }
         Ok(Solution { of: y, error: worst })
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use dashu_ratio::RBig;
+
+    use super::*;
+    use crate::model::{Draft, Silent};
+
+    /// The walk on `0..=top` that goes up with probability 9/10, state `i` at number `i − 1`.
+    fn walk(top: usize) -> crate::model::Model {
+        let mut draft = Draft::new("walk");
+        for i in 1..top {
+            draft.moves(&i.to_string(), &(i + 1).to_string(), "0.9");
+            draft.moves(&i.to_string(), &(i - 1).to_string(), "rest");
+        }
+        draft.absorbing("0");
+        draft.absorbing(&top.to_string());
+        draft.start("1");
+        draft.check().unwrap()
+    }
+
+    fn exactly(x: Dd) -> RBig {
+        RBig::try_from(x.hi).unwrap() + RBig::try_from(x.lo).unwrap()
+    }
+
+    #[test]
+    fn double_double_solutions_stay_within_their_relative_bounds() {
+        // Ruin from i: (ρ^i − ρ^a)/(1 − ρ^a) with ρ = 1/9; mean duration i/(q − p) − a/(q − p) (1 − ρ^i)/(1 − ρ^a) with
+        // q − p = −4/5: Feller I (1968), XIV.2 and 3, from memory.
+        for top in [2, 5, 40, 200] {
+            let model = walk(top);
+            let chain = model.chain();
+            let elimination = Elimination::of(chain, &Silent).unwrap();
+            let mut down = vec![Dd::ZERO; chain.states()];
+            let mut ones = down.clone();
+            for state in chain.components().iter().flatten().map(|state| *state as usize) {
+                ones[state] = Dd::ONE;
+                let low = chain.state("0").unwrap();
+                for one in elimination.moves(state).iter().filter(|one| one.to as usize == low) {
+                    down[state] = one.probability;
+                }
+            }
+            let ruin = elimination.column(&Solution { of: down, error: INPUT * U2 }).unwrap();
+            let times = elimination.column(&Solution { of: ones, error: 0.0 }).unwrap();
+            let rho = |power: usize| RBig::from(9).pow(-(power as isize));
+            let mut worst = 0.0f64;
+            for i in 1..top {
+                let state = chain.state(&i.to_string()).unwrap();
+                let chance = (rho(i) - rho(top)) / (RBig::ONE - rho(top));
+                let share = (RBig::ONE - rho(i)) / (RBig::ONE - rho(top));
+                let duration =
+                    (RBig::from(top as u64) * share - RBig::from(i as u64)) / (RBig::from(4) / RBig::from(5));
+                for (found, truth) in [(&ruin, chance), (&times, duration)] {
+                    let off = ((exactly(found.of[state]) - &truth) / truth).to_f64().value().abs();
+                    assert!(off <= found.error, "{top} {i}: {off:e} beyond {:e}", found.error);
+                    worst = worst.max(off / U2);
+                }
+            }
+            assert!(top == 2 || worst > 0.5, "the last digits are not those of double-double numbers: {worst}");
+        }
+    }
+
+    #[test]
+    fn a_class_too_large_is_refused_before_any_work() {
+        let mut draft = Draft::new("full");
+        for i in 0..6000usize {
+            // Far moves both ways make the envelope full.
+            draft.moves(&format!("s{i}"), &format!("s{}", (i * 977 + 7) % 6000), "0.5");
+            draft.moves(&format!("s{i}"), &format!("s{}", (i + 1) % 6000), "0.25");
+            draft.moves(&format!("s{i}"), "end", "rest");
+        }
+        draft.absorbing("end");
+        draft.start("s0");
+        let model = draft.check().unwrap();
+        match Elimination::of(model.chain(), &Silent) {
+            Err(ExactError::TooLarge { states, work, limit, .. }) => assert!(states == 6000 && work > limit),
+            other => panic!("{:?}", other.err()),
+        }
     }
 }

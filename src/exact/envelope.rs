@@ -9,7 +9,7 @@
 //! another and kept only between their first and last entry, so a band costs what a band must.
 //!
 //! # Accuracy
-//! The bound is derived in [`crate::exact`].
+//! The bound is derived in the documentation of [`crate::exact`].
 //!
 //! # Reference
 //! Grassmann, Taksar & Heyman, Oper. Res. 33 (1985) 1107, doi:10.1287/opre.33.5.1107.
@@ -51,6 +51,18 @@ struct FactorRow {
     entries: Stretch,
     /// The pivot.
     leave: Dd,
+}
+
+impl FactorRow {
+    /// `f` left of the diagonal in row `i`, with its columns.
+    fn below(&self, i: usize) -> impl Iterator<Item = (usize, Dd)> + '_ {
+        (self.first..i).map(|k| (k, self.entries.get(k - self.first)))
+    }
+
+    /// `u` right of it.
+    fn above(&self, i: usize) -> impl Iterator<Item = (usize, Dd)> + '_ {
+        (i + 1..self.first + self.entries.hi.len()).map(|j| (j, self.entries.get(j - self.first)))
+    }
 }
 
 /// Why a class could not be eliminated.
@@ -194,18 +206,15 @@ impl Factor {
     pub(super) fn solve_column(&self, b: &mut [Dd]) -> Result<(), Refusal> {
         let mut x: Vec<Dd> = self.order.iter().map(|state| b[*state as usize]).collect();
         for (i, row) in self.rows.iter().enumerate() {
-            let mut sum = x[i];
-            for k in row.first..i {
-                sum = sum.plus(product(row.entries.get(k - row.first), x[k])?);
+            for (k, f) in row.below(i) {
+                x[i] = x[i].plus(product(f, x[k])?);
             }
-            x[i] = sum;
         }
         for (i, row) in self.rows.iter().enumerate().rev() {
-            let mut sum = x[i];
-            for j in i + 1..row.first + row.entries.hi.len() {
-                sum = sum.plus(product(row.entries.get(j - row.first), x[j])?);
+            for (j, u) in row.above(i) {
+                x[i] = x[i].plus(product(u, x[j])?);
             }
-            x[i] = sum.over(row.leave);
+            x[i] = x[i].over(row.leave);
         }
         self.give_back(&x, b)
     }
@@ -221,13 +230,13 @@ impl Factor {
         let mut y: Vec<Dd> = self.order.iter().map(|state| a[*state as usize]).collect();
         for (i, row) in self.rows.iter().enumerate() {
             y[i] = y[i].over(row.leave);
-            for j in i + 1..row.first + row.entries.hi.len() {
-                y[j] = y[j].plus(product(row.entries.get(j - row.first), y[i])?);
+            for (j, u) in row.above(i) {
+                y[j] = y[j].plus(product(u, y[i])?);
             }
         }
         for (i, row) in self.rows.iter().enumerate().rev() {
-            for k in row.first..i {
-                y[k] = y[k].plus(product(row.entries.get(k - row.first), y[i])?);
+            for (k, f) in row.below(i) {
+                y[k] = y[k].plus(product(f, y[i])?);
             }
         }
         self.give_back(&y, a)

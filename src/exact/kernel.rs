@@ -56,9 +56,9 @@ impl WithSimd for AddMultiple<'_> {
         let Self { f, x, y } = self;
         // The loop is compiled once per processor family; only the exact product differs, and both ways give its bits.
         if S::IS_SCALAR {
-            each(f, x, y, two_product);
+            each(f, x, y, &two_product);
         } else {
-            each(f, x, y, |a, b| {
+            each(f, x, y, &|a, b| {
                 let p = a * b;
                 (p, a.mul_add(b, -p))
             });
@@ -67,12 +67,8 @@ impl WithSimd for AddMultiple<'_> {
 }
 
 #[inline(always)]
-fn each(
-    f: Dd,
-    x: (&[f64], &[f64]),
-    y: (&mut [f64], &mut [f64]),
-    product: impl Fn(f64, f64) -> (f64, f64) + Copy,
-) {
+#[expect(clippy::needless_pass_by_value, reason = "a pair of slices is a view")]
+fn each(f: Dd, x: (&[f64], &[f64]), y: (&mut [f64], &mut [f64]), product: &impl Fn(f64, f64) -> (f64, f64)) {
     let n = x.0.len();
     let (x_hi, x_lo, y_hi, y_lo) = (&x.0[..n], &x.1[..n], &mut y.0[..n], &mut y.1[..n]);
     for i in 0..n {

@@ -128,13 +128,8 @@ impl<T: Real> Steps<T> {
             Some(end) => (order.len() + end) as u32,
             None => place[state as usize],
         };
-        let mut steps = Self {
-            offsets: vec![0],
-            moves: Vec::new(),
-            states: order.len(),
-            ends: chain.ends().len(),
-            most: 0.0,
-        };
+        let mut steps =
+            Self { offsets: vec![0], moves: Vec::new(), states: order.len(), ends: chain.ends().len(), most: 0.0 };
         let mut into = vec![0u32; order.len() + steps.ends];
         for state in &order {
             for one in probabilities(chain.row(*state as usize)) {
@@ -178,7 +173,8 @@ impl Law {
         if !request.law {
             return Ok(Err(LawRefusal::NotRequested));
         }
-        let moves: usize = chain.components().iter().flatten().map(|state| chain.row(*state as usize).targets.len()).sum();
+        let moves: usize =
+            chain.components().iter().flatten().map(|state| chain.row(*state as usize).targets.len()).sum();
         // An exponential tail falls below the limit after some twenty means.
         let expected = moves as f64 * mean * 21.0;
         if moves as f64 * mean > BUDGET || mean > LONGEST as f64 {
@@ -205,7 +201,13 @@ impl Law {
         let longest = LONGEST.min((BUDGET / T::COST / (moves as f64 + states as f64)) as u64);
         let least_level = request.levels.iter().fold(1.0f64, |least, level| least.min((1.0 - level) * 0.5));
         let last_time = request.times.iter().copied().max().unwrap_or(0);
-        let mut law = Self { survival: Vec::new(), errors: (sum_error, step_error), edges: Vec::new(), at_edges: Vec::new(), ends };
+        let mut law = Self {
+            survival: Vec::new(),
+            errors: (sum_error, step_error),
+            edges: Vec::new(),
+            at_edges: Vec::new(),
+            ends,
+        };
         let mut entered: Vec<T> = mass[states..].to_vec();
         let mut next = mass.clone();
         // What entered since the last edge.
@@ -236,7 +238,8 @@ impl Law {
             steps.take(&mass, &mut next);
             std::mem::swap(&mut mass, &mut next);
             let fresh = mass[states..].iter().map(|x| x.dd().hi).sum::<f64>();
-            if gathered > 0.0 && gathered + fresh > CELL {
+            // Also before a jump out of nothing, so that its cell holds a single time.
+            if gathered + fresh > CELL && law.edges.last() != Some(&time) {
                 law.edge(time, &entered, step_error, sum_error);
                 gathered = 0.0;
             }
@@ -303,7 +306,7 @@ impl Law {
     }
 
     /// Ascending times, the last of them the horizon, at which P(end = e, time ≤ t) was kept: so close that no more than
-    /// 1/4096 of all outcomes lies between two of them, save in a single step.
+    /// 1/4096 of all outcomes lies between two of them, unless they are neighbouring times.
     pub fn edges(&self) -> &[u64] {
         &self.edges
     }

@@ -184,8 +184,10 @@ pub enum WarningKind {
     CorrectedRow,
     /// A row of the comparison that was left out.
     NotCompared,
-    /// A tolerance as wide as the answer itself.
+    /// A tolerance as wide as the answer itself, or wider than the usual one.
     WideTolerance,
+    /// A row of the comparison that no number of replications decides.
+    NeverDecided,
     /// Something about the data that was audited.
     Data,
 }

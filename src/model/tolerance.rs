@@ -2,7 +2,7 @@
 
 use std::fmt;
 
-use super::quantity::Quantity;
+use super::quantity::{Quantity, QuantityFault};
 
 /// A difference that does not matter.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -51,6 +51,17 @@ pub enum ToleranceKey {
     One(Quantity),
     /// Every quantity of that name, where none is given for it alone.
     All(String),
+}
+
+impl ToleranceKey {
+    /// Reads `NAME` or `NAME:ARGUMENT`.
+    ///
+    /// # Errors
+    /// As [`Quantity::parse`].
+    pub fn parse(text: &str) -> Result<Self, QuantityFault> {
+        let name = text.trim();
+        if Quantity::is_name(name) { Ok(Self::All(name.to_owned())) } else { Quantity::parse(name).map(Self::One) }
+    }
 }
 
 /// The tolerances that a user gave; later entries win.

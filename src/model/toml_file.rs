@@ -298,13 +298,9 @@ impl Reader<'_> {
     }
 
     fn tolerance(&mut self, name: &str, value: &Spanned<DeValue<'_>>, line: u64) {
-        let key = if Quantity::is_name(name) {
-            ToleranceKey::All(name.to_owned())
-        } else {
-            match Quantity::parse(name) {
-                Ok(quantity) => ToleranceKey::One(quantity),
-                Err(reason) => return self.unknown_quantity(name, line, reason.text, reason.remedy),
-            }
+        let key = match ToleranceKey::parse(name) {
+            Ok(key) => key,
+            Err(reason) => return self.unknown_quantity(name, line, reason.text, reason.remedy),
         };
         let remedy = "write an absolute one such as 0.005, or a relative one such as \"1 %\"";
         let Some(text) = self.number_text(value, name, remedy) else { return };

@@ -26,6 +26,7 @@
 //! ```
 
 mod alias;
+mod estimate;
 mod grid;
 mod quantise;
 mod run;
@@ -33,6 +34,7 @@ mod sampler;
 mod streams;
 mod tally;
 
+pub use estimate::{Estimate, estimates};
 pub use grid::Grid;
 pub use run::{Interrupted, OutcomeSource, Plan, sample, sample_with};
 pub use sampler::{Outcome, Sampler};

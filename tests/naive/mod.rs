@@ -1,6 +1,8 @@
 //! The truth, the slow way: exact fractions and textbook Gaussian elimination. It shares no code with the library beyond the
 //! accessors of the model.
 
+#![allow(dead_code)]
+
 use dashu_ratio::RBig;
 use tallystone::model::Chain;
 

@@ -1,0 +1,52 @@
+//! `audit`: somebody else's outcomes.
+
+use std::time::Instant;
+
+use super::arguments::Audit;
+use super::failure::{Failure, of_verdict};
+use super::{Session, output, steps};
+use crate::audit::read_outcomes;
+use crate::compare::Study;
+use crate::exact::{Exact, Request};
+use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary};
+
+/// Reads the model, solves, reads the outcomes, compares, writes.
+pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
+    let model = steps::read(&arguments.model, &arguments.reading)?;
+    let settings = steps::settings(&arguments.comparing);
+    let started = Instant::now();
+    let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, &settings)), &session.watch)?;
+    let study = Study::new(&exact, &settings)?;
+    steps::look_at(&study.warnings(), &arguments.reading)?;
+    let outcomes = read_outcomes(&arguments.outcomes, &study, &session.watch)?;
+    let audited = outcomes.audited;
+    let comparison = study.compare(&audited.tally, audited.findings);
+    let verdict = comparison.verdict;
+
+    let size = study.plan();
+    let mut document = Document::new(ModelSummary::of(&model), Body::Audit(comparison));
+    document.inputs.push(Input {
+        file: outcomes.file,
+        sha256: outcomes.sha256,
+        rows: Some(outcomes.rows),
+        bad_rows: Some(0),
+        ignored_columns: outcomes.ignored_columns,
+    });
+    document.plan = Some(PlanSummary {
+        error_rate: Some(settings.error_rate),
+        rows: study.rows(),
+        power: Some(settings.power),
+        replications: size.replications,
+        demanding: size.demanding,
+        seed: None,
+    });
+    document.run = Some(RunSummary {
+        replications: Some(audited.tally.replications()),
+        steps: Some(audited.tally.steps()),
+        seconds: started.elapsed().as_secs_f64(),
+        solver: Some(exact.solver()),
+    });
+    document.warnings = model.warnings().iter().cloned().chain(study.warnings()).collect();
+    output::deliver(&steps::complete(document, &model, session), &arguments.output)?;
+    Ok(of_verdict(verdict))
+}

@@ -1,0 +1,109 @@
+//! `check`: the main job.
+
+use std::path::Path;
+use std::time::Instant;
+
+use super::arguments::{Check, Reading};
+use super::failure::{Failure, of_verdict, refused};
+use super::{Session, demo, output, steps};
+use crate::compare::{SizePlan, Study, Verdict};
+use crate::exact::{Exact, Request};
+use crate::model::Model;
+use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary, rounded, thousands};
+use crate::sampling::{BLOCK, Plan, Sampler, sample};
+
+/// Longest run that is started unasked.
+const UNASKED_SECONDS: f64 = 600.0;
+
+/// Checks every model; the worst verdict counts.
+pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
+    if arguments.models.len() > 1 && arguments.output.json.is_some() {
+        let text = format!("--json holds one result, and {} models are given", arguments.models.len());
+        return Err(Failure::Usage(refused("usage", text, "run one model at a time")));
+    }
+    let mut worst = Verdict::Agree;
+    if arguments.demo {
+        let model = demo::model()?;
+        steps::look_at(model.warnings(), &arguments.reading)?;
+        worst = one(&model, arguments, session)?;
+    }
+    for (number, path) in arguments.models.iter().enumerate() {
+        if number > 0 && !arguments.output.quiet {
+            output::to_standard_output(|out| std::io::Write::write_all(out, b"\n"))?;
+        }
+        worst = worst.max(one(&read(path, &arguments.reading)?, arguments, session)?);
+    }
+    Ok(of_verdict(worst))
+}
+
+fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
+    steps::read(path, reading)
+}
+
+/// Reads, solves, samples, compares, writes.
+fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, Failure> {
+    let settings = steps::settings(&arguments.comparing);
+    let (seed, seed_source) = steps::seed(&arguments.sampling)?;
+    let started = Instant::now();
+    let exact = Exact::solve(model, &Request::of(&Study::quantities(model, &settings)), &session.watch)?;
+    let study = Study::new(&exact, &settings)?;
+    steps::look_at(&study.warnings(), &arguments.reading)?;
+
+    let size = study.plan();
+    let sampler = Sampler::new(model.chain());
+    let replications = arguments.sampling.replications.or(size.replications).unwrap_or(BLOCK);
+    let plan = Plan { replications, seed, grid: study.grid() };
+    let tally = steps::on_threads(&arguments.sampling, || {
+        allow(&sampler, &plan, &exact, &size, arguments)?;
+        Ok(sample(&sampler, &plan, &session.watch)?)
+    })?;
+    let comparison = study.compare(&tally, Vec::new());
+    let verdict = comparison.verdict;
+
+    let mut document = Document::new(ModelSummary::of(model), Body::Check(comparison));
+    document.plan = Some(PlanSummary {
+        error_rate: Some(settings.error_rate),
+        rows: study.rows(),
+        power: Some(settings.power),
+        replications: size.replications,
+        demanding: size.demanding,
+        seed: Some((seed, seed_source)),
+    });
+    document.run = Some(RunSummary {
+        replications: Some(tally.replications()),
+        steps: Some(tally.steps()),
+        seconds: started.elapsed().as_secs_f64(),
+        solver: Some(exact.solver()),
+    });
+    document.warnings = model.warnings().iter().cloned().chain(study.warnings()).collect();
+    output::deliver(&steps::complete(document, model, session), &arguments.output)?;
+    Ok(verdict)
+}
+
+/// Refuses a run that is predicted to take longer than allowed.
+fn allow(sampler: &Sampler, plan: &Plan, exact: &Exact<'_>, size: &SizePlan, arguments: &Check) -> Result<(), Failure> {
+    let unasked = arguments.sampling.replications.is_none().then_some(UNASKED_SECONDS);
+    let Some(limit) = arguments.time_limit.or(unasked) else { return Ok(()) };
+    let seconds = steps::predicted_seconds(sampler, plan, exact.mean_time().value);
+    if seconds <= limit {
+        return Ok(());
+    }
+    let demanding = match (&size.demanding, size.without) {
+        (Some(quantity), Some(without)) if arguments.sampling.replications.is_none() => format!(
+            "; `{quantity}` needs most, and without it {} replications would do, about {} s",
+            thousands(without),
+            rounded(seconds * without as f64 / plan.replications as f64, 2)
+        ),
+        (Some(quantity), _) if arguments.sampling.replications.is_none() => format!("; `{quantity}` needs most"),
+        _ => String::new(),
+    };
+    let text = format!(
+        "the run is not started: {} replications of {} steps in the mean would take about {} s, more than the limit of {} s{demanding}",
+        thousands(plan.replications),
+        rounded(exact.mean_time().value, 3),
+        rounded(seconds, 2),
+        rounded(limit, 3)
+    );
+    let remedy = "allow more with --time-limit, widen a tolerance, or choose rows with --quantity";
+    Err(Failure::Undecided(refused("not_started", text, remedy)))
+}

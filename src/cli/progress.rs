@@ -1,0 +1,67 @@
+//! Progress on standard error, with rate and time left.
+
+use std::sync::{Mutex, PoisonError};
+use std::time::Duration;
+
+use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
+
+use super::signals::Stop;
+use crate::model::Progress;
+
+/// Shows progress bars, if they are wanted, and passes on the wish to stop.
+#[derive(Debug)]
+pub(super) struct Watch {
+    bar: Mutex<Option<ProgressBar>>,
+    is_shown: bool,
+    stop: Stop,
+}
+
+impl Watch {
+    pub(super) fn new(is_shown: bool, stop: Stop) -> Self {
+        Self { bar: Mutex::new(None), is_shown, stop }
+    }
+
+    fn with_bar(&self, act: impl FnOnce(&mut Option<ProgressBar>)) {
+        act(&mut self.bar.lock().unwrap_or_else(PoisonError::into_inner));
+    }
+}
+
+impl Progress for Watch {
+    fn begin(&self, phase: &str, unit: &str, total: Option<u64>) {
+        if !self.is_shown {
+            return;
+        }
+        let template = match total {
+            Some(_) => "{msg} {bar:24} {human_pos} of {human_len} {prefix} ({per_sec}, {eta} left)",
+            None => "{msg} {spinner} {human_pos} {prefix} ({per_sec})",
+        };
+        let bar = ProgressBar::with_draw_target(total, ProgressDrawTarget::stderr_with_hz(8));
+        if let Ok(style) = ProgressStyle::with_template(template) {
+            bar.set_style(style);
+        }
+        bar.set_message(phase.to_owned());
+        bar.set_prefix(unit.to_owned());
+        bar.enable_steady_tick(Duration::from_millis(250));
+        self.with_bar(|current| *current = Some(bar));
+    }
+
+    fn advance(&self, done: u64) {
+        self.with_bar(|current| {
+            if let Some(bar) = current {
+                bar.inc(done);
+            }
+        });
+    }
+
+    fn end(&self) {
+        self.with_bar(|current| {
+            if let Some(bar) = current.take() {
+                bar.finish_and_clear();
+            }
+        });
+    }
+
+    fn interrupted(&self) -> bool {
+        self.stop.is_asked()
+    }
+}

@@ -1,0 +1,116 @@
+//! `sample`: the sampler alone.
+
+use std::fs::File;
+use std::io::{self, BufWriter, Write};
+use std::path::Path;
+use std::sync::Arc;
+use std::time::Instant;
+
+use super::arguments::Sample;
+use super::failure::{Failure, status};
+use super::{Session, output, steps};
+use crate::model::{Chain, Model, Progress};
+use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary};
+use crate::sampling::{Grid, Plan, Sampler, Streams, Tally, estimates, sample};
+
+/// Replications where none are asked for.
+const REPLICATIONS: u64 = 100_000;
+
+/// Reads, samples, writes.
+pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> {
+    let model = steps::read(&arguments.model, &arguments.reading)?;
+    let (seed, seed_source) = steps::seed(&arguments.sampling)?;
+    let replications = arguments.sampling.replications.unwrap_or(REPLICATIONS);
+    let plan = Plan { replications, seed, grid: Arc::new(Grid::logarithmic()) };
+    let sampler = Sampler::new(model.chain());
+    let inputs: Vec<&Path> = model.inputs().iter().map(|input| Path::new(&input.file)).collect();
+    let started = Instant::now();
+    let tally = match &arguments.write_outcomes {
+        Some(path) => write_outcomes(path, &inputs, &sampler, &plan, model.chain(), &session.watch)?,
+        None => steps::on_threads(&arguments.sampling, || Ok(sample(&sampler, &plan, &session.watch)?))?,
+    };
+    let seconds = started.elapsed().as_secs_f64();
+    if let Some(path) = &arguments.write_tally {
+        output::write_file(path, &inputs, |out| write!(out, "{tally}"))?;
+    }
+    let document = document(&model, &tally, &plan, seed_source, seconds);
+    output::deliver(&steps::complete(document, &model, session), &arguments.output)?;
+    Ok(status::WORKED)
+}
+
+fn document(
+    model: &Model,
+    tally: &Tally,
+    plan: &Plan,
+    seed_source: crate::report::SeedSource,
+    seconds: f64,
+) -> Document {
+    let mut document = Document::new(ModelSummary::of(model), Body::Sample(estimates(model, tally)));
+    document.plan = Some(PlanSummary {
+        error_rate: None,
+        rows: 0,
+        power: None,
+        replications: Some(plan.replications),
+        demanding: None,
+        seed: Some((plan.seed, seed_source)),
+    });
+    let replications = Some(tally.replications());
+    document.run = Some(RunSummary { replications, steps: Some(tally.steps()), seconds, solver: None });
+    document.warnings = model.warnings().to_vec();
+    document
+}
+
+/// Samples one replication after another, which are the same as those of any number of threads, and writes each.
+pub(super) fn write_outcomes(
+    path: &Path,
+    inputs: &[&Path],
+    sampler: &Sampler,
+    plan: &Plan,
+    chain: &Chain,
+    progress: &dyn Progress,
+) -> Result<Tally, Failure> {
+    let mut tally = Tally::new(sampler.ends(), Arc::clone(&plan.grid));
+    let mut interrupted = None;
+    let walked = output::write_file(path, inputs, |out| {
+        progress.begin("sampling", "replications", Some(plan.replications));
+        walk(out, sampler, plan, chain, &mut tally, progress).inspect_err(|_| interrupted = Some(tally.replications()))
+    });
+    progress.end();
+    match interrupted {
+        Some(done) if progress.interrupted() => {
+            Err(Failure::Interrupted(format!("interrupted after {done} replications; no file was written")))
+        }
+        _ => walked.map(|()| tally),
+    }
+}
+
+fn walk(
+    out: &mut BufWriter<&mut File>,
+    sampler: &Sampler,
+    plan: &Plan,
+    chain: &Chain,
+    tally: &mut Tally,
+    progress: &dyn Progress,
+) -> io::Result<()> {
+    let names: Vec<String> = chain.ends().iter().map(|end| quoted(&end.name)).collect();
+    writeln!(out, "replication,end,time")?;
+    let streams = Streams::new(plan.seed);
+    for block in 0..plan.blocks() {
+        let mut rng = streams.block(block);
+        for _ in 0..plan.replications_in(block) {
+            let outcome = sampler.walk(&mut rng, progress).map_err(|stopped| io::Error::other(stopped.to_string()))?;
+            writeln!(out, "{},{},{}", tally.replications(), names[outcome.end as usize], outcome.time)?;
+            tally.add(outcome.end as usize, outcome.time);
+        }
+        progress.advance(plan.replications_in(block));
+        if progress.interrupted() {
+            return Err(io::Error::other("interrupted"));
+        }
+    }
+    Ok(())
+}
+
+/// A field of a CSV file, quoted where it must be.
+fn quoted(name: &str) -> String {
+    if name.contains([',', '"', '\n', '\r']) { format!("\"{}\"", name.replace('"', "\"\"")) } else { name.to_owned() }
+}

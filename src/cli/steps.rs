@@ -1,0 +1,101 @@
+//! The steps that commands share.
+
+use std::path::Path;
+use std::time::{Instant, SystemTime, UNIX_EPOCH};
+
+use rand::TryRng;
+use rand::rngs::SysRng;
+
+use super::arguments::{Comparing, DEFAULT_SEED, Reading, Sampling, Seed, Warnings};
+use super::failure::{Failure, refused};
+use super::{Session, output};
+use crate::compare::Settings;
+use crate::model::{Model, ReadOptions, Silent, Tolerances, Warning};
+use crate::report::{Document, Input, SeedSource};
+use crate::sampling::{Plan, Sampler, sample};
+
+/// Reads a model and says what deserves a look.
+pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
+    let options = ReadOptions { start: reading.start.clone(), absorbing: reading.absorbing.clone() };
+    let model = Model::read(path, &options)?;
+    look_at(model.warnings(), reading)?;
+    Ok(model)
+}
+
+/// Prints warnings, and stops if the user refuses them.
+pub(super) fn look_at(warnings: &[Warning], reading: &Reading) -> Result<(), Failure> {
+    output::warn(warnings);
+    if reading.warnings == Warnings::Refuse && !warnings.is_empty() {
+        let text = format!("{} warnings, which --warnings refuse does not let pass", warnings.len());
+        return Err(Failure::Data(refused("warnings", text, "see to them, or allow them")));
+    }
+    Ok(())
+}
+
+/// The wishes for a comparison.
+pub(super) fn settings(comparing: &Comparing) -> Settings {
+    let mut tolerances = Tolerances::default();
+    comparing.tolerances.iter().for_each(|(key, value)| tolerances.set(key.clone(), *value));
+    Settings {
+        error_rate: comparing.error_rate,
+        power: comparing.power,
+        quantities: (!comparing.quantities.is_empty()).then(|| comparing.quantities.clone()),
+        tolerances,
+    }
+}
+
+/// The seed and where it comes from.
+pub(super) fn seed(sampling: &Sampling) -> Result<(u64, SeedSource), Failure> {
+    match sampling.seed {
+        None => Ok((DEFAULT_SEED, SeedSource::Default)),
+        Some(Seed::Fixed(seed)) => Ok((seed, SeedSource::Given)),
+        Some(Seed::Random) => {
+            let seed = SysRng.try_next_u64().map_err(|error| {
+                Failure::Io(refused("io", format!("the system gives no random number: {error}"), "give a seed"))
+            })?;
+            Ok((seed, SeedSource::Random))
+        }
+    }
+}
+
+/// Runs work on the number of threads asked for.
+pub(super) fn on_threads<T: Send>(
+    sampling: &Sampling,
+    work: impl FnOnce() -> Result<T, Failure> + Send,
+) -> Result<T, Failure> {
+    let threads = sampling.threads.map_or(0, |threads| usize::try_from(threads).unwrap_or(usize::MAX).min(4096));
+    let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().map_err(|error| {
+        Failure::Io(refused("io", format!("the system gives no threads: {error}"), "ask for fewer with --threads"))
+    })?;
+    pool.install(work)
+}
+
+/// Steps that a pilot should take: some milliseconds.
+const PILOT_STEPS: f64 = 1e6;
+/// A step is faster than this on no machine.
+const FASTEST_STEP_SECONDS: f64 = 5e-10;
+
+/// Seconds that sampling will take, by a short pilot on one thread; from the number of steps alone where even the pilot
+/// would be long.
+pub(super) fn predicted_seconds(sampler: &Sampler, plan: &Plan, mean_steps: f64) -> f64 {
+    let threads = rayon::current_num_threads() as f64;
+    let steps = mean_steps * plan.replications as f64;
+    let replications = (PILOT_STEPS / mean_steps.max(1.0)).clamp(1.0, 4096.0) as u64;
+    if mean_steps * replications as f64 > 100.0 * PILOT_STEPS {
+        return steps * FASTEST_STEP_SECONDS / threads;
+    }
+    let pilot = Plan { replications: replications.min(plan.replications), ..plan.clone() };
+    let started = Instant::now();
+    let piloted = sample(sampler, &pilot, &Silent);
+    debug_assert!(piloted.is_ok(), "nobody interrupts a silent run");
+    started.elapsed().as_secs_f64() / pilot.replications as f64 * plan.replications as f64 / threads
+}
+
+/// Fills in what is known of every run.
+pub(super) fn complete(mut document: Document, model: &Model, session: &Session) -> Document {
+    document.command.clone_from(&session.command);
+    document.inputs.splice(0..0, model.inputs().iter().map(Input::from));
+    let now = SystemTime::now().duration_since(UNIX_EPOCH);
+    document.when = now.ok().map(|since| since.as_secs());
+    document
+}

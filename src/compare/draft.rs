@@ -1,0 +1,163 @@
+//! From a quantity to a row: its exact answer, and the method that fits it.
+
+use crate::exact::{Bounded, Exact};
+use crate::model::{Quantity, Tolerance};
+
+use super::certain::Certain;
+use super::curves::Curves;
+use super::law::{Band, ChiSquare};
+use super::mean::{Mean, Spread};
+use super::method::Method;
+use super::planned::{Basis, Outcomes, Planned, Tested};
+use super::quantile::Quantile;
+use super::share::{Event, Share};
+use super::variance::{Squares, Variance};
+use super::{NotCompared, tolerance};
+
+/// Makes a row of a quantity, with the tolerance that the user gave, if any; a default one is not settled yet.
+///
+/// # Errors
+/// Why there is no such row.
+pub(super) fn draft<'a>(
+    exact: &'a Exact<'a>,
+    quantity: Quantity,
+    given: Option<Tolerance>,
+) -> Result<Planned<'a>, NotCompared> {
+    if let Some((answer, certain)) = certainty(exact, &quantity) {
+        return Ok(Planned { quantity, exact: answer, basis: Basis::Certain(certain) });
+    }
+    let answer = match exact.answer(&quantity) {
+        Ok(answer) => answer,
+        Err(refusal) => return Err(NotCompared { quantity, exact: None, text: refusal.to_string() }),
+    };
+    match method(exact, &quantity, answer, given) {
+        Ok(chosen) => {
+            let bounds = answer.unwrap_or(Bounded::exactly(0.0));
+            let default = chosen.default.unwrap_or_else(|| tolerance::default_of(&quantity, bounds));
+            let tested = Tested {
+                method: chosen.method,
+                bounds,
+                default,
+                tolerance: tolerance::given(given.unwrap_or(default), bounds),
+                is_given: given.is_some(),
+                outcomes: outcomes(exact, &quantity),
+                shares: None,
+            };
+            Ok(Planned { quantity, exact: answer, basis: Basis::Tested(tested) })
+        }
+        Err(text) => Err(NotCompared { quantity, exact: answer, text }),
+    }
+}
+
+/// All ends of the model.
+fn all_ends(exact: &Exact<'_>) -> Vec<usize> {
+    (0..exact.model().chain().ends().len()).collect()
+}
+
+fn named(exact: &Exact<'_>, name: &str) -> Vec<usize> {
+    exact.model().ends_named(name).unwrap_or_default()
+}
+
+/// The ends that can be reached, of those whose probability a quantity is.
+fn outcomes(exact: &Exact<'_>, quantity: &Quantity) -> Option<Outcomes> {
+    let Quantity::AbsorptionProbability(name) = quantity else { return None };
+    let is_reachable = |end: &usize| exact.absorption(&[*end]).high > 0.0;
+    let reachable = all_ends(exact).into_iter().filter(is_reachable).count();
+    Some(Outcomes { ends: named(exact, name).into_iter().filter(is_reachable).collect(), reachable })
+}
+
+/// The answer to a quantity about which nothing is random, with what the model allows.
+fn certainty(exact: &Exact<'_>, quantity: &Quantity) -> Option<(Option<Bounded>, Certain)> {
+    let all = all_ends(exact);
+    let fixed = |time: f64| {
+        let time_of_all = exact.only_time(&all)?;
+        Some((Some(Bounded::exactly(time)), Certain::Time { ends: all.clone(), time: time_of_all }))
+    };
+    match quantity {
+        Quantity::AbsorptionProbability(name) => {
+            let ends = named(exact, name);
+            let probability = exact.absorption(&ends);
+            let always = probability == Bounded::exactly(1.0);
+            let never = probability == Bounded::exactly(0.0);
+            (always || never).then_some((Some(probability), Certain::Event { event: Event::Ends(ends), always }))
+        }
+        Quantity::MeanTime | Quantity::TimeQuantile(_) => fixed(exact.only_time(&all)? as f64),
+        Quantity::VarianceTime | Quantity::SdTime => fixed(0.0),
+        Quantity::SurvivalProbability(time) => {
+            let always = exact.only_time(&all)? > *time;
+            let probability = Bounded::exactly(f64::from(u8::from(always)));
+            Some((Some(probability), Certain::Event { event: Event::LongerThan(*time), always }))
+        }
+        Quantity::MeanTimeGiven(name) => {
+            let ends = named(exact, name);
+            let time = exact.only_time(&ends)?;
+            Some((Some(Bounded::exactly(time as f64)), Certain::Time { ends, time }))
+        }
+        Quantity::Law => {
+            let time = exact.only_time(&all)?;
+            let mut possible = all.into_iter().filter(|end| exact.absorption(&[*end]).high > 0.0);
+            let end = possible.next()?;
+            possible.next().is_none().then_some((None, Certain::Outcome { end, time }))
+        }
+    }
+}
+
+/// A method, with the default tolerance if that follows from it.
+struct Chosen<'a> {
+    method: Box<dyn Method + 'a>,
+    default: Option<Tolerance>,
+}
+
+impl<'a> Chosen<'a> {
+    fn of(method: impl Method + 'a) -> Self {
+        Self { method: Box::new(method), default: None }
+    }
+}
+
+const UNKNOWN_SHAPE: &str =
+    "the higher moments of this time are not known well enough to say from how many replications an interval holds";
+
+/// The method for a quantity with its answer; the text says why there is none.
+fn method<'a>(
+    exact: &'a Exact<'a>,
+    quantity: &Quantity,
+    answer: Option<Bounded>,
+    given: Option<Tolerance>,
+) -> Result<Chosen<'a>, String> {
+    let undefined = || "it is undefined under the model".to_owned();
+    if matches!(quantity, Quantity::Law) {
+        let law = exact.law().map_err(ToString::to_string)?;
+        let curves = Curves::new(exact, law);
+        let no_tolerance = matches!(given, Some(Tolerance::Absolute(value)) if value == 0.0);
+        return Ok(if no_tolerance { Chosen::of(ChiSquare(curves)) } else { Chosen::of(Band(curves)) });
+    }
+    let bounds = answer.ok_or_else(undefined)?;
+    match quantity {
+        Quantity::AbsorptionProbability(name) => {
+            Ok(Chosen::of(Share { event: Event::Ends(named(exact, name)), exact: bounds }))
+        }
+        Quantity::SurvivalProbability(time) => Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds })),
+        Quantity::MeanTime => {
+            let spread = Spread::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
+            Ok(Chosen::of(Mean { ends: None, share: 1.0, exact: bounds, spread }))
+        }
+        Quantity::MeanTimeGiven(name) => {
+            let ends = named(exact, name);
+            let shape = exact.shape_given(&ends).ok_or_else(undefined)?;
+            let spread = Spread::of(&shape).ok_or(UNKNOWN_SHAPE)?;
+            let share = exact.absorption(&ends).value;
+            Ok(Chosen::of(Mean { ends: Some(ends), share, exact: bounds, spread }))
+        }
+        Quantity::VarianceTime | Quantity::SdTime => {
+            let squares = Squares::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
+            Ok(Chosen::of(Variance { root: *quantity == Quantity::SdTime, exact: bounds, squares }))
+        }
+        Quantity::TimeQuantile(p) => {
+            let law = exact.law().map_err(ToString::to_string)?;
+            let quantile = Quantile { p: *p, exact: bounds, law };
+            let default = tolerance::of_quantile(&quantile);
+            Ok(Chosen { method: Box::new(quantile), default: Some(default) })
+        }
+        _ => Err("this version has no method for it".to_owned()),
+    }
+}
