@@ -213,8 +213,11 @@ fn closing(document: &Document, comparison: &Comparison) -> &'static str {
         }
         (Body::Check(_), _) => "These replications do not decide every row. No other program was tested; use `audit`.",
         (_, Verdict::Agree) => "The outcomes agree with the model, each row within its tolerance.",
-        (_, Verdict::Disagree) => {
+        (_, Verdict::Disagree) if has_row => {
             "The outcomes are not those of the model: the rows marked disagree are beyond their tolerances."
+        }
+        (_, Verdict::Disagree) => {
+            "The outcomes are not those of the model, which makes those listed as findings impossible."
         }
         (_, Verdict::Consistent) => "No difference was seen, and one that matters would have been.",
         (_, Verdict::Inconclusive) => "These outcomes do not decide every row; the notes say how many would.",
