@@ -6,6 +6,7 @@ use sha2::{Digest, Sha256};
 
 use super::classes::{Components, Graph, strongly_connected};
 use super::row::{Row, Rows, Weights};
+use super::source::hexadecimal;
 
 /// Where a replication finishes: an absorbing state, or a closed class of several states.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -130,7 +131,7 @@ impl Chain {
             text(&end.name);
             end.states.iter().for_each(|state| text(&state.to_string()));
         }
-        hash.finalize().iter().fold(String::with_capacity(64), |hex, byte| hex + &format!("{byte:02x}"))
+        hexadecimal(hash)
     }
 }
 

@@ -4,10 +4,14 @@
 use std::collections::HashMap;
 use std::sync::Arc;
 
-use super::fault::{Fault, FaultKind, Place};
+use super::fault::{Fault, FaultKind, Place, shortened};
 use super::number::{Number, NumberFault};
 use super::quantity::Quantity;
 use super::tolerance::{Tolerance, ToleranceKey};
+
+const IN_RANGE: &str = "probabilities lie between 0 and 1; correct it";
+/// Also said of values that are no text and no number at all.
+pub(super) const HOW_TO_WRITE: &str = "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"";
 
 /// A probability as written.
 #[derive(Debug, Clone, PartialEq)]
@@ -23,8 +27,16 @@ pub enum Written {
 pub(super) struct DraftMove {
     pub(super) from: u32,
     pub(super) to: u32,
-    pub(super) value: Written,
+    /// `None` when it could not be read; the move then still tells where the state leads.
+    pub(super) value: Option<Written>,
     pub(super) line: u64,
+}
+
+impl DraftMove {
+    /// Whether its probability is one.
+    pub(super) fn is_certain(&self) -> bool {
+        matches!(&self.value, Some(Written::Number(number)) if number.is_one())
+    }
 }
 
 /// What is known of a state before the check.
@@ -39,6 +51,8 @@ pub(super) struct DraftState {
     pub(super) row: Option<u64>,
     /// Line of its declaration as absorbing, if it has one.
     pub(super) absorbing: Option<u64>,
+    /// Something is wrong with its moves already, so nothing is said of their sum.
+    pub(super) faulty: bool,
 }
 
 /// A named list of states or ends: a class or a group.
@@ -70,9 +84,13 @@ pub struct Draft {
     pub(super) states: Vec<DraftState>,
     index: HashMap<String, u32>,
     pub(super) starts: Vec<(u32, Written, u64)>,
+    /// Something is wrong with the start already, so nothing is said of its sum.
+    pub(super) start_faulty: bool,
     pub(super) moves: Vec<DraftMove>,
     /// The file that the moves stand in.
     pub(super) moves_file: usize,
+    /// The moves could not be read, so nothing is known of states that seem to lack them.
+    pub(super) moves_unread: bool,
     /// A row with only a stay of one is an end without a word, as tables have no other way to say it.
     pub(super) lone_stay_is_absorbing: bool,
     pub(super) classes: Vec<NamedList>,
@@ -101,7 +119,7 @@ impl Draft {
     /// Starts a share of the replications in a state; shares are numbers as in a model file, or `rest`.
     pub fn start_with(&mut self, state: &str, share: &str) {
         let number = self.state(state, 0, 0);
-        if let Some(share) = self.written(share, state, Place::default()) {
+        if let Some(share) = self.written(share, None, Place::default()) {
             self.starts.push((number, share, 0));
         }
     }
@@ -116,9 +134,8 @@ impl Draft {
     pub fn moves(&mut self, from: &str, to: &str, probability: &str) {
         let (from_number, to_number) = (self.state(from, 0, 0), self.state(to, 0, 0));
         self.states[from_number as usize].row = Some(0);
-        if let Some(value) = self.written(probability, from, Place::default()) {
-            self.moves.push(DraftMove { from: from_number, to: to_number, value, line: 0 });
-        }
+        let value = self.written(probability, Some(from_number), Place::default());
+        self.moves.push(DraftMove { from: from_number, to: to_number, value, line: 0 });
     }
 
     /// Reports several ends together under a name.
@@ -150,7 +167,7 @@ impl Draft {
         }
         let number = self.states.len() as u32;
         self.index.insert(name.to_owned(), number);
-        self.states.push(DraftState { name: name.to_owned(), line, file, row: None, absorbing: None });
+        self.states.push(DraftState { name: name.to_owned(), line, file, row: None, absorbing: None, faulty: false });
         number
     }
 
@@ -166,41 +183,33 @@ impl Draft {
         self.faults.push(fault);
     }
 
-    /// Reads a probability; what is wrong with it becomes a fault.
-    pub(super) fn written(&mut self, text: &str, state: &str, place: Place) -> Option<Written> {
-        if text.trim() == "rest" {
+    /// Reads the probability of a move of a state, or a share of the start; what is wrong with it becomes a fault.
+    pub(super) fn written(&mut self, text: &str, state: Option<u32>, place: Place) -> Option<Written> {
+        let text = text.trim();
+        if text == "rest" {
             return Some(Written::Rest);
         }
-        match Number::parse(text) {
-            Ok(number) => self.in_range(number, text, state, place).map(Written::Number),
-            Err(reason) => {
-                let (kind, remedy) = match reason {
-                    NumberFault::NotFinite => (FaultKind::NonFinite, "give a probability between 0 and 1"),
-                    _ => (
-                        FaultKind::NotANumber,
-                        "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"",
-                    ),
-                };
-                let text = text.trim();
-                let fault = Fault::new(kind, place, format!("`{text}` among the moves of `{state}` {reason}"), remedy);
-                self.fault(fault.about(state).valued(text));
-                None
-            }
-        }
-    }
-
-    fn in_range(&mut self, number: Number, text: &str, state: &str, place: Place) -> Option<Number> {
-        let (kind, word) = if number.is_negative() {
-            (FaultKind::Negative, "negative")
-        } else if number.exceeds_one() {
-            (FaultKind::AboveOne, "above 1")
-        } else {
-            return Some(number);
+        let (kind, reason, remedy) = match Number::parse(text) {
+            Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), IN_RANGE),
+            Ok(number) if number.exceeds_one() => (FaultKind::AboveOne, "is above 1".to_owned(), IN_RANGE),
+            Ok(number) => return Some(Written::Number(number)),
+            Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), IN_RANGE),
+            Err(reason) => (FaultKind::NotANumber, reason.to_string(), HOW_TO_WRITE),
         };
-        let text = text.trim();
-        let said = format!("the probability {text} among the moves of `{state}` is {word}");
-        let remedy = "probabilities lie between 0 and 1; correct it";
-        self.fault(Fault::new(kind, place, said, remedy).about(state).valued(text));
+        let shown = shortened(text);
+        let fault = match state {
+            Some(state) => {
+                let state = &mut self.states[state as usize];
+                state.faulty = true;
+                let said = format!("`{shown}` among the moves of `{}` {reason}", state.name);
+                Fault::new(kind, place, said, remedy).about(state.name.clone())
+            }
+            None => {
+                self.start_faulty = true;
+                Fault::new(kind, place, format!("`{shown}` among the shares of the start {reason}"), remedy)
+            }
+        };
+        self.fault(fault.valued(shown));
         None
     }
 }

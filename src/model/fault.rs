@@ -1,4 +1,4 @@
-//! What can be wrong with a model, each fault with its place, its value and the remedy.
+//! What can be wrong with a model or with outcomes, each fault with its place, its value and the remedy.
 
 use std::fmt;
 use std::io;
@@ -72,11 +72,17 @@ pub enum FaultKind {
     NoEndReachable,
     /// A declared class that is not a closed class of the chain.
     NotAClosedClass,
-    /// A table that is not square, or lacks a column.
+    /// A table that is not square, or lacks a column or a cell.
     Shape,
+    /// A number that should be whole.
+    NotWhole,
+    /// A number that is too large, or written too long, to be counted.
+    OutOfRange,
+    /// A replication listed twice.
+    DuplicateReplication,
 }
 
-/// One thing that is wrong with a model.
+/// One thing that is wrong with a model, or with a row of outcomes.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Fault {
     /// Its kind.
@@ -203,4 +209,25 @@ pub(crate) fn did_you_mean<'a>(name: &str, known: impl IntoIterator<Item = &'a s
         Some(near) => format!("did you mean `{near}`?"),
         None => otherwise.to_owned(),
     }
+}
+
+/// Names listed in one message before the rest is counted.
+pub(crate) const LISTED: usize = 8;
+/// Characters of a value that a message shows.
+const SHOWN: usize = 60;
+
+/// The first few of several names, separated by commas, and how many more there are.
+pub(crate) fn listed(names: impl ExactSizeIterator<Item = String>) -> String {
+    let more = names.len().saturating_sub(LISTED);
+    let shown = names.take(LISTED).collect::<Vec<_>>().join(", ");
+    if more > 0 { format!("{shown} and {more} more") } else { shown }
+}
+
+/// A value as a message shows it: not longer than a line, and without line ends.
+pub(crate) fn shortened(value: &str) -> String {
+    let mut shown: String = value.chars().take(SHOWN).map(|c| if c.is_control() { ' ' } else { c }).collect();
+    if value.chars().nth(SHOWN).is_some() {
+        shown.push('…');
+    }
+    shown
 }

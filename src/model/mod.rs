@@ -17,12 +17,14 @@
 
 mod chain;
 mod check;
+mod check_ends;
 mod classes;
 mod draft;
 mod fault;
 mod number;
 mod progress;
 mod quantity;
+mod records;
 mod row;
 mod source;
 mod table;
@@ -33,13 +35,15 @@ use serde::Serialize;
 
 pub use chain::{Chain, End};
 pub use draft::{Draft, Written};
-pub(crate) use fault::did_you_mean;
 pub use fault::{Fault, FaultKind, ModelError, Place, Warning, WarningKind, nearest};
+pub(crate) use fault::{did_you_mean, listed, shortened};
 pub use number::{Number, NumberFault};
 pub use progress::{Progress, Silent};
 pub use quantity::{Quantity, QuantityFault};
+pub(crate) use records::{Records, cell, decimal_point, delimiter};
 pub use row::{LARGEST_CORRECTION, Row, Weights};
 pub use source::ReadOptions;
+pub(crate) use source::hexadecimal;
 pub use tolerance::{Tolerance, ToleranceKey, Tolerances};
 
 /// Ends that are also reported together.
@@ -138,7 +142,7 @@ impl Model {
     /// # Errors
     /// The unknown name, with the nearest known one.
     pub fn resolve(&self, quantity: &Quantity) -> Result<(), QuantityFault> {
-        match check::unknown_end(quantity, self.chain.ends(), &self.groups) {
+        match check_ends::unknown_end(quantity, self.chain.ends(), &self.groups) {
             Some((text, remedy)) => Err(QuantityFault { text, remedy }),
             None => Ok(()),
         }

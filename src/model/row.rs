@@ -206,7 +206,8 @@ impl ExactRow {
             return RowOutcome::WrongSum { sum };
         }
         let at_stay = stay.and_then(|stay| targets.iter().position(|to| *to == stay));
-        if let Some(at) = at_stay {
+        // A stay written as zero is none, and none is created.
+        if let Some(at) = at_stay.filter(|at| numerators[*at] != UBig::ZERO) {
             let leaves = &total - &numerators[at];
             if leaves <= common {
                 numerators[at] = &common - leaves;
@@ -219,7 +220,7 @@ impl ExactRow {
     fn reduced(targets: Vec<u32>, numerators: Vec<UBig>, denominator: UBig) -> Self {
         let (targets, numerators): (Vec<u32>, Vec<UBig>) =
             targets.into_iter().zip(numerators).filter(|(_, weight)| *weight != UBig::ZERO).unzip();
-        let common = numerators.iter().fold(denominator.clone(), |common, weight| common.gcd(weight));
+        let common = numerators.iter().fold(denominator.clone(), Gcd::gcd);
         let numerators: Vec<UBig> = numerators.into_iter().map(|weight| weight / &common).collect();
         let denominator = denominator / common;
         let values = match u64::try_from(&denominator) {
@@ -293,6 +294,15 @@ mod tests {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(0, "19999999999/20000000000"), (1, "1/20000000000")]));
+    }
+
+    #[test]
+    fn a_correction_creates_no_stay() {
+        let moves = written(&[(0, "0"), (1, "0.9999999999")]);
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+            panic!("within the largest correction");
+        };
+        assert_eq!(shown(row), pairs(&[(1, "1")]));
     }
 
     #[test]

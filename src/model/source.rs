@@ -83,9 +83,13 @@ impl Draft {
 /// The bytes of a file and its entry among the inputs.
 pub(super) fn read_bytes(path: &Path) -> Result<(Vec<u8>, InputFile), ModelError> {
     let bytes = fs::read(path).map_err(|source| ModelError::Read { path: path.to_owned(), source })?;
-    let hash = Sha256::digest(&bytes);
-    let sha256 = hash.iter().fold(String::with_capacity(64), |hex, byte| hex + &format!("{byte:02x}"));
+    let sha256 = hexadecimal(Sha256::new_with_prefix(&bytes));
     Ok((bytes, InputFile { file: path.display().to_string(), sha256 }))
+}
+
+/// A hash as it is shown.
+pub(crate) fn hexadecimal(hash: Sha256) -> String {
+    hash.finalize().iter().fold(String::with_capacity(64), |hex, byte| hex + &format!("{byte:02x}"))
 }
 
 fn not_text(file: &str, bytes: &[u8], valid: usize) -> ModelError {

@@ -8,8 +8,9 @@ use std::sync::Arc;
 use toml::Spanned;
 use toml::de::{DeArray, DeTable, DeValue};
 
-use super::draft::{Draft, DraftMove, NamedList};
-use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean};
+use super::draft::{Draft, DraftMove, HOW_TO_WRITE, NamedList, Written};
+use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean, shortened};
+use super::number::Number;
 use super::quantity::Quantity;
 use super::tolerance::{Tolerance, ToleranceKey};
 use super::{source, table};
@@ -37,7 +38,7 @@ pub(super) fn read(
     directory: &Path,
 ) -> Result<(Draft, Vec<super::InputFile>), ModelError> {
     let text = text.strip_prefix('\u{feff}').unwrap_or(text);
-    let mut reader = Reader { draft: Draft::default(), lines: Lines::of(text), inputs: Vec::new() };
+    let mut reader = Reader { draft: Draft::default(), text, lines: Lines::of(text), inputs: Vec::new() };
     reader.draft.files.extend(file.map(Arc::from));
     let (document, errors) = DeTable::parse_recoverable(text);
     for error in errors {
@@ -53,13 +54,14 @@ pub(super) fn read(
     Ok((reader.draft, reader.inputs))
 }
 
-struct Reader {
+struct Reader<'t> {
     draft: Draft,
+    text: &'t str,
     lines: Lines,
     inputs: Vec<super::InputFile>,
 }
 
-impl Reader {
+impl Reader<'_> {
     fn line(&self, span: &Range<usize>) -> u64 {
         self.lines.of_byte(span.start)
     }
@@ -85,6 +87,7 @@ impl Reader {
                 let said = "the model has both [moves] and moves_file";
                 let fault = Fault::new(FaultKind::Shape, self.place(&file.span()), said, "keep one of the two");
                 self.draft.fault(fault);
+                self.draft.moves_unread = true;
             }
             (Some(moves), None) => self.moves(moves),
             (None, Some(file)) => self.moves_file(file, directory)?,
@@ -166,33 +169,37 @@ impl Reader {
     }
 
     fn moves(&mut self, moves: &Spanned<DeValue<'_>>) {
-        let Some(table) = self.table(moves, "moves", "[moves] holds one table a state") else { return };
+        let Some(table) = self.table(moves, "moves", "[moves] holds one table a state") else {
+            self.draft.moves_unread = true;
+            return;
+        };
         for (from, row) in table {
             let name = from.get_ref().as_ref();
+            let from = self.draft.state(name, 0, self.line(&from.span()));
             let Some(row) = self.table(row, name, "write the moves of a state as { target = probability }") else {
+                self.draft.states[from as usize].faulty = true;
                 continue;
             };
-            if row.is_empty() {
-                let said = format!("`{name}` has an empty table of moves");
-                let remedy = "give it moves, or declare it absorbing instead";
-                let fault = Fault::new(FaultKind::RowSum, self.place(&from.span()), said, remedy);
-                self.draft.fault(fault.about(name));
-            }
-            let from_state = self.draft.state(name, 0, self.line(&from.span()));
             for (to, value) in row {
                 let line = self.line(&to.span());
-                let to_state = self.draft.state(to.get_ref(), 0, line);
-                let Some(written) = self.number_text(value, name) else { continue };
-                let place = self.draft.place(0, line);
-                if let Some(value) = self.draft.written(&written, name, place) {
-                    self.draft.moves.push(DraftMove { from: from_state, to: to_state, value, line });
-                }
+                let to = self.draft.state(to.get_ref(), 0, line);
+                let value = match self.number_text(value, name, HOW_TO_WRITE) {
+                    Some(written) => self.draft.written(&written, Some(from), self.draft.place(0, line)),
+                    None => {
+                        self.draft.states[from as usize].faulty = true;
+                        None
+                    }
+                };
+                self.draft.moves.push(DraftMove { from, to, value, line });
             }
         }
     }
 
     fn moves_file(&mut self, value: &Spanned<DeValue<'_>>, directory: &Path) -> Result<(), ModelError> {
-        let Some(name) = self.text(value, "moves_file") else { return Ok(()) };
+        let Some(name) = self.text(value, "moves_file") else {
+            self.draft.moves_unread = true;
+            return Ok(());
+        };
         let path = directory.join(&name);
         let (bytes, input) = source::read_bytes(&path)?;
         self.inputs.push(input);
@@ -207,24 +214,25 @@ impl Reader {
         match start.get_ref() {
             DeValue::String(name) => {
                 let state = self.draft.state(name, 0, line);
-                if let Some(all) = self.draft.written("1", name, Place::default()) {
-                    self.draft.starts.push((state, all, line));
-                }
+                let all = Written::Number(Number::Decimal { mantissa: 1, scale: 0 });
+                self.draft.starts.push((state, all, line));
             }
             DeValue::Table(shares) => {
                 for (name, share) in shares {
                     let line = self.line(&name.span());
                     let state = self.draft.state(name.get_ref(), 0, line);
                     let place = self.draft.place(0, line);
-                    let Some(written) = self.number_text(share, "start") else { continue };
-                    if let Some(share) = self.draft.written(&written, "start", place) {
-                        self.draft.starts.push((state, share, line));
+                    let written = self.number_text(share, "start", HOW_TO_WRITE);
+                    match written.and_then(|written| self.draft.written(&written, None, place)) {
+                        Some(share) => self.draft.starts.push((state, share, line)),
+                        None => self.draft.start_faulty = true,
                     }
                 }
             }
             other => {
                 let remedy = "write start = \"STATE\", or start = { STATE = share, … }";
                 self.wrong_type("start", other, &start.span(), remedy);
+                self.draft.start_faulty = true;
             }
         }
     }
@@ -289,16 +297,16 @@ impl Reader {
         }
     }
 
-    fn tolerance(&mut self, key: &str, value: &Spanned<DeValue<'_>>, line: u64) {
-        let key = match ToleranceKey::parse(key) {
+    fn tolerance(&mut self, name: &str, value: &Spanned<DeValue<'_>>, line: u64) {
+        let key = match ToleranceKey::parse(name) {
             Ok(key) => key,
-            Err(reason) => return self.unknown_quantity(key, line, reason.text, reason.remedy),
+            Err(reason) => return self.unknown_quantity(name, line, reason.text, reason.remedy),
         };
-        let Some(text) = self.number_text(value, "tolerance") else { return };
+        let remedy = "write an absolute one such as 0.005, or a relative one such as \"1 %\"";
+        let Some(text) = self.number_text(value, name, remedy) else { return };
         match Tolerance::parse(&text) {
             Ok(value) => self.draft.tolerances.push((key, value, line)),
             Err(reason) => {
-                let remedy = "write an absolute one such as 0.005, or a relative one such as \"1 %\"";
                 let fault = Fault::new(FaultKind::WrongType, self.draft.place(0, line), reason, remedy);
                 self.draft.fault(fault.valued(text));
             }
@@ -306,13 +314,12 @@ impl Reader {
     }
 
     /// A number or text as written, so that its exact value is not lost in a double.
-    fn number_text(&mut self, value: &Spanned<DeValue<'_>>, what: &str) -> Option<String> {
+    fn number_text(&mut self, value: &Spanned<DeValue<'_>>, what: &str, remedy: &str) -> Option<String> {
         match value.get_ref() {
             DeValue::String(text) => Some(text.to_string()),
             DeValue::Float(number) => Some(number.as_str().to_owned()),
             DeValue::Integer(number) if number.radix() == 10 => Some(number.as_str().to_owned()),
             other => {
-                let remedy = "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"";
                 self.wrong_type(what, other, &value.span(), remedy);
                 None
             }
@@ -355,7 +362,8 @@ impl Reader {
     fn wrong_type(&mut self, key: &str, value: &DeValue<'_>, span: &Range<usize>, remedy: &str) {
         let said = format!("`{key}` holds a value of type {}, which does not belong there", value.type_str());
         let fault = Fault::new(FaultKind::WrongType, self.place(span), said, remedy);
-        self.draft.fault(fault.about(key));
+        let written = self.text.get(span.clone()).unwrap_or_default();
+        self.draft.fault(fault.about(key).valued(shortened(written)));
     }
 }
 

@@ -19,6 +19,10 @@ const FAR: f64 = 5.0;
 /// ```
 #[must_use]
 pub fn normal_density(z: f64) -> f64 {
+    // Below the smallest number; and the parts of z² would overflow against one another further out.
+    if z.abs() > 39.0 {
+        return 0.0;
+    }
     // The square of a multiple of 1/16 below 40 is exact.
     let head = (z * 16.0).round() / 16.0;
     let tail = (z - head) * (z + head);
