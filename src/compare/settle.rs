@@ -10,11 +10,7 @@ use super::{AppliedTolerance, NotCompared};
 ///
 /// Leaving rows out raises the level of the others, which then need less: the rows that stay are settled again, and none
 /// of them falls out by that.
-pub(super) fn settle<'a>(
-    mut rows: Vec<Planned<'a>>,
-    error_rate: f64,
-    power: f64,
-) -> (Vec<Planned<'a>>, Vec<NotCompared>) {
+pub(super) fn settle(mut rows: Vec<Planned<'_>>, error_rate: f64, power: f64) -> (Vec<Planned<'_>>, Vec<NotCompared>) {
     share_levels(&mut rows);
     let alpha = level(&rows, error_rate);
     let mut kept = Vec::with_capacity(rows.len());
@@ -74,8 +70,8 @@ fn share_levels(rows: &mut [Planned<'_>]) {
         let (before, after) = rows.split_at_mut(later);
         let Basis::Tested(tested) = &mut after[0].basis else { continue };
         tested.shares = tested.outcomes.as_ref().and_then(|outcomes| {
-            let spends = before.iter().enumerate().filter(|(_, row)| row.spends());
-            spends.filter_map(|(with, row)| outcomes.shared_with(row.tested()?.outcomes.as_ref()?, with)).next()
+            let mut spends = before.iter().enumerate().filter(|(_, row)| row.spends());
+            spends.find_map(|(with, row)| outcomes.shared_with(row.tested()?.outcomes.as_ref()?, with))
         });
     }
 }
