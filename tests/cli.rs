@@ -356,3 +356,16 @@ fn help_names_every_command() {
         assert!(out(&own).contains("Exit status"));
     }
 }
+
+#[test]
+fn the_readme_shows_what_the_program_prints() {
+    let readme = include_str!("../README.md").replace("\r\n", "\n");
+    assert!(readme.contains(MODEL.trim_end()), "the model of the README is not that of the demo");
+    for (name, text) in [
+        ("exact.txt", include_str!("snapshots/exact.txt")),
+        ("check-demo.txt", include_str!("snapshots/check-demo.txt")),
+        ("audit-wrong.txt", include_str!("snapshots/audit-wrong.txt")),
+    ] {
+        assert!(readme.contains(text.trim_end()), "the README does not show {name}");
+    }
+}
