@@ -1,44 +1,16 @@
-//! Broken models: every fault is named with its kind, line, state, value and remedy, nothing else is said, and nothing
-//! panics, whatever the bytes.
+//! Broken model files: every fault is named with its kind, line, state, value and remedy, and nothing else is said.
 
-mod models;
+mod faults;
 
 use std::fs;
-use std::path::Path;
 
-use rand_pcg::Lcg128CmDxsm64;
-use rand_pcg::rand_core::Rng;
+use faults::{AS_NUMBER, Expected, GIVE_MOVES, IN_RANGE, hold, options};
 use tallystone::model::FaultKind::{
-    AboveOne, AbsorbingWithMoves, BadName, DuplicateMove, DuplicateName, MissingStart, Negative, NoEndReachable,
-    NoMoves, NonFinite, NotAClosedClass, NotANumber, Rest, RowSum, Shape, Syntax, UnknownKey, UnknownName,
-    UnknownState, Unsupported, WrongType,
+    AboveOne, AbsorbingWithMoves, BadName, DuplicateName, MissingStart, Negative, NoEndReachable, NoMoves, NonFinite,
+    NotAClosedClass, NotANumber, Rest, RowSum, Shape, Syntax, UnknownKey, UnknownName, UnknownState, Unsupported,
+    WrongType,
 };
-use tallystone::model::{FaultKind, Model, ModelError, ReadOptions};
-
-/// A fault as it should be: kind, line (0 for none), state and value (empty for none), part of the text, part of the
-/// remedy.
-type Expected<'a> = (FaultKind, u64, &'a str, &'a str, &'a str, &'a str);
-
-/// Holds the faults of a model to the expected ones, all of them and no others.
-#[track_caller]
-fn hold(read: Result<Model, ModelError>, input: &str, expected: &[Expected<'_>]) {
-    let error = read.expect_err(input);
-    let faults = error.faults();
-    let shown = error.to_string();
-    assert_eq!(faults.len(), expected.len(), "{input}\n{shown}");
-    for (fault, (kind, line, state, value, text, remedy)) in faults.iter().zip(expected) {
-        let seen = (
-            fault.kind,
-            fault.place.line.unwrap_or(0),
-            fault.state.as_deref().unwrap_or(""),
-            fault.value.as_deref().unwrap_or(""),
-        );
-        assert_eq!(seen, (*kind, *line, *state, *value), "{input}\n{shown}");
-        assert!(fault.text.contains(text), "{input}\n{fault}");
-        assert!(fault.remedy.contains(remedy), "{input}\n{fault}");
-        assert!(!fault.remedy.is_empty() && shown.contains(&fault.text), "{input}\n{shown}");
-    }
-}
+use tallystone::model::{Model, ModelError, ReadOptions};
 
 /// A model whose ends are `x` and `y`, with these rows from line 4 on.
 fn with_rows(rows: &str) -> String {
@@ -49,17 +21,6 @@ fn with_rows(rows: &str) -> String {
 fn with_keys(keys: &str) -> String {
     format!("absorbing = [\"x\", \"y\"]\n{keys}\n[moves]\na = {{ x = 0.5, y = 0.5 }}\n")
 }
-
-fn options(start: &str, absorbing: &[&str]) -> ReadOptions {
-    ReadOptions {
-        start: (!start.is_empty()).then(|| start.to_owned()),
-        absorbing: absorbing.iter().map(|name| (*name).to_owned()).collect(),
-    }
-}
-
-const IN_RANGE: &str = "probabilities lie between 0 and 1";
-const AS_NUMBER: &str = "write a decimal such as 0.25";
-const GIVE_MOVES: &str = "give it moves, or declare it absorbing";
 
 #[test]
 fn numbers_that_are_no_probabilities() {
@@ -253,142 +214,6 @@ fn files_without_moves_and_files_that_are_not_toml() {
 }
 
 #[test]
-fn broken_lists_of_moves() {
-    let cells = "give every line the cells of the header";
-    let ends = &["x", "y"];
-    let cases: &[(&str, &str, &[&str], &[Expected<'_>])] = &[
-        ("", "a", ends, &[(Shape, 0, "", "", "the table is empty", "give it a header")]),
-        ("\n# only a comment\n", "a", ends, &[(Shape, 0, "", "", "the table is empty", "give it a header")]),
-        ("from,to,probability\n", "a", ends, &[(NoMoves, 0, "", "", "the model has no moves", "below its header")]),
-        (
-            "from,to,prob\na,x,1\n",
-            "a",
-            ends,
-            &[(Shape, 1, "", "from,to,prob", "no column `probability`", "did you mean `prob`?")],
-        ),
-        (
-            "\n\nform,to,probability\na,x,1\n",
-            "a",
-            ends,
-            &[(Shape, 3, "", "form,to,probability", "no column `from`", "did you mean `form`?")],
-        ),
-        (
-            "from,to,probability\na,x,0.5\na,x,0.5\n",
-            "a",
-            ends,
-            &[(DuplicateMove, 3, "a", "x", "from `a` to `x` is listed twice (first on line 2)", "join the two")],
-        ),
-        // An unquoted decimal comma must not pass for a probability of zero.
-        (
-            "from,to,probability\r\n\r\n# note\r\na,x,0,5\r\na,y,0.5\r\nb,x\r\n",
-            "a",
-            ends,
-            &[
-                (Shape, 4, "a", "a,x,0,5", "the line has 4 cells, the header 3", cells),
-                (Shape, 6, "b", "b,x", "the line has 2 cells, the header 3", cells),
-            ],
-        ),
-        (
-            "from;to;probability\na;x;0,5\na;y;0,6\n",
-            "a",
-            ends,
-            &[(RowSum, 2, "a", "1.1", "the moves of `a` sum to 1.1", "correct one")],
-        ),
-        ("from,to,probability\na,x,1\n", "a", &[], &[(UnknownState, 2, "x", "", "`x` has no moves", GIVE_MOVES)]),
-        (
-            "from,to,probability\na,x,1\nx,x,1\n",
-            "",
-            &[],
-            &[(MissingStart, 0, "start", "", "the model has no start", "--start STATE")],
-        ),
-        (
-            "from,to,probability\nintake,x,1\nx,x,1\n",
-            "intkae",
-            &[],
-            &[(UnknownState, 0, "intkae", "", "the state `intkae` has no moves", "did you mean `intake`?")],
-        ),
-        ("from,to,probability\na,x,1\n,x,1\n", "a", ends, &[(BadName, 3, "", "", "a name is empty", "rename it")]),
-        (
-            "from,to,probability\na,x,\na,y,abc\n",
-            "a",
-            ends,
-            &[
-                (NotANumber, 2, "a", "", "a value among the moves of `a` is empty", AS_NUMBER),
-                (NotANumber, 3, "a", "abc", "`abc` among the moves of `a`", AS_NUMBER),
-            ],
-        ),
-        (
-            "from,to,probability\na,x,1\nx,a,1\n",
-            "a",
-            ends,
-            &[(AbsorbingWithMoves, 3, "x", "", "`x` is declared absorbing but has moves", "take its moves away")],
-        ),
-        (
-            "from,to,probability\na,x,\"1\na,y,0\n",
-            "a",
-            ends,
-            &[(NotANumber, 2, "a", "1 a,y,0", "is not a number", AS_NUMBER)],
-        ),
-    ];
-    for (text, start, absorbing, expected) in cases {
-        hold(Model::from_table(text, &options(start, absorbing)), text, expected);
-    }
-}
-
-#[test]
-fn broken_square_tables() {
-    let names_first = "begin with from,to,probability";
-    let cases: &[(&str, &[Expected<'_>])] = &[
-        (
-            ",a,x\na,0.5,0.5\nx,0,0\n",
-            &[(RowSum, 3, "x", "", "the row of `x` holds no moves", "declare it so or give it a stay of 1")],
-        ),
-        (",a,x\na,0.5,0.5\n", &[(UnknownState, 1, "x", "", "the state `x` has no moves", GIVE_MOVES)]),
-        (",a,x\na,0.5\nx,0,1\n", &[(Shape, 2, "a", "", "the row of `a` has 2 cells, the header 3", "every row")]),
-        (
-            ",a,shipped\na,0.5,0.5\nshiped,0,1\nshipped,0,1\n",
-            &[(UnknownState, 3, "shiped", "", "the row `shiped` has no column", "did you mean `shipped`?")],
-        ),
-        (
-            "state,a,x,x\na,0.5,0.25,0.25\nx,0,1,0\n",
-            &[(DuplicateName, 1, "", "state,a,x,x", "the header names `x` twice", "one column")],
-        ),
-        (
-            ",a,x\na,0.5,0.5\na,1,0\nx,0,1\n",
-            &[(DuplicateName, 3, "a", "", "the row of `a` is there twice (first on line 2)", "keep one")],
-        ),
-        (
-            ",a,b,x\na,0.5,0.5,0\nb,0.3,0.2,0\nx,0.2,0.3,1\n",
-            &[
-                (RowSum, 0, "", "", "every column sums to 1, but not every row", "transpose the table"),
-                (RowSum, 3, "b", "0.5", "the moves of `b` sum to 0.5", "correct one"),
-                (RowSum, 4, "x", "1.5", "the moves of `x` sum to 1.5", "correct one"),
-            ],
-        ),
-        (
-            ",a,x\na,-0.5,1.5\nx,0,1\n",
-            &[
-                (Negative, 2, "a", "-0.5", "`-0.5` among the moves of `a` is negative", IN_RANGE),
-                (AboveOne, 2, "a", "1.5", "`1.5` among the moves of `a` is above 1", IN_RANGE),
-            ],
-        ),
-        (",a,x\na,0.5,abc\nx,0,1\n", &[(NotANumber, 2, "a", "abc", "`abc` among the moves of `a`", AS_NUMBER)]),
-        ("0.5,0.5\n0,1\n", &[(Shape, 1, "", "0.5,0.5", "the first line does not name the states", names_first)]),
-        ("hello\n", &[(Shape, 1, "", "hello", "the first line does not name the states", names_first)]),
-        (
-            ",,a,x\na,0,0.5,0.5\n",
-            &[
-                (BadName, 1, "", "", "a name is empty", "rename it"),
-                (UnknownState, 1, "x", "", "the state `x` has no moves", GIVE_MOVES),
-            ],
-        ),
-    ];
-    for (text, expected) in cases {
-        hold(Model::from_table(text, &options("a", &[])), text, expected);
-    }
-}
-
-#[test]
 fn files_name_themselves_and_the_file_of_the_moves() {
     let directory = tempfile::tempdir().unwrap();
     let write = |name: &str, bytes: &[u8]| {
@@ -496,86 +321,5 @@ mean_time = "one"
                 && fault.remedy.contains(remedy)
         });
         assert!(found, "{kind:?} {line} {state} {value}\n{error}");
-    }
-}
-
-/// Reads bytes as every kind of model; a panic fails the test, an answer of either kind is fine.
-fn read_all(bytes: &[u8], directory: &Path) {
-    let options = options("intake", &["shipped"]);
-    let answers = match std::str::from_utf8(bytes) {
-        Ok(text) => [Model::from_toml(text), Model::from_table(text, &options)],
-        // Only a file can hold what is no text.
-        Err(_) => ["model.toml", "model.csv"].map(|name| {
-            let path = directory.join(name);
-            fs::write(&path, bytes).unwrap();
-            let answer = Model::read(&path, &options);
-            fs::remove_file(&path).unwrap();
-            answer
-        }),
-    };
-    for error in answers.into_iter().filter_map(Result::err) {
-        assert!(!error.faults().is_empty() || matches!(error, ModelError::Read { .. }));
-        assert!(error.faults().iter().all(|fault| !fault.remedy.is_empty() && !fault.text.is_empty()), "{error}");
-    }
-}
-
-#[test]
-fn mutated_models_never_panic() {
-    let directory = tempfile::tempdir().unwrap();
-    // What breaks numbers, quotes, tables and lines.
-    let pieces: [&[u8]; 16] = [
-        b"\"",
-        b"'",
-        b",",
-        b";",
-        b"\t",
-        b"\n",
-        b"\r",
-        b"#",
-        b"[",
-        b"{",
-        b"e-999",
-        b"9e9999999999999999999",
-        b"/0",
-        b"\0",
-        b"\xff",
-        b"\xef\xbb\xbf",
-    ];
-    for (seed, good) in [models::TOML, models::MOVES, models::SQUARE].into_iter().enumerate() {
-        let good = good.as_bytes();
-        for end in 0..=good.len() {
-            read_all(&good[..end], directory.path());
-        }
-        let mut rng = Lcg128CmDxsm64::new(seed as u128, 7);
-        let mut below = |n: usize| (rng.next_u64() % n as u64) as usize;
-        for _ in 0..4000 {
-            let mut bytes = good.to_vec();
-            for _ in 0..=below(3) {
-                let at = below(bytes.len());
-                match below(4) {
-                    0 => bytes[at] ^= 1 << below(8),
-                    1 => drop(bytes.splice(at..at, pieces[below(pieces.len())].iter().copied())),
-                    2 => drop(bytes.drain(at..(at + below(12)).min(bytes.len()))),
-                    _ => {
-                        let piece = bytes[at..(at + below(40)).min(bytes.len())].to_vec();
-                        let to = below(bytes.len());
-                        drop(bytes.splice(to..to, piece));
-                    }
-                }
-                bytes.push(b'\n');
-            }
-            read_all(&bytes, directory.path());
-        }
-    }
-}
-
-#[test]
-fn deep_nesting_and_long_lines_never_panic() {
-    let directory = tempfile::tempdir().unwrap();
-    for piece in ["[", "{a=", "a.", "[[", "\"", ",", "a={b=[", "1_", "e", "-"] {
-        let deep = piece.repeat(100_000);
-        read_all(deep.as_bytes(), directory.path());
-        read_all(format!("start = {deep}").as_bytes(), directory.path());
-        read_all(format!("from,to,probability\na,b,{deep}\n").as_bytes(), directory.path());
     }
 }

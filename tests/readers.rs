@@ -165,13 +165,16 @@ fn row(moves: &str) -> (Vec<(String, String)>, Vec<WarningKind>) {
     (probabilities, kinds.filter(|kind| *kind != WarningKind::UnreachableEnds).collect())
 }
 
+/// The moves of `a` as written, its exact row, and the warnings.
+type Case<'a> = (&'a str, &'a [(&'a str, &'a str)], &'a [WarningKind]);
+
 // The rule: what is written is meant, in fractions; "rest" is exact; a sum within 1e-9 of 1 is corrected, a written stay
 // taking the difference and otherwise every entry its share, and never is a stay or a move created.
 #[test]
 fn the_numbers_of_a_chain_are_those_that_were_written() {
     use WarningKind::CorrectedRow;
     let third = ("x", "1/3");
-    let cases: &[(&str, &[(&str, &str)], &[WarningKind])] = &[
+    let cases: &[Case<'_>] = &[
         ("x = 0.1, y = 0.2, z = 0.7", &[("x", "1/10"), ("y", "1/5"), ("z", "7/10")], &[]),
         ("x = \"1/3\", y = \"2/3\"", &[third, ("y", "2/3")], &[]),
         ("x = \"1/3\", y = \"rest\"", &[third, ("y", "2/3")], &[]),

@@ -5,6 +5,8 @@ use std::path::Path;
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, AtomicU64, Ordering};
 
+use rand_pcg::Lcg128CmDxsm64;
+use rand_pcg::rand_core::Rng;
 use tempfile::NamedTempFile;
 
 use super::outcome_file::read;
@@ -228,4 +230,41 @@ fn progress_counts_bytes_and_an_interruption_ends_the_reading() {
     let watch = Watch { stop: true, ..Watch::default() };
     assert!(matches!(read_with(file.path(), &watch), Err(OutcomeError::Interrupted)));
     assert!(watch.ended.into_inner());
+}
+
+#[test]
+fn mutated_files_give_an_answer_or_faults_and_never_a_panic() {
+    let good = b"replication,end,time\r\n1,shipped,2\r\n2,\"scrapped\",3.0\r\n\r\n3,shipped,12\r\n".as_slice();
+    let pieces: [&[u8]; 9] = [b"\"", b",", b"\n", b"\0", b"\xff", b"e99", b"-", b"18446744073709551615", b"\t"];
+    let mut rng = Lcg128CmDxsm64::new(5, 6);
+    let mut below = |n: usize| (rng.next_u64() % n as u64) as usize;
+    let mutated = (0..1000).map(|_| {
+        let mut bytes = good.to_vec();
+        for _ in 0..=below(2) {
+            let at = below(bytes.len());
+            match below(3) {
+                0 => bytes[at] ^= 1 << below(8),
+                1 => drop(bytes.splice(at..at, pieces[below(pieces.len())].iter().copied())),
+                _ => drop(bytes.drain(at..(at + 1 + below(6)).min(bytes.len()))),
+            }
+            bytes.push(b'\n');
+        }
+        bytes
+    });
+    let (mut used, mut refused) = (0, 0);
+    for bytes in (0..good.len()).map(|end| good[..end].to_vec()).chain(mutated) {
+        match outcomes(&bytes) {
+            Ok(read) => {
+                assert_eq!(read.rows, read.audited.tally.replications());
+                used += 1;
+            }
+            Err(error) => {
+                let OutcomeError::Bad { rows, bad, faults, .. } = error else { panic!("{error:?}") };
+                assert!(bad <= rows && faults.len() as u64 == bad.max(1), "{bytes:?}");
+                assert!(faults.iter().all(|fault| !fault.text.is_empty() && !fault.remedy.is_empty()));
+                refused += 1;
+            }
+        }
+    }
+    assert!(used > 100 && refused > 100, "{used} used, {refused} refused");
 }
