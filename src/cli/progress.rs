@@ -1,9 +1,10 @@
 //! Progress on standard error, with rate and time left.
 
+use std::fmt;
 use std::sync::{Mutex, PoisonError};
 use std::time::Duration;
 
-use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
+use indicatif::{HumanCount, ProgressBar, ProgressDrawTarget, ProgressState, ProgressStyle};
 
 use super::signals::Stop;
 use crate::model::Progress;
@@ -33,21 +34,27 @@ impl Watch {
     }
 }
 
+/// Whole units a second.
+fn rate(state: &ProgressState, out: &mut dyn fmt::Write) {
+    // A terminal that cannot be written to is no matter.
+    let _written = write!(out, "{}/s", HumanCount(state.per_sec() as u64));
+}
+
 impl Progress for Watch {
     fn begin(&self, phase: &str, unit: &str, total: Option<u64>) {
         if !self.is_shown {
             return;
         }
         let template = match total {
-            Some(_) => "{msg} {bar:24} {human_pos} of {human_len} {prefix} ({per_sec}, {eta} left)",
-            None => "{msg} {spinner} {human_pos} {prefix} ({per_sec})",
+            Some(_) => "{msg} {bar:24} {human_pos} of {human_len} {prefix} ({rate}, {eta} left)",
+            None => "{msg} {spinner} {human_pos} {prefix} ({rate})",
         };
         let outlook = std::mem::take(&mut *self.outlook.lock().unwrap_or_else(PoisonError::into_inner));
         let bar = ProgressBar::with_draw_target(total, ProgressDrawTarget::stderr_with_hz(8))
             .with_message(format!("{phase}{outlook}"))
             .with_prefix(unit.to_owned());
         if let Ok(style) = ProgressStyle::with_template(template) {
-            bar.set_style(style);
+            bar.set_style(style.with_key("rate", rate));
         }
         bar.enable_steady_tick(Duration::from_millis(250));
         self.with_bar(|current| *current = Some(bar));
