@@ -55,6 +55,8 @@ fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, F
     let plan = Plan { replications, seed, grid: study.grid() };
     let tally = steps::on_threads(&arguments.sampling, || {
         allow(&sampler, &plan, &exact, &size, arguments)?;
+        let steps = exact.mean_time().value * replications as f64;
+        session.watch.expect(format!(", some {} steps", thousands(steps as u64)));
         Ok(sample(&sampler, &plan, &session.watch)?)
     })?;
     let comparison = study.compare(&tally, Vec::new());

@@ -6,8 +6,8 @@
 pub enum ExactError {
     /// A communicating class that would take too long to eliminate.
     #[error(
-        "the communicating class of `{example}` has {states} states, which would take about {work:.0e} multiply-adds to \
-         eliminate; this version stops at {limit:.0e} (about 2,000 states that all lead to one another): list the states in an order in which \
+        "the communicating class of `{example}` has {states} states, which would take about {work:.1e} multiply-adds to \
+         eliminate; this version stops at {limit:.1e} (about 2,000 states that all lead to one another): list the states in an order in which \
          moves lead to near ones, split the model, or wait for the sparse solver",
         limit = *limit as f64, work = *work as f64
     )]

@@ -124,7 +124,7 @@ fn write_comparison(
         writeln!(out, "and {hidden} more rows, none worse than these; --json holds all")?;
     }
     let item = |text: &str| wrapped(&format!("- {text}"), layout.width, 2);
-    let notes: Vec<String> = worst_first.iter().filter_map(|row| note(row)).collect();
+    let notes: Vec<String> = worst_first.iter().filter_map(|row| note(row, comparison.replications)).collect();
     for (title, texts) in [
         ("Findings, impossible under the model:", comparison.findings.iter().map(|one| shown(&one.text)).collect()),
         ("Notes:", notes),
@@ -143,7 +143,7 @@ fn write_comparison(
     }
     let verdict = colored(&marked(comparison.verdict), comparison.verdict, layout);
     writeln!(out, "\nVerdict: {verdict}")?;
-    writeln!(out, "{}", wrapped(closing(document, comparison.verdict), layout.width, 0))
+    writeln!(out, "{}", wrapped(closing(document, comparison), layout.width, 0))
 }
 
 /// The rows that are shown: disagreeing ones first, then the undecided, each in the order of the plan.
@@ -173,8 +173,10 @@ fn cells(row: &Row) -> Vec<String> {
     ]
 }
 
-fn note(row: &Row) -> Option<String> {
-    let needed = row.replications_needed.map(|n| format!("needs {} replications", thousands(n)));
+/// What a reader must know of a row; `replications` were compared.
+fn note(row: &Row, replications: u64) -> Option<String> {
+    let needed = row.replications_needed.filter(|n| *n > replications);
+    let needed = needed.map(|n| format!("needs {} replications", thousands(n)));
     let parts: Vec<String> = needed.into_iter().chain(row.note.clone()).collect();
     (!parts.is_empty()).then(|| shown(&format!("{}: {}", row.quantity, parts.join("; "))))
 }
@@ -199,8 +201,9 @@ fn colored(text: &str, verdict: Verdict, layout: Layout) -> String {
     if layout.color { format!("\u{1b}[{code}m{text}\u{1b}[0m") } else { text.to_owned() }
 }
 
-fn closing(document: &Document, verdict: Verdict) -> &'static str {
-    match (&document.body, verdict) {
+fn closing(document: &Document, comparison: &Comparison) -> &'static str {
+    let has_row = comparison.rows.iter().any(|row| row.verdict == Verdict::Disagree);
+    match (&document.body, comparison.verdict) {
         (Body::Check(_), Verdict::Agree) => {
             "This program's own solver and sampler agree on this model. No other program was tested; use `audit`."
         }
@@ -210,8 +213,11 @@ fn closing(document: &Document, verdict: Verdict) -> &'static str {
         }
         (Body::Check(_), _) => "These replications do not decide every row. No other program was tested; use `audit`.",
         (_, Verdict::Agree) => "The outcomes agree with the model, each row within its tolerance.",
-        (_, Verdict::Disagree) => {
+        (_, Verdict::Disagree) if has_row => {
             "The outcomes are not those of the model: the rows marked disagree are beyond their tolerances."
+        }
+        (_, Verdict::Disagree) => {
+            "The outcomes are not those of the model, which makes those listed as findings impossible."
         }
         (_, Verdict::Consistent) => "No difference was seen, and one that matters would have been.",
         (_, Verdict::Inconclusive) => "These outcomes do not decide every row; the notes say how many would.",

@@ -1,10 +1,13 @@
 //! The standard normal law.
 
-use statrs::function::erf::erfc;
-use std::f64::consts::{FRAC_1_SQRT_2, PI};
+use std::f64::consts::{PI, SQRT_2};
 
-/// From here on the continued fraction needs fewer than fifty terms and beats the complementary error function, whose
-/// argument, rounded once, costs z² units in the last place.
+use statrs::function::erf::erfc_inv;
+
+use super::incomplete_gamma::upper_gamma;
+
+/// From here on the continued fraction needs few terms and beats the incomplete gamma function, whose argument, rounded
+/// once, costs z² units in the last place.
 const FAR: f64 = 5.0;
 
 /// The density `exp(−z²/2)/√(2π)`.
@@ -34,8 +37,9 @@ pub fn normal_density(z: f64) -> f64 {
 /// # Accuracy
 /// Relative 1e-14 for z up to 37.5, where the value is 1e-307; beyond 38.6 it underflows to 0.
 ///
-/// # Reference
-/// Far out, the continued fraction of Laplace: NIST Digital Library of Mathematical Functions, 7.9.
+/// # Formula
+/// ½ Q(½, z²/2), the regularised incomplete gamma function; far out, the continued fraction of Laplace (NIST Digital
+/// Library of Mathematical Functions, 7.11 and 7.9). The complementary error function of `statrs` is only good to 1e-11.
 ///
 /// ```
 /// use tallystone::statistics::normal_survival;
@@ -44,8 +48,14 @@ pub fn normal_density(z: f64) -> f64 {
 /// ```
 #[must_use]
 pub fn normal_survival(z: f64) -> f64 {
+    if z < 0.0 {
+        return 1.0 - normal_survival(-z);
+    }
+    if z == 0.0 {
+        return 0.5;
+    }
     if z < FAR {
-        return 0.5 * erfc(z * FRAC_1_SQRT_2);
+        return 0.5 * upper_gamma(0.5, 0.5 * z * z).value;
     }
     normal_density(z) * mills_ratio(z)
 }
@@ -68,8 +78,8 @@ fn mills_ratio(z: f64) -> f64 {
 /// Relative 1e-14 for q from 1e-300 to 0.4; near the median, absolute 1e-15.
 ///
 /// # Formula
-/// The rational start of Hastings (Abramowitz & Stegun 26.2.23, absolute error 4.5e-4), then Newton's method on
-/// ln P(Z > z), which is concave, so that the steps cannot run away.
+/// The inverse complementary error function of `statrs` for a start, then Newton's method on ln P(Z > z), which is concave,
+/// so that the steps cannot run away.
 ///
 /// ```
 /// use tallystone::statistics::normal_upper_quantile;
@@ -90,11 +100,9 @@ pub fn normal_upper_quantile(q: f64) -> f64 {
     if q == 0.5 {
         return 0.0;
     }
-    let t = (-2.0 * q.ln()).sqrt();
-    let mut z =
-        t - (2.515_517 + t * (0.802_853 + t * 0.010_328)) / (1.0 + t * (1.432_788 + t * (0.189_269 + t * 0.001_308)));
-    // The start is good to 4.5e-4 and each step squares the error: two suffice, the third is for the last place.
-    for _ in 0..3 {
+    let mut z = SQRT_2 * erfc_inv(2.0 * q);
+    // Each step squares the error of the start: one suffices, the second is for the last place.
+    for _ in 0..2 {
         let survival = normal_survival(z);
         z += (survival / q).ln() * survival / normal_density(z);
     }
