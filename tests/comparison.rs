@@ -168,7 +168,8 @@ fn the_plan_is_minimal() {
         assert_eq!((plan.without, plan.never.len()), (None, 0));
     });
     let rows = ["absorption_probability:heads", "mean_time", "time_quantile:0.5"];
-    with_study(COIN, &asking(&rows[..2]), |_, study| {
+    // The complement of the first spends nothing and asks for nothing.
+    with_study(COIN, &asking(&[rows[0], "absorption_probability:tails", rows[1]]), |_, study| {
         // Geometric with 0.8: mean 1.25, variance 0.2/0.64 = 0.3125.
         let missed = |n: u64, alpha: f64| {
             agree_miss_probability(0.005, 0.5, n, alpha) + agree_miss_probability(0.0125, 0.3125_f64.sqrt(), n, alpha)
@@ -345,6 +346,24 @@ fn a_default_is_widened_or_left_out_and_a_given_one_is_kept() {
     });
 }
 
+// Mean 14 and variance 470, so 1 % needs (z_{α/2} + 1.960)² · 2.40e4 replications: 493,000 at α = 0.01, more than 500,000 at
+// a third of that.
+#[test]
+fn rows_that_are_left_out_give_their_level_to_the_others() {
+    let text = "start = { a = 0.9, b = 0.1 }\nabsorbing = [\"x\", \"rare\", \"scarce\"]\n[moves]\n\
+                a = { x = 0.1, rare = 1e-7, scarce = 1e-7, a = \"rest\" }\nb = { x = 0.02, b = \"rest\" }\n";
+    let source_of_mean = |rows: &[&str]| {
+        with_study(text, &asking(rows), |_, study| {
+            let comparison = made(study, &[]);
+            (comparison.rows.len(), row(&comparison, "mean_time").tolerance.source)
+        })
+    };
+    let (rows, source) = source_of_mean(&["mean_time", "mean_time_given:rare", "mean_time_given:scarce"]);
+    assert_eq!((rows, source), (1, ToleranceSource::Default));
+    let (rows, source) = source_of_mean(&["mean_time", "survival_probability:5", "survival_probability:9"]);
+    assert!(rows == 3 && matches!(source, ToleranceSource::Widened { .. }), "{rows} {source:?}");
+}
+
 #[test]
 fn tolerances_that_are_wide_useless_or_hopeless_are_said_before_the_run() {
     let rare = "start = \"a\"\nabsorbing = [\"x\", \"y\"]\n[moves]\na = { x = 0.0001, y = \"rest\" }\n";
@@ -433,6 +452,9 @@ fn nothing_undefined_leaks_and_verdicts_follow_p_values() {
                 let all = numbers.into_iter().flatten().chain(interval.into_iter().flatten());
                 assert!(all.chain([row.level, row.tolerance.value]).all(f64::is_finite), "{row:?}");
                 assert_eq!(row.p_adjusted.is_some_and(|p| p <= 0.01), row.verdict == Verdict::Disagree, "{row:?}");
+                let adjusted = row.p_value.map(|p| (p * 0.01 / (1.0 - row.level)).min(1.0));
+                let near = |(a, b): (f64, f64)| (a - b).abs() <= 1e-9 * b;
+                assert!(row.level == 1.0 || adjusted.zip(row.p_adjusted).is_none_or(near), "{row:?}");
                 assert!(row.verdict == Verdict::Inconclusive || row.replications_needed.is_none());
                 if let (Some([low, high]), Some(estimate)) = (interval, row.estimate) {
                     assert!(low <= high && low <= estimate && estimate <= high, "{row:?}");
