@@ -9,7 +9,7 @@ use super::{Session, demo, output, steps};
 use crate::compare::{SizePlan, Study, Verdict};
 use crate::exact::{Exact, Request};
 use crate::model::Model;
-use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary, rounded, thousands};
+use crate::report::{Body, rounded, thousands};
 use crate::sampling::{BLOCK, Plan, Sampler, sample};
 
 /// Longest run that is started unasked.
@@ -62,22 +62,8 @@ fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, F
     let comparison = study.compare(&tally, Vec::new());
     let verdict = comparison.verdict;
 
-    let mut document = Document::new(ModelSummary::of(model), Body::Check(comparison));
-    document.plan = Some(PlanSummary {
-        error_rate: Some(settings.error_rate),
-        rows: study.rows(),
-        power: Some(settings.power),
-        replications: size.replications,
-        demanding: size.demanding,
-        seed: Some((seed, seed_source)),
-    });
-    document.run = Some(RunSummary {
-        replications: Some(tally.replications()),
-        steps: Some(tally.steps()),
-        seconds: started.elapsed().as_secs_f64(),
-        solver: Some(exact.solver()),
-    });
-    document.warnings = model.warnings().iter().cloned().chain(study.warnings()).collect();
+    let document =
+        steps::compared(&study, &settings, Body::Check(comparison), &tally, Some((seed, seed_source)), started);
     output::deliver(&steps::complete(document, model, session), &arguments.output)?;
     Ok(verdict)
 }
