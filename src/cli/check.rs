@@ -1,9 +1,8 @@
 //! `check`: the main job.
 
-use std::path::Path;
 use std::time::Instant;
 
-use super::arguments::{Check, Reading};
+use super::arguments::Check;
 use super::failure::{Failure, of_verdict, refused};
 use super::{Session, demo, output, steps};
 use crate::compare::{SizePlan, Study, Verdict};
@@ -31,13 +30,9 @@ pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
         if number > 0 && !arguments.output.quiet {
             output::to_standard_output(|out| std::io::Write::write_all(out, b"\n"))?;
         }
-        worst = worst.max(one(&read(path, &arguments.reading)?, arguments, session)?);
+        worst = worst.max(one(&steps::read(path, &arguments.reading)?, arguments, session)?);
     }
     Ok(of_verdict(worst))
-}
-
-fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
-    steps::read(path, reading)
 }
 
 /// Reads, solves, samples, compares, writes.
