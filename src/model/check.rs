@@ -7,7 +7,7 @@ use super::chain::{Chain, NO_END, Structure};
 use super::draft::{Draft, DraftMove, DraftState, Written};
 use super::fault::{Fault, FaultKind, LISTED, ModelError, Place, Warning, WarningKind, did_you_mean};
 use super::number::Number;
-use super::row::{ExactRow, RowOutcome, Rows};
+use super::row::{ExactRow, Rest, RowOutcome, Rows};
 use super::tolerance::Tolerances;
 
 /// Names that are compared, at most, in search of those that were meant.
@@ -88,12 +88,12 @@ impl Draft {
                 faults.push(fault.about(state.name.clone()));
             }
         }
-        let mut taken: HashSet<&str> = self.states.iter().map(|state| state.name.as_str()).collect();
+        let mut taken: HashSet<&str> = HashSet::new();
         for list in self.classes.iter().chain(&self.groups) {
             if let Some(text) = bad_name(&list.name) {
                 faults.push(Fault::new(FaultKind::BadName, self.place(0, list.line), text, "rename it"));
             }
-            if !taken.insert(&list.name) {
+            if !taken.insert(&list.name) || self.known_state(&list.name).is_some() {
                 let text = format!("the name `{}` is used twice", list.name);
                 let remedy = "states, classes and groups need names of their own; rename one";
                 let fault = Fault::new(FaultKind::DuplicateName, self.place(0, list.line), text, remedy);
@@ -195,6 +195,9 @@ impl Draft {
     }
 
     fn check_duplicates(&mut self, name: &str, moves: &[DraftMove]) -> bool {
+        if moves.len() < 2 {
+            return true;
+        }
         let mut seen: HashMap<u32, u64> = HashMap::with_capacity(moves.len());
         let mut clean = true;
         for one in moves {
@@ -227,13 +230,14 @@ impl Draft {
 
     fn check_states_are_known(&mut self) {
         let known = |state: &DraftState| state.row.is_some() || state.absorbing.is_some();
+        let unknown = |state: &&DraftState| !known(state) && bad_name(&state.name).is_none();
         let names: Vec<&str> =
             self.states.iter().filter(|state| known(state)).map(|state| state.name.as_str()).collect();
         let suggested = SUGGESTION_WORK / names.len().max(1);
         let faults: Vec<Fault> = self
             .states
             .iter()
-            .filter(|state| !known(state))
+            .filter(unknown)
             .enumerate()
             .map(|(number, state)| {
                 let otherwise = "give it moves, or declare it absorbing";
@@ -295,12 +299,12 @@ impl Draft {
 }
 
 /// The numbers of a row, and where its "rest" goes: all of them, though only one may be there.
-fn split<'a>(row: impl Iterator<Item = (u32, Option<&'a Written>)>) -> (Vec<(u32, Number)>, Vec<u32>) {
+fn split<'a>(row: impl Iterator<Item = (u32, Option<&'a Written>)>) -> (Vec<(u32, Number)>, Vec<Rest>) {
     let (mut numbers, mut rests) = (Vec::new(), Vec::new());
-    for (to, value) in row {
+    for (place, (to, value)) in row.enumerate() {
         match value {
             Some(Written::Number(number)) => numbers.push((to, number.clone())),
-            Some(Written::Rest) => rests.push(to),
+            Some(Written::Rest) => rests.push(Rest { place, to }),
             None => {}
         }
     }

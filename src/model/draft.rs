@@ -10,8 +10,7 @@ use super::quantity::Quantity;
 use super::tolerance::{Tolerance, ToleranceKey};
 
 const IN_RANGE: &str = "probabilities lie between 0 and 1; correct it";
-/// Also said of values that are no text and no number at all.
-pub(super) const HOW_TO_WRITE: &str = "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"";
+const HOW_TO_WRITE: &str = "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"";
 
 /// A probability as written.
 #[derive(Debug, Clone, PartialEq)]
@@ -86,6 +85,8 @@ pub struct Draft {
     pub(super) starts: Vec<(u32, Written, u64)>,
     /// Something is wrong with the start already, so nothing is said of its sum.
     pub(super) start_faulty: bool,
+    /// Absorbing states that a file or an option declares, with their lines, until [`Draft::declare`] numbers them.
+    pub(super) declared: Vec<(String, u64)>,
     pub(super) moves: Vec<DraftMove>,
     /// The file that the moves stand in.
     pub(super) moves_file: usize,
@@ -160,6 +161,15 @@ impl Draft {
         self.compare = Some(quantities.into_iter().map(|quantity| (quantity, 0)).collect());
     }
 
+    /// Numbers the declared absorbing states. Readers call it between the states that have moves and all other targets, so
+    /// that every form of a model numbers its states alike.
+    pub(super) fn declare(&mut self) {
+        for (name, line) in std::mem::take(&mut self.declared) {
+            let state = self.state(&name, 0, line);
+            self.states[state as usize].absorbing = Some(line);
+        }
+    }
+
     /// The number of a state, given at its first mention.
     pub(super) fn state(&mut self, name: &str, file: usize, line: u64) -> u32 {
         if let Some(number) = self.index.get(name) {
@@ -190,6 +200,7 @@ impl Draft {
             return Some(Written::Rest);
         }
         let (kind, reason, remedy) = match Number::parse(text) {
+            _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), HOW_TO_WRITE),
             Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), IN_RANGE),
             Ok(number) if number.exceeds_one() => (FaultKind::AboveOne, "is above 1".to_owned(), IN_RANGE),
             Ok(number) => return Some(Written::Number(number)),
@@ -197,16 +208,17 @@ impl Draft {
             Err(reason) => (FaultKind::NotANumber, reason.to_string(), HOW_TO_WRITE),
         };
         let shown = shortened(text);
+        let what = if text.is_empty() { "a value".to_owned() } else { format!("`{shown}`") };
         let fault = match state {
             Some(state) => {
                 let state = &mut self.states[state as usize];
                 state.faulty = true;
-                let said = format!("`{shown}` among the moves of `{}` {reason}", state.name);
+                let said = format!("{what} among the moves of `{}` {reason}", state.name);
                 Fault::new(kind, place, said, remedy).about(state.name.clone())
             }
             None => {
                 self.start_faulty = true;
-                Fault::new(kind, place, format!("`{shown}` among the shares of the start {reason}"), remedy)
+                Fault::new(kind, place, format!("{what} among the shares of the start {reason}"), remedy).about("start")
             }
         };
         self.fault(fault.valued(shown));

@@ -11,7 +11,9 @@ use dashu_ratio::RBig;
 use super::number::Number;
 
 /// Rows whose sum is off by no more than this are corrected exactly, with a warning; others are refused.
-pub const LARGEST_CORRECTION: f64 = 1e-9;
+pub const LARGEST_CORRECTION: f64 = 1.0 / CORRECTION_PARTS as f64;
+/// The same as a number of parts of one, so that the limit is exact.
+const CORRECTION_PARTS: u32 = 1_000_000_000;
 
 /// The probabilities of a row: `numerators[i] / denominator`, exactly.
 #[derive(Debug, Clone, Copy)]
@@ -153,6 +155,15 @@ enum Values {
     Wide { numerators: Vec<UBig>, denominator: UBig },
 }
 
+/// Where the "rest" of a row goes.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Rest {
+    /// Its place among the moves.
+    pub(super) place: usize,
+    /// Its target.
+    pub(super) to: u32,
+}
+
 /// What a written row turned out to be.
 #[derive(Debug)]
 pub(super) enum RowOutcome {
@@ -180,11 +191,11 @@ impl ExactRow {
     }
 
     /// Normalises a written row. `stay` is the target that means "remain here"; `rest`, if any, takes what is left to
-    /// one. Moves of probability zero are dropped.
+    /// one, at its place among the moves. Moves of probability zero are dropped.
     ///
     /// A row that is off by at most [`LARGEST_CORRECTION`] keeps its leaves when it has a stay that can absorb the
     /// difference, and is divided by its sum otherwise: no stay and no exit is ever created.
-    pub(super) fn normalise(moves: &[(u32, Number)], stay: Option<u32>, rest: Option<u32>) -> RowOutcome {
+    pub(super) fn normalise(moves: &[(u32, Number)], stay: Option<u32>, rest: Option<Rest>) -> RowOutcome {
         let common = moves.iter().fold(UBig::ONE, |common, (_, value)| lcm(common, &denominator(value)));
         let mut targets: Vec<u32> = moves.iter().map(|(to, _)| *to).collect();
         let mut numerators: Vec<UBig> = moves.iter().map(|(_, value)| numerator_over(value, &common)).collect();
@@ -194,15 +205,16 @@ impl ExactRow {
             if total > common {
                 return RowOutcome::NothingLeft { sum: as_sum(&total) };
             }
-            targets.push(rest);
-            numerators.push(&common - &total);
+            targets.insert(rest.place, rest.to);
+            numerators.insert(rest.place, &common - &total);
             return RowOutcome::Exact(Self::reduced(targets, numerators, common));
         }
         if total == common {
             return RowOutcome::Exact(Self::reduced(targets, numerators, common));
         }
         let sum = as_sum(&total);
-        if total == UBig::ZERO || (sum.to_f64().value() - 1.0).abs() > LARGEST_CORRECTION {
+        let off = if total > common { &total - &common } else { &common - &total };
+        if total == UBig::ZERO || off * UBig::from(CORRECTION_PARTS) > common {
             return RowOutcome::WrongSum { sum };
         }
         let at_stay = stay.and_then(|stay| targets.iter().position(|to| *to == stay));
@@ -280,11 +292,12 @@ mod tests {
 
     #[test]
     fn fractions_and_decimals_meet_exactly_and_rest_takes_what_is_left() {
-        let RowOutcome::Exact(row) = ExactRow::normalise(&written(&[(1, "5/12"), (2, "0.25")]), Some(0), Some(3))
+        let RowOutcome::Exact(row) =
+            ExactRow::normalise(&written(&[(1, "5/12"), (2, "0.25")]), Some(0), Some(Rest { place: 1, to: 3 }))
         else {
             panic!("sums below one with a rest");
         };
-        assert_eq!(shown(row), pairs(&[(1, "5/12"), (2, "1/4"), (3, "1/3")]));
+        assert_eq!(shown(row), pairs(&[(1, "5/12"), (3, "1/3"), (2, "1/4")]));
     }
 
     #[test]
@@ -318,14 +331,16 @@ mod tests {
     fn a_sum_far_from_one_or_nothing_left_is_said() {
         let off = ExactRow::normalise(&written(&[(1, "0.5"), (2, "0.4")]), None, None);
         assert!(matches!(off, RowOutcome::WrongSum { sum } if sum.to_string() == "9/10"));
-        let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(3));
+        let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(Rest { place: 2, to: 3 }));
         assert!(matches!(full, RowOutcome::NothingLeft { sum } if sum.to_string() == "6/5"));
     }
 
     #[test]
     fn long_decimals_stay_exact_in_the_side_table() {
         let moves = written(&[(1, "1e-30")]);
-        let RowOutcome::Exact(row) = ExactRow::normalise(&moves, Some(0), Some(0)) else { panic!("has a rest") };
+        let RowOutcome::Exact(row) = ExactRow::normalise(&moves, Some(0), Some(Rest { place: 1, to: 0 })) else {
+            panic!("has a rest")
+        };
         let row = shown(row);
         assert_eq!(row[0].1, format!("1/1{}", "0".repeat(30)));
         assert_eq!(row[1].1, format!("{}/1{}", "9".repeat(30), "0".repeat(30)));

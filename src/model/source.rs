@@ -39,6 +39,7 @@ impl Model {
         } else {
             let mut draft = Draft::new(path.file_stem().and_then(OsStr::to_str).unwrap_or_default());
             draft.files.push(Arc::from(shown.as_str()));
+            draft.declare_all(options);
             table::read(&bytes, &mut draft);
             draft
         };
@@ -62,6 +63,7 @@ impl Model {
     /// [`ModelError::Faulty`] with every fault.
     pub fn from_table(text: &str, options: &ReadOptions) -> Result<Self, ModelError> {
         let mut draft = Draft::default();
+        draft.declare_all(options);
         table::read(text.as_bytes(), &mut draft);
         draft.apply(options);
         draft.check()
@@ -69,10 +71,13 @@ impl Model {
 }
 
 impl Draft {
+    fn declare_all(&mut self, options: &ReadOptions) {
+        self.declared.extend(options.absorbing.iter().map(|name| (name.clone(), 0)));
+    }
+
     fn apply(&mut self, options: &ReadOptions) {
-        for name in &options.absorbing {
-            self.absorbing(name);
-        }
+        self.declare_all(options);
+        self.declare();
         if let Some(start) = &options.start {
             self.starts.clear();
             self.start(start);

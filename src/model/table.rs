@@ -69,7 +69,8 @@ pub(super) fn read(bytes: &[u8], draft: &mut Draft) {
     draft.lone_stay_is_absorbing = true;
     let mut table = Table::of(bytes);
     let Some((header, line)) = table.header(draft) else { return };
-    if ["from", "to"].iter().all(|name| header.iter().any(|known| known.eq_ignore_ascii_case(name))) {
+    // Two of the three names show what is meant, so that a misspelt third is told.
+    if COLUMNS.iter().filter(|name| header.iter().any(|known| known.eq_ignore_ascii_case(name))).count() >= 2 {
         list_of_moves(table, &header, line, draft);
     } else {
         square(table, &header, line, draft);
@@ -123,7 +124,7 @@ fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draf
             }
         }
     }
-    // Targets are numbered after all states that have moves, as in a model file.
+    draft.declare();
     for (from, to, value, line) in pending {
         let to = draft.state(&to, file, line);
         add_move(draft, from, to, &value, line);
@@ -133,14 +134,25 @@ fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draf
 fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
     let file = draft.moves_file;
     let names = &header[1..];
+    let mut refused = |kind, said: String, remedy: &str| {
+        let fault = Fault::new(kind, draft.place(file, header_line), said, remedy);
+        draft.fault(fault.valued(shortened(&header.join(","))));
+        draft.moves_unread = true;
+    };
+    if names.is_empty() || header.iter().all(|name| Number::parse(name).is_ok()) {
+        let said = "the first line does not name the states";
+        let remedy = "begin with from,to,probability for a list of moves, or with a blank cell and the names of all states \
+                      for a square table";
+        return refused(FaultKind::Shape, said.to_owned(), remedy);
+    }
     let mut column_of: HashMap<&str, usize> = HashMap::new();
     for (column, name) in names.iter().enumerate() {
         if column_of.insert(name, column).is_some() {
             let said = format!("the header names `{name}` twice");
-            let place = draft.place(file, header_line);
-            let fault = Fault::new(FaultKind::DuplicateName, place, said, "give every state one column");
-            draft.fault(fault.about(name.clone()));
+            return refused(FaultKind::DuplicateName, said, "give every state one column");
         }
+    }
+    for name in names {
         draft.state(name, file, header_line);
     }
     let mut seen: HashMap<String, u64> = HashMap::new();
@@ -179,12 +191,6 @@ fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut
             let to = draft.state(&names[column], file, header_line);
             add_move(draft, from, to, &written, line);
         }
-    }
-    for name in names.iter().filter(|name| !seen.contains_key(*name)) {
-        let said = format!("the column `{name}` has no row");
-        let place = draft.place(file, header_line);
-        let fault = Fault::new(FaultKind::Shape, place, said, "the table must be square; add its row");
-        draft.fault(fault.about(name.clone()));
     }
     hint_at_transposition(draft, &column_sums);
 }

@@ -6,9 +6,9 @@ use std::path::Path;
 use std::sync::Arc;
 
 use toml::Spanned;
-use toml::de::{DeArray, DeTable, DeValue};
+use toml::de::{DeTable, DeValue};
 
-use super::draft::{Draft, DraftMove, HOW_TO_WRITE, NamedList, Written};
+use super::draft::{Draft, DraftMove, NamedList, Written};
 use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean, shortened};
 use super::number::Number;
 use super::quantity::Quantity;
@@ -42,10 +42,7 @@ pub(super) fn read(
     reader.draft.files.extend(file.map(Arc::from));
     let (document, errors) = DeTable::parse_recoverable(text);
     for error in errors {
-        let place = reader.place(&error.span().unwrap_or(0..0));
-        let said = format!("this is not valid TOML: {}", error.message().trim());
-        let remedy = "correct the line; names with blanks or dots need quotes";
-        reader.draft.fault(Fault::new(FaultKind::Syntax, place, said, remedy));
+        reader.not_toml(error.message().trim(), &error.span().unwrap_or(0..0));
     }
     if !reader.draft.faults.is_empty() {
         return Err(ModelError::Faulty(reader.draft.faults));
@@ -62,6 +59,24 @@ struct Reader<'t> {
 }
 
 impl Reader<'_> {
+    fn not_toml(&mut self, reason: &str, span: &Range<usize>) {
+        let place = self.place(span);
+        // What follows on the same line follows from the first mistake there.
+        if self.draft.faults.last().is_some_and(|last| last.place == place) {
+            return;
+        }
+        let written = shortened(self.text.get(span.clone()).unwrap_or_default());
+        let value = Some(written).filter(|written| !written.trim().is_empty());
+        let at = value.as_ref().map(|written| format!(" at `{written}`")).unwrap_or_default();
+        let remedy = if reason.contains("duplicate") {
+            "write every name once"
+        } else {
+            "correct the line; names with blanks or dots need quotes"
+        };
+        let said = format!("this is not valid TOML{at}: {reason}");
+        self.draft.fault(Fault { value, ..Fault::new(FaultKind::Syntax, place, said, remedy) });
+    }
+
     fn line(&self, span: &Range<usize>) -> u64 {
         self.lines.of_byte(span.start)
     }
@@ -75,24 +90,22 @@ impl Reader<'_> {
             document.iter().map(|(key, value)| (key.get_ref().as_ref(), value)).collect();
         self.check_keys(document);
         self.plain_texts(&entries);
-        // States are numbered in the order of the moves, then of the absorbing states.
-        if let Some(moves) = entries.get("moves") {
-            self.register_rows(moves);
-        }
         if let Some(absorbing) = entries.get("absorbing") {
-            self.absorbing(absorbing);
+            self.draft.declared = self.names(absorbing, "absorbing");
         }
         match (entries.get("moves"), entries.get("moves_file")) {
-            (Some(_), Some(file)) => {
-                let said = "the model has both [moves] and moves_file";
-                let fault = Fault::new(FaultKind::Shape, self.place(&file.span()), said, "keep one of the two");
-                self.draft.fault(fault);
-                self.draft.moves_unread = true;
+            (Some(moves), file) => {
+                if let Some(file) = file {
+                    let said = "the model has both [moves] and moves_file";
+                    let fault = Fault::new(FaultKind::Shape, self.place(&file.span()), said, "keep one of the two");
+                    self.draft.fault(fault);
+                }
+                self.moves(moves);
             }
-            (Some(moves), None) => self.moves(moves),
             (None, Some(file)) => self.moves_file(file, directory)?,
             (None, None) => {}
         }
+        self.draft.declare();
         if let Some(start) = entries.get("start") {
             self.start(start);
         }
@@ -153,26 +166,17 @@ impl Reader<'_> {
         }
     }
 
-    fn register_rows(&mut self, moves: &Spanned<DeValue<'_>>) {
-        for (from, _) in moves.get_ref().as_table().into_iter().flatten() {
-            let line = self.line(&from.span());
-            let state = self.draft.state(from.get_ref(), 0, line);
-            self.draft.states[state as usize].row = Some(line);
-        }
-    }
-
-    fn absorbing(&mut self, absorbing: &Spanned<DeValue<'_>>) {
-        for (name, line) in self.names(absorbing, "absorbing") {
-            let state = self.draft.state(&name, 0, line);
-            self.draft.states[state as usize].absorbing = Some(line);
-        }
-    }
-
     fn moves(&mut self, moves: &Spanned<DeValue<'_>>) {
         let Some(table) = self.table(moves, "moves", "[moves] holds one table a state") else {
             self.draft.moves_unread = true;
             return;
         };
+        for (from, _) in table {
+            let line = self.line(&from.span());
+            let state = self.draft.state(from.get_ref(), 0, line);
+            self.draft.states[state as usize].row = Some(line);
+        }
+        self.draft.declare();
         for (from, row) in table {
             let name = from.get_ref().as_ref();
             let from = self.draft.state(name, 0, self.line(&from.span()));
@@ -183,13 +187,7 @@ impl Reader<'_> {
             for (to, value) in row {
                 let line = self.line(&to.span());
                 let to = self.draft.state(to.get_ref(), 0, line);
-                let value = match self.number_text(value, name, HOW_TO_WRITE) {
-                    Some(written) => self.draft.written(&written, Some(from), self.draft.place(0, line)),
-                    None => {
-                        self.draft.states[from as usize].faulty = true;
-                        None
-                    }
-                };
+                let value = self.draft.written(&self.as_written(value), Some(from), self.draft.place(0, line));
                 self.draft.moves.push(DraftMove { from, to, value, line });
             }
         }
@@ -222,10 +220,8 @@ impl Reader<'_> {
                     let line = self.line(&name.span());
                     let state = self.draft.state(name.get_ref(), 0, line);
                     let place = self.draft.place(0, line);
-                    let written = self.number_text(share, "start", HOW_TO_WRITE);
-                    match written.and_then(|written| self.draft.written(&written, None, place)) {
-                        Some(share) => self.draft.starts.push((state, share, line)),
-                        None => self.draft.start_faulty = true,
+                    if let Some(share) = self.draft.written(&self.as_written(share), None, place) {
+                        self.draft.starts.push((state, share, line));
                     }
                 }
             }
@@ -242,14 +238,13 @@ impl Reader<'_> {
         let Some(table) = self.table(lists, key, "write NAME = [\"STATE\", …] below it") else { return found };
         for (name, members) in table {
             let line = self.line(&name.span());
-            let members: Vec<String> =
-                self.names(members, name.get_ref()).into_iter().map(|(member, _)| member).collect();
-            if members.is_empty() {
+            if is_empty_list(members) {
                 let said = format!("`{}` under [{key}] lists nothing", name.get_ref());
                 let fault = Fault::new(FaultKind::Shape, self.draft.place(0, line), said, "list at least one name");
                 self.draft.fault(fault.about(name.get_ref().as_ref()));
                 continue;
             }
+            let members = self.names(members, name.get_ref()).into_iter().map(|(member, _)| member).collect();
             found.push(NamedList { name: name.get_ref().to_string(), members, line });
         }
         found
@@ -263,7 +258,7 @@ impl Reader<'_> {
                 Err(reason) => self.unknown_quantity(&name, line, reason.text, reason.remedy),
             }
         }
-        if rows.is_empty() && self.draft.faults.is_empty() {
+        if is_empty_list(compare) {
             let said = "compare lists nothing";
             let remedy = "name quantities, or take the key out for the default rows";
             let fault = Fault::new(FaultKind::Shape, self.place(&compare.span()), said, remedy);
@@ -302,27 +297,25 @@ impl Reader<'_> {
             Ok(key) => key,
             Err(reason) => return self.unknown_quantity(name, line, reason.text, reason.remedy),
         };
-        let remedy = "write an absolute one such as 0.005, or a relative one such as \"1 %\"";
-        let Some(text) = self.number_text(value, name, remedy) else { return };
+        let text = self.as_written(value);
         match Tolerance::parse(&text) {
             Ok(value) => self.draft.tolerances.push((key, value, line)),
             Err(reason) => {
+                let remedy = "write an absolute one such as 0.005, or a relative one such as \"1 %\"";
                 let fault = Fault::new(FaultKind::WrongType, self.draft.place(0, line), reason, remedy);
-                self.draft.fault(fault.valued(text));
+                self.draft.fault(fault.about(name).valued(shortened(&text)));
             }
         }
     }
 
-    /// A number or text as written, so that its exact value is not lost in a double.
-    fn number_text(&mut self, value: &Spanned<DeValue<'_>>, what: &str, remedy: &str) -> Option<String> {
+    /// A number or text as written, so that its exact value is not lost in a double; anything else as the file has it, for
+    /// the message that it is no number.
+    fn as_written(&self, value: &Spanned<DeValue<'_>>) -> String {
         match value.get_ref() {
-            DeValue::String(text) => Some(text.to_string()),
-            DeValue::Float(number) => Some(number.as_str().to_owned()),
-            DeValue::Integer(number) if number.radix() == 10 => Some(number.as_str().to_owned()),
-            other => {
-                self.wrong_type(what, other, &value.span(), remedy);
-                None
-            }
+            DeValue::String(text) => text.to_string(),
+            DeValue::Float(number) => number.as_str().to_owned(),
+            DeValue::Integer(number) if number.radix() == 10 => number.as_str().to_owned(),
+            _ => self.text.get(value.span()).unwrap_or_default().to_owned(),
         }
     }
 
@@ -345,18 +338,12 @@ impl Reader<'_> {
     }
 
     fn names(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Vec<(String, u64)> {
-        let empty = DeArray::new();
-        let items = value.get_ref().as_array().unwrap_or_else(|| {
+        // A lone name is told off, and then taken for the list that was meant.
+        let items = value.get_ref().as_array().map_or(std::slice::from_ref(value), |items| items);
+        if value.get_ref().as_array().is_none() {
             self.wrong_type(key, value.get_ref(), &value.span(), "write a list of names in quotes: [\"a\", \"b\"]");
-            &empty
-        });
-        let mut names = Vec::new();
-        for item in items {
-            if let Some(name) = self.text(item, key) {
-                names.push((name, self.line(&item.span())));
-            }
         }
-        names
+        items.iter().filter_map(|item| self.text(item, key).map(|name| (name, self.line(&item.span())))).collect()
     }
 
     fn wrong_type(&mut self, key: &str, value: &DeValue<'_>, span: &Range<usize>, remedy: &str) {
@@ -365,6 +352,10 @@ impl Reader<'_> {
         let written = self.text.get(span.clone()).unwrap_or_default();
         self.draft.fault(fault.about(key).valued(shortened(written)));
     }
+}
+
+fn is_empty_list(value: &Spanned<DeValue<'_>>) -> bool {
+    value.get_ref().as_array().is_some_and(|items| items.is_empty())
 }
 
 /// Where each line of a text begins.
