@@ -1,72 +1,15 @@
-//! The comparison as its users see it: rows, levels, tolerances, sizes, verdicts.
+//! The comparison as its users see it: rows, levels, verdicts.
+
+mod studies;
 
 use std::sync::Arc;
 
-use tallystone::compare::{Comparison, Guarantee, Row, Settings, Study, ToleranceSource, Verdict};
+use studies::{BENCH, COIN, asking, made, names, names_of, quantity, row, run, tolerating, with_study};
+use tallystone::compare::{Guarantee, Settings, Study, Verdict};
 use tallystone::exact::{Exact, Request};
-use tallystone::model::{Model, Quantity, Silent, Tolerance, ToleranceKey, WarningKind};
-use tallystone::sampling::{BLOCK, Plan, Sampler, Tally, sample};
-use tallystone::statistics::{agree_miss_probability, clopper_pearson, proportion_size};
-
-/// Three ends, one of them rare, and a loop.
-const BENCH: &str = r#"
-    start = "intake"
-    absorbing = ["shipped", "parts", "scrapped"]
-    [moves]
-    intake = { diagnose = 0.92, scrapped = "rest" }
-    diagnose = { board = "5/12", case = 0.25, diagnose = "rest" }
-    board = { test = 0.9, parts = "rest" }
-    case = { test = 1 }
-    test = { shipped = 0.8, diagnose = "rest" }
-    [groups]
-    lost = ["parts", "scrapped"]
-    any = ["parts", "scrapped", "shipped"]
-    sold = ["shipped"]
-"#;
-
-/// Two ends, half of the time each.
-const COIN: &str =
-    "start = \"toss\"\nabsorbing = [\"heads\", \"tails\"]\n[moves]\ntoss = { heads = 0.4, tails = 0.4, toss = 0.2 }\n";
-
-fn quantity(text: &str) -> Quantity {
-    Quantity::parse(text).unwrap()
-}
-
-fn asking(quantities: &[&str]) -> Settings {
-    Settings { quantities: Some(quantities.iter().map(|text| quantity(text)).collect()), ..Settings::default() }
-}
-
-fn tolerating(mut settings: Settings, key: &str, tolerance: Tolerance) -> Settings {
-    settings.tolerances.set(ToleranceKey::One(quantity(key)), tolerance);
-    settings
-}
-
-fn with_study<T>(text: &str, settings: &Settings, test: impl FnOnce(&Model, &Study<'_>) -> T) -> T {
-    let model = Model::from_toml(text).unwrap();
-    let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, settings)), &Silent).unwrap();
-    test(&model, &Study::new(&exact, settings).unwrap())
-}
-
-fn run(model: &Model, study: &Study<'_>, replications: u64, seed: u64) -> Comparison {
-    let plan = Plan { replications, seed, grid: study.grid() };
-    study.compare(&sample(&Sampler::new(model.chain()), &plan, &Silent).unwrap(), Vec::new())
-}
-
-fn made(study: &Study<'_>, outcomes: &[(usize, u64, u64)]) -> Comparison {
-    let mut tally = Tally::new(study.exact().model().chain().ends().len(), study.grid());
-    outcomes.iter().for_each(|(end, time, copies)| tally.add_many(*end, *time, *copies));
-    study.compare(&tally, Vec::new())
-}
-
-#[track_caller]
-fn row<'c>(comparison: &'c Comparison, name: &str) -> &'c Row {
-    let wanted = quantity(name);
-    comparison.rows.iter().find(|row| row.quantity == wanted).unwrap_or_else(|| panic!("no row {name}"))
-}
-
-fn names(comparison: &Comparison) -> Vec<String> {
-    comparison.rows.iter().map(|row| row.quantity.to_string()).collect()
-}
+use tallystone::model::{Model, Silent, Tolerance, ToleranceKey, WarningKind};
+use tallystone::sampling::{BLOCK, Tally};
+use tallystone::statistics::clopper_pearson;
 
 #[test]
 fn default_rows_levels_and_shared_levels() {
@@ -156,34 +99,6 @@ fn two_ends_share_one_level() {
     });
 }
 
-// The table of one probability: ⌈(z_{α/2} + z_{β/2})² p (1 − p)/τ²⌉, then up to a block. For several rows, the sum of their
-// chances to miss, by hand from the formula of each, is within 1 − power at the plan and beyond it one block earlier.
-#[test]
-fn the_plan_is_minimal() {
-    with_study(COIN, &asking(&["absorption_probability:heads"]), |_, study| {
-        let by_hand = proportion_size(0.5, 0.005, 0.01, 0.05).unwrap();
-        let plan = study.plan();
-        assert_eq!(plan.replications, Some(by_hand.div_ceil(BLOCK) * BLOCK));
-        assert_eq!(plan.demanding, Some(quantity("absorption_probability:heads")));
-        assert_eq!((plan.without, plan.never.len()), (None, 0));
-    });
-    let rows = ["absorption_probability:heads", "mean_time", "time_quantile:0.5"];
-    with_study(COIN, &asking(&rows[..2]), |_, study| {
-        // Geometric with 0.8: mean 1.25, variance 0.2/0.64 = 0.3125.
-        let missed = |n: u64, alpha: f64| {
-            agree_miss_probability(0.005, 0.5, n, alpha) + agree_miss_probability(0.0125, 0.3125_f64.sqrt(), n, alpha)
-        };
-        let n = study.plan().replications.unwrap();
-        assert!(missed(n, 0.005) <= 0.05 && missed(n - BLOCK, 0.005) > 0.05);
-    });
-    with_study(COIN, &asking(&rows), |_, study| {
-        let plan = study.plan();
-        let without = with_study(COIN, &asking(&rows[1..]), |_, study| study.plan().replications);
-        assert_eq!(plan.demanding, Some(quantity(rows[0])));
-        assert_eq!(plan.without, without);
-    });
-}
-
 #[test]
 fn twenty_ends_have_rows_and_the_rest_is_said() {
     let names: Vec<String> = (0..30).map(|i| format!("e{i}")).collect();
@@ -211,10 +126,6 @@ fn twenty_ends_have_rows_and_the_rest_is_said() {
         // Mean times only where the share is 0.02 or more, which all the twenty have.
         assert_eq!(names_of(&comparison, "mean_time_given").len(), 20);
     });
-}
-
-fn names_of(comparison: &Comparison, name: &str) -> Vec<String> {
-    comparison.rows.iter().filter(|row| row.quantity.name() == name).map(|row| row.quantity.to_string()).collect()
 }
 
 #[test]
@@ -306,103 +217,6 @@ fn what_cannot_be_compared_is_left_out_with_its_reason() {
     });
 }
 
-// A rare detour of a million steps: the mean needs (5 σ/(1 % μ))² replications, far beyond 500,000 even at four times the
-// tolerance; σ² is about 1e-4 · 1e12 and μ about 100.
-#[test]
-fn a_default_is_widened_or_left_out_and_a_given_one_is_kept() {
-    let rare = "start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = { x = 0.9999, far = \"rest\" }\n\
-                far = { x = 0.000001, far = \"rest\" }\n";
-    with_study(rare, &asking(&["mean_time"]), |_, study| {
-        assert_eq!(study.rows(), 0);
-        let text = &made(study, &[]).not_compared[0].text;
-        assert!(text.contains("even 4 times its default tolerance of 1 %") && text.contains("500,000"), "{text}");
-    });
-    let given = tolerating(asking(&["mean_time"]), "mean_time", Tolerance::Relative(0.03));
-    with_study(rare, &given, |_, study| {
-        let comparison = made(study, &[(0, 1, 1000)]);
-        let row = row(&comparison, "mean_time");
-        assert_eq!(row.tolerance.source, ToleranceSource::Given);
-        assert!((row.tolerance.value / row.exact.unwrap().value - 0.03).abs() < 1e-12);
-        assert_eq!((row.verdict, row.p_value), (Verdict::Inconclusive, None));
-        assert!(row.replications_needed.unwrap() > 500_000);
-        assert!(row.note.as_ref().unwrap().contains("replications on; there are 1,000"));
-    });
-    // A geometric time has σ = μ √q, so 1 % needs (z_{α/2} + z_{β/2})² q/1e-4 = 205,000 (α = 0.01, β = 0.05), and a mixture
-    // with twice the spread four times that: it is widened to 2 %.
-    let spread = "start = { a = 0.9, b = 0.1 }\nabsorbing = [\"x\"]\n[moves]\na = { x = 0.1, a = \"rest\" }\n\
-                  b = { x = 0.01, b = \"rest\" }\n";
-    with_study(spread, &asking(&["mean_time"]), |_, study| {
-        let comparison = made(study, &[]);
-        let row = row(&comparison, "mean_time");
-        assert_eq!(row.tolerance.tolerance, Tolerance::Relative(0.02));
-        // μ = 0.9 · 10 + 0.1 · 100 = 19.
-        let ToleranceSource::Widened { from } = row.tolerance.source else { panic!("{:?}", row.tolerance) };
-        assert!((from - 0.19).abs() < 1e-12 && (row.tolerance.value - 0.38).abs() < 1e-12);
-        assert!(study.plan().replications.unwrap() <= 500_000 + BLOCK);
-        let [warning] = &study.warnings()[..] else { panic!("{:?}", study.warnings()) };
-        assert_eq!(warning.kind, WarningKind::WideTolerance);
-        assert!(warning.text.contains("from 1 % to 2 %"));
-    });
-}
-
-#[test]
-fn tolerances_that_are_wide_useless_or_hopeless_are_said_before_the_run() {
-    let rare = "start = \"a\"\nabsorbing = [\"x\", \"y\"]\n[moves]\na = { x = 0.0001, y = \"rest\" }\n";
-    with_study(rare, &asking(&["absorption_probability:x"]), |_, study| {
-        let [warning] = &study.warnings()[..] else { panic!("{:?}", study.warnings()) };
-        // (1 − 1e-4)^n ≤ 0.05 from n = ln 0.05/ln(1 − 1e-4) = 29,956 on.
-        assert!(warning.text.contains("29,956 replications"), "{}", warning.text);
-        assert!(warning.text.contains("0.00025") && warning.text.contains("0.0001"));
-    });
-    let unused = tolerating(asking(&["mean_time"]), "law", Tolerance::Absolute(0.02));
-    with_study(COIN, &unused, |_, study| {
-        let [warning] = &study.warnings()[..] else { panic!("{:?}", study.warnings()) };
-        assert_eq!(warning.kind, WarningKind::NotCompared);
-        assert!(warning.text.contains("`law`, which is not compared"));
-    });
-    // The median of the coin is 1 with P(time ≤ 1) = 0.8: no tolerance is too small for it, but 1e-13 of a mean needs more
-    // than 2^53 replications.
-    let hopeless = tolerating(asking(&["mean_time"]), "mean_time", Tolerance::Absolute(1e-13));
-    with_study(COIN, &hopeless, |model, study| {
-        let plan = study.plan();
-        assert_eq!((plan.replications, plan.demanding), (None, None));
-        assert!(plan.never[0].1.contains("more than"));
-        assert_eq!(study.warnings()[0].kind, WarningKind::NeverDecided);
-        let comparison = run(model, study, 10 * BLOCK, 1);
-        let row = row(&comparison, "mean_time");
-        assert_eq!((row.verdict, row.replications_needed), (Verdict::Inconclusive, None));
-        assert!(row.note.as_ref().unwrap().starts_with("never decided"));
-    });
-}
-
-#[test]
-fn without_tolerance_a_row_is_consistent_once_it_would_have_seen_the_default() {
-    let settings = ["absorption_probability:heads", "mean_time", "time_quantile:0.9", "law"]
-        .into_iter()
-        .fold(asking(&["absorption_probability:heads", "mean_time", "time_quantile:0.9", "law"]), |settings, name| {
-            tolerating(settings, name, Tolerance::Absolute(0.0))
-        });
-    with_study(COIN, &settings, |model, study| {
-        let n = study.plan().replications.unwrap();
-        // (z_{α/2} + 1.2816)² p (1 − p)/0.005² with α = 0.01/4, z_{α/2} = 3.0233: 185,318; the law: ((√(ln(6/α)/2) +
-        // √(ln(6/0.1)/2))/0.01)² = 114,000.
-        assert_eq!(n, 185_318_u64.div_ceil(BLOCK) * BLOCK);
-        // Alarms have odds of 0.01 a table; the seeds are fixed, and none of these three alarms.
-        for seed in 1..4 {
-            let comparison = run(model, study, n, seed);
-            assert!(comparison.rows.iter().all(|row| row.verdict == Verdict::Consistent), "{comparison:#?}");
-            assert_eq!(comparison.verdict, Verdict::Consistent);
-            assert_eq!(row(&comparison, "law").method, "pooled chi-square");
-        }
-        let early = run(model, study, n - BLOCK, 1);
-        assert_eq!(row(&early, "absorption_probability:heads").verdict, Verdict::Inconclusive);
-        assert_eq!(
-            row(&early, "absorption_probability:heads").replications_needed.map(|n| n.div_ceil(1000)),
-            Some(186)
-        );
-    });
-}
-
 // Every row and field over tallies of all sizes, odd ones too: finite or absent, verdicts in line with p-values.
 #[test]
 fn nothing_undefined_leaks_and_verdicts_follow_p_values() {
@@ -433,6 +247,9 @@ fn nothing_undefined_leaks_and_verdicts_follow_p_values() {
                 let all = numbers.into_iter().flatten().chain(interval.into_iter().flatten());
                 assert!(all.chain([row.level, row.tolerance.value]).all(f64::is_finite), "{row:?}");
                 assert_eq!(row.p_adjusted.is_some_and(|p| p <= 0.01), row.verdict == Verdict::Disagree, "{row:?}");
+                let adjusted = row.p_value.map(|p| (p * 0.01 / (1.0 - row.level)).min(1.0));
+                let near = |(a, b): (f64, f64)| (a - b).abs() <= 1e-9 * b;
+                assert!(row.level == 1.0 || adjusted.zip(row.p_adjusted).is_none_or(near), "{row:?}");
                 assert!(row.verdict == Verdict::Inconclusive || row.replications_needed.is_none());
                 if let (Some([low, high]), Some(estimate)) = (interval, row.estimate) {
                     assert!(low <= high && low <= estimate && estimate <= high, "{row:?}");

@@ -9,7 +9,8 @@ use rand_pcg::rand_core::Rng;
 use tallystone::exact::{Bounded, Exact, Request};
 use tallystone::model::{Draft, Model, Silent};
 
-/// A random chain as weights: `rows[i][j]` leads from state i to state j, the last `ends` columns being ends.
+/// A random chain as weights: `rows[i][j]` leads from state i to state j, the last `ends` columns being ends; the start
+/// likewise.
 #[derive(Clone)]
 struct Weights {
     rows: Vec<Vec<u128>>,
@@ -38,10 +39,12 @@ fn random(rng: &mut Lcg128CmDxsm64) -> Weights {
         let onwards = if below(rng, 2) == 0 { states + below(rng, ends as u64) as usize } else { i + 1 };
         row[onwards] = row[onwards].max(1);
     }
-    let mut start = vec![0; states];
+    let mut start = vec![0; states + ends];
     start[below(rng, states as u64) as usize] = 1;
     if below(rng, 3) == 0 {
-        start.iter_mut().for_each(|share| *share += u128::from(below(rng, 3)));
+        // Several starts, ends that exist among them.
+        let exists = |at: usize| at < states || rows.iter().any(|row| row[at] > 0);
+        (0..states + ends).filter(|at| exists(*at)).for_each(|at| start[at] += u128::from(below(rng, 3)));
     }
     Weights { rows, ends, start }
 }
@@ -180,7 +183,7 @@ fn a_stay_added_to_every_state_scales_the_time_and_keeps_the_ends() {
         for end in 0..one.chain().ends().len() {
             near(slow.absorption(&[end]).value, fast.absorption(&[end]).value);
         }
-        // Given M moves the time is M plus negative-binomial stays: Var T = 16 Var M + 12 E M.
+        // Given M moves the time is M plus negative-binomial stays: Var T = 16 Var M + 12 E M. A start in an end has M = 0.
         let expected = 16.0 * fast.variance_time().value + 12.0 * fast.mean_time().value;
         assert!((slow.variance_time().value / expected - 1.0).abs() < 1e-14);
     }

@@ -8,7 +8,7 @@ use super::{Session, output, steps};
 use crate::audit::read_outcomes;
 use crate::compare::Study;
 use crate::exact::{Exact, Request};
-use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary};
+use crate::report::{Body, Input};
 
 /// Reads the model, solves, reads the outcomes, compares, writes.
 pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
@@ -23,8 +23,8 @@ pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
     let comparison = study.compare(&audited.tally, audited.findings);
     let verdict = comparison.verdict;
 
-    let size = study.plan();
-    let mut document = Document::new(ModelSummary::of(&model), Body::Audit(comparison));
+    let body = Body::Audit(comparison);
+    let mut document = steps::compared(&study, &settings, body, &audited.tally, None, started);
     document.inputs.push(Input {
         file: outcomes.file,
         sha256: outcomes.sha256,
@@ -32,21 +32,6 @@ pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
         bad_rows: Some(0),
         ignored_columns: outcomes.ignored_columns,
     });
-    document.plan = Some(PlanSummary {
-        error_rate: Some(settings.error_rate),
-        rows: study.rows(),
-        power: Some(settings.power),
-        replications: size.replications,
-        demanding: size.demanding,
-        seed: None,
-    });
-    document.run = Some(RunSummary {
-        replications: Some(audited.tally.replications()),
-        steps: Some(audited.tally.steps()),
-        seconds: started.elapsed().as_secs_f64(),
-        solver: Some(exact.solver()),
-    });
-    document.warnings = model.warnings().iter().cloned().chain(study.warnings()).collect();
     output::deliver(&steps::complete(document, &model, session), &arguments.output)?;
     Ok(of_verdict(verdict))
 }

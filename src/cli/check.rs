@@ -1,15 +1,14 @@
 //! `check`: the main job.
 
-use std::path::Path;
 use std::time::Instant;
 
-use super::arguments::{Check, Reading};
+use super::arguments::Check;
 use super::failure::{Failure, of_verdict, refused};
 use super::{Session, demo, output, steps};
 use crate::compare::{SizePlan, Study, Verdict};
 use crate::exact::{Exact, Request};
 use crate::model::Model;
-use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary, rounded, thousands};
+use crate::report::{Body, rounded, thousands};
 use crate::sampling::{BLOCK, Plan, Sampler, sample};
 
 /// Longest run that is started unasked.
@@ -31,13 +30,9 @@ pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
         if number > 0 && !arguments.output.quiet {
             output::to_standard_output(|out| std::io::Write::write_all(out, b"\n"))?;
         }
-        worst = worst.max(one(&read(path, &arguments.reading)?, arguments, session)?);
+        worst = worst.max(one(&steps::read(path, &arguments.reading)?, arguments, session)?);
     }
     Ok(of_verdict(worst))
-}
-
-fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
-    steps::read(path, reading)
 }
 
 /// Reads, solves, samples, compares, writes.
@@ -55,27 +50,15 @@ fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, F
     let plan = Plan { replications, seed, grid: study.grid() };
     let tally = steps::on_threads(&arguments.sampling, || {
         allow(&sampler, &plan, &exact, &size, arguments)?;
+        let steps = exact.mean_time().value * replications as f64;
+        session.watch.expect(format!(", some {} steps", thousands(steps as u64)));
         Ok(sample(&sampler, &plan, &session.watch)?)
     })?;
     let comparison = study.compare(&tally, Vec::new());
     let verdict = comparison.verdict;
 
-    let mut document = Document::new(ModelSummary::of(model), Body::Check(comparison));
-    document.plan = Some(PlanSummary {
-        error_rate: Some(settings.error_rate),
-        rows: study.rows(),
-        power: Some(settings.power),
-        replications: size.replications,
-        demanding: size.demanding,
-        seed: Some((seed, seed_source)),
-    });
-    document.run = Some(RunSummary {
-        replications: Some(tally.replications()),
-        steps: Some(tally.steps()),
-        seconds: started.elapsed().as_secs_f64(),
-        solver: Some(exact.solver()),
-    });
-    document.warnings = model.warnings().iter().cloned().chain(study.warnings()).collect();
+    let document =
+        steps::compared(&study, &settings, Body::Check(comparison), &tally, Some((seed, seed_source)), started);
     output::deliver(&steps::complete(document, model, session), &arguments.output)?;
     Ok(verdict)
 }

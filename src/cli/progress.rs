@@ -1,9 +1,10 @@
 //! Progress on standard error, with rate and time left.
 
+use std::fmt;
 use std::sync::{Mutex, PoisonError};
 use std::time::Duration;
 
-use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
+use indicatif::{HumanCount, ProgressBar, ProgressDrawTarget, ProgressState, ProgressStyle};
 
 use super::signals::Stop;
 use crate::model::Progress;
@@ -12,18 +13,31 @@ use crate::model::Progress;
 #[derive(Debug)]
 pub(super) struct Watch {
     bar: Mutex<Option<ProgressBar>>,
+    /// What is known of the next phase before it begins.
+    outlook: Mutex<String>,
     is_shown: bool,
     stop: Stop,
 }
 
 impl Watch {
     pub(super) fn new(is_shown: bool, stop: Stop) -> Self {
-        Self { bar: Mutex::new(None), is_shown, stop }
+        Self { bar: Mutex::new(None), outlook: Mutex::default(), is_shown, stop }
+    }
+
+    /// Says beside the next phase what is to be expected of it.
+    pub(super) fn expect(&self, outlook: String) {
+        *self.outlook.lock().unwrap_or_else(PoisonError::into_inner) = outlook;
     }
 
     fn with_bar(&self, act: impl FnOnce(&mut Option<ProgressBar>)) {
         act(&mut self.bar.lock().unwrap_or_else(PoisonError::into_inner));
     }
+}
+
+/// Whole units a second.
+fn rate(state: &ProgressState, out: &mut dyn fmt::Write) {
+    // A terminal that cannot be written to is no matter.
+    let _written = write!(out, "{}/s", HumanCount(state.per_sec() as u64));
 }
 
 impl Progress for Watch {
@@ -32,15 +46,16 @@ impl Progress for Watch {
             return;
         }
         let template = match total {
-            Some(_) => "{msg} {bar:24} {human_pos} of {human_len} {prefix} ({per_sec}, {eta} left)",
-            None => "{msg} {spinner} {human_pos} {prefix} ({per_sec})",
+            Some(_) => "{msg} {bar:24} {human_pos} of {human_len} {prefix} ({rate}, {eta} left)",
+            None => "{msg} {spinner} {human_pos} {prefix} ({rate})",
         };
-        let bar = ProgressBar::with_draw_target(total, ProgressDrawTarget::stderr_with_hz(8));
+        let outlook = std::mem::take(&mut *self.outlook.lock().unwrap_or_else(PoisonError::into_inner));
+        let bar = ProgressBar::with_draw_target(total, ProgressDrawTarget::stderr_with_hz(8))
+            .with_message(format!("{phase}{outlook}"))
+            .with_prefix(unit.to_owned());
         if let Ok(style) = ProgressStyle::with_template(template) {
-            bar.set_style(style);
+            bar.set_style(style.with_key("rate", rate));
         }
-        bar.set_message(phase.to_owned());
-        bar.set_prefix(unit.to_owned());
         bar.enable_steady_tick(Duration::from_millis(250));
         self.with_bar(|current| *current = Some(bar));
     }

@@ -9,10 +9,10 @@ use rand::rngs::SysRng;
 use super::arguments::{Comparing, DEFAULT_SEED, Reading, Sampling, Seed, Warnings};
 use super::failure::{Failure, refused};
 use super::{Session, output};
-use crate::compare::Settings;
+use crate::compare::{Settings, Study};
 use crate::model::{Model, ReadOptions, Silent, Tolerances, Warning};
-use crate::report::{Document, Input, SeedSource};
-use crate::sampling::{Plan, Sampler, sample};
+use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary, SeedSource};
+use crate::sampling::{Plan, Sampler, Tally, sample};
 
 /// Reads a model and says what deserves a look.
 pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
@@ -89,6 +89,36 @@ pub(super) fn predicted_seconds(sampler: &Sampler, plan: &Plan, mean_steps: f64)
     let piloted = sample(sampler, &pilot, &Silent);
     debug_assert!(piloted.is_ok(), "nobody interrupts a silent run");
     started.elapsed().as_secs_f64() / pilot.replications as f64 * plan.replications as f64 / threads
+}
+
+/// The document of a comparison.
+pub(super) fn compared(
+    study: &Study<'_>,
+    settings: &Settings,
+    body: Body,
+    tally: &Tally,
+    seed: Option<(u64, SeedSource)>,
+    started: Instant,
+) -> Document {
+    let (exact, size) = (study.exact(), study.plan());
+    let model = exact.model();
+    let mut document = Document::new(ModelSummary::of(model), body);
+    document.plan = Some(PlanSummary {
+        error_rate: Some(settings.error_rate),
+        rows: study.rows(),
+        power: Some(settings.power),
+        replications: size.replications,
+        demanding: size.demanding,
+        seed,
+    });
+    document.run = Some(RunSummary {
+        replications: Some(tally.replications()),
+        steps: Some(tally.steps()),
+        seconds: started.elapsed().as_secs_f64(),
+        solver: Some(exact.solver()),
+    });
+    document.warnings = model.warnings().iter().cloned().chain(study.warnings()).collect();
+    document
 }
 
 /// Fills in what is known of every run.

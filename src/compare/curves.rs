@@ -275,4 +275,21 @@ pub(super) mod tests {
             }
         });
     }
+
+    // One step before an edge the law of an end is not kept: its bounds hold the law by hand.
+    #[test]
+    fn the_law_before_an_edge_lies_within_its_bounds() {
+        with_curves(|curves| {
+            let law = by_hand(20_000);
+            let mut inner = 0;
+            for (edge, time) in curves.edges().iter().enumerate().filter(|(_, time)| (1..20_000).contains(*time)) {
+                for (end, probability) in law[*time as usize - 1].iter().enumerate() {
+                    let bounds = curves.before_edge(end, edge, 0.0);
+                    assert!(bounds.low - 1e-12 <= *probability && *probability <= bounds.high + 1e-12);
+                    inner += usize::from(*probability > bounds.low + 1e-9);
+                }
+            }
+            assert!(inner > 100, "the upper bounds matter");
+        });
+    }
 }

@@ -115,9 +115,14 @@ mod tests {
             for i in 0..300_u64 {
                 let outcomes = outcomes(1000 + 20 * i, i % 5 * 60, [0, 9, 3][i as usize % 3], 100 + u128::from(i));
                 let tolerance = [0.01, 0.05, 0.2][i as usize / 3 % 3];
-                let evidence = band.evaluate(&tally(&outcomes, Arc::clone(&grid)), tolerance, ALPHA);
+                let tally = tally(&outcomes, Arc::clone(&grid));
+                let evidence = band.evaluate(&tally, tolerance, ALPHA);
                 let verdict = of_interval(evidence.interval.unwrap(), Bounded::exactly(0.0), tolerance, false);
                 assert_eq!(evidence.p_value.unwrap() <= ALPHA, verdict == Verdict::Disagree);
+                // Just below and just above the lower end, too.
+                let low = evidence.interval.unwrap().low;
+                let p_value = |tolerance: f64| band.evaluate(&tally, tolerance, ALPHA).p_value.unwrap();
+                assert!(low == 0.0 || (p_value(low - 1e-9) <= ALPHA && ALPHA < p_value(low + 1e-9)));
                 decided[verdict as usize] += 1;
             }
             assert!([0, 2, 3].iter().all(|verdict| decided[*verdict] > 30), "{decided:?}");

@@ -45,7 +45,7 @@ fn trimmed(digits: &str) -> &str {
 /// ```
 /// use tallystone::exact::Bounded;
 /// use tallystone::report::proven;
-/// assert_eq!(proven(Bounded { value: 0.123_456, low: 0.123_449, high: 0.123_461 }, 10), "0.1235");
+/// assert_eq!(proven(Bounded { value: 0.123_456, low: 0.123_452, high: 0.123_461 }, 10), "0.1235");
 /// assert_eq!(proven(Bounded { value: 0.2, low: 0.199_999_999_999_999_98, high: 0.2 }, 17), "0.2");
 /// ```
 pub fn proven(answer: Bounded, digits: usize) -> String {
@@ -59,7 +59,7 @@ pub fn proven(answer: Bounded, digits: usize) -> String {
 /// A count with its thousands parted.
 ///
 /// ```
-/// assert_eq!(tallystone::report::thousands(1_234_567), "1,234,567");
+/// assert_eq!(tallystone::report::thousands(1_234_567_u64), "1,234,567");
 /// ```
 pub fn thousands(count: impl Into<u128>) -> String {
     let digits = count.into().to_string();

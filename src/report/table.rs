@@ -64,7 +64,7 @@ mod tests {
         assert_eq!(at(80)[1], "absorption_probability:shipped    0.5  12345  agree  ");
         assert_eq!(at(50)[1], "absorption_probability:shipped    0.5  agree  ");
         assert_eq!(at(40)[1], "absorption_probability:shipped  agree  ");
-        assert_eq!(at(30)[1], "absorption…y:shipped  agree  ");
+        assert_eq!(at(30)[1], "absorption…ty:shipped  agree  ");
         for width in 26..90 {
             assert!(at(width).iter().all(|line| line.width() <= width), "{width}");
         }

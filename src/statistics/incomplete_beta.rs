@@ -12,6 +12,7 @@
 //! Accuracy: relative 1e-13 in the middle, growing as 4e-16 times the logarithm of the value far out; tested against
 //! arbitrary-precision arithmetic.
 
+use super::continued::continued_fraction;
 use super::saddle::{ln_1p_minus, ln_binomial_density};
 
 /// A point of the unit interval with its complement, each to full relative precision.
@@ -92,32 +93,18 @@ fn ln_scale(a: f64, b: f64, at: Split, excess: f64) -> f64 {
 }
 
 fn tail_ratio(a: f64, b: f64, at: Split, excess: f64) -> f64 {
-    if a.min(b) > QUADRATURE_FROM { quadrature(a, b, at, excess) } else { continued_fraction(a, b, at, excess) }
+    if a.min(b) > QUADRATURE_FROM { quadrature(a, b, at, excess) } else { fraction(a, b, at, excess) }
 }
 
-/// Modified Lentz evaluation of the even part of the classical fraction.
-fn continued_fraction(a: f64, b: f64, at: Split, excess: f64) -> f64 {
-    let mut value = a / (a + 1.0) * (excess + 1.0);
-    let mut upper = value;
-    let mut lower = 0.0;
-    for step in 1..100_000_u32 {
-        let k = f64::from(step);
+/// The even part of the classical fraction.
+fn fraction(a: f64, b: f64, at: Split, excess: f64) -> f64 {
+    continued_fraction(a / (a + 1.0) * (excess + 1.0), |k| {
         let even = a + 2.0 * k - 1.0;
-        let alpha = ((a + k - 1.0) / even) * ((a + b + k - 1.0) / even) * k * (b - k) * at.x * at.x;
         // For whole b the fraction ends: the tail is a finite sum.
-        if alpha == 0.0 {
-            break;
-        }
+        let alpha = ((a + k - 1.0) / even) * ((a + b + k - 1.0) / even) * k * (b - k) * at.x * at.x;
         let beta = k + k * (b - k) * at.x / even + (a + k) / (even + 2.0) * (excess + 1.0 + k * (1.0 + at.y));
-        lower = 1.0 / (beta + alpha * lower);
-        upper = beta + alpha / upper;
-        let factor = upper * lower;
-        value *= factor;
-        if (factor - 1.0).abs() <= f64::EPSILON {
-            break;
-        }
-    }
-    1.0 / value
+        (alpha, beta)
+    })
 }
 
 /// Nodes and weights of the 16-point Gauss–Legendre rule on [−1, 1], positive half; computed with mpmath 1.4.1.

@@ -6,6 +6,7 @@
 //! Accuracy: relative 1e-13 in the middle, growing as 4e-16 times the logarithm of the value far out. Both need about
 //! √a terms next to the mean.
 
+use super::continued::continued_fraction;
 use super::saddle::ln_poisson_density;
 
 /// One tail in the forms that the callers need.
@@ -40,29 +41,10 @@ fn complement(ln_scale: f64, other_ratio: f64) -> GammaTail {
     GammaTail { value: 1.0 - other, ln_value: (-other).ln_1p(), ratio: (1.0 - other) / ln_scale.exp() }
 }
 
-/// Legendre's fraction for the upper tail, by the modified method of Lentz.
+/// Legendre's fraction for the upper tail.
 fn fraction(a: f64, x: f64) -> f64 {
-    let mut beta = x + 1.0 - a;
-    let mut value = beta;
-    let mut upper = beta;
-    let mut lower = 0.0;
-    for step in 1..1_000_000_u32 {
-        let k = f64::from(step);
-        let alpha = k * (a - k);
-        // For whole a the fraction ends.
-        if alpha == 0.0 {
-            break;
-        }
-        beta += 2.0;
-        lower = 1.0 / (beta + alpha * lower);
-        upper = beta + alpha / upper;
-        let factor = upper * lower;
-        value *= factor;
-        if (factor - 1.0).abs() <= f64::EPSILON {
-            break;
-        }
-    }
-    1.0 / value
+    // For whole a the fraction ends.
+    continued_fraction(x + 1.0 - a, |k| (k * (a - k), x + 1.0 - a + 2.0 * k))
 }
 
 /// The power series for the lower tail: 1/a (1 + x/(a+1) + x²/((a+1)(a+2)) + …).

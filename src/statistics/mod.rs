@@ -32,6 +32,7 @@
 mod band;
 mod binomial;
 mod chi_square;
+mod continued;
 mod incomplete_beta;
 mod incomplete_gamma;
 mod interval;
