@@ -30,6 +30,8 @@ pub(super) struct Outcome {
 pub(super) enum BadRow {
     /// Not as many cells as the header has.
     Cells,
+    /// A quotation mark that is closed lines later, if at all.
+    LineBreak,
     /// An end that the model does not have.
     End,
     /// A time that is no number of steps.
@@ -59,6 +61,9 @@ impl Columns {
         // A comma more at the end of a line says nothing.
         if row.len() < self.count || !(self.count..row.len()).all(is_blank) {
             return Err(BadRow::Cells);
+        }
+        if row.as_slice().contains(&b'\n') {
+            return Err(BadRow::LineBreak);
         }
         let end = collector.end(cell(row, self.end)).ok_or(BadRow::End)?;
         let time = self.whole(row, self.time).map_err(BadRow::Time)?;
@@ -105,6 +110,12 @@ impl Columns {
                 let remedy =
                     "complete it; a last line that is cut short means that the program was stopped as it wrote";
                 (FaultKind::Shape, written.join(","), text, remedy.to_owned())
+            }
+            BadRow::LineBreak => {
+                let written: Vec<_> = row.iter().map(String::from_utf8_lossy).collect();
+                let remedy = "close the quotation mark on its line; the lines up to the closing one are not read";
+                let text = "a quoted cell runs over several lines".to_owned();
+                (FaultKind::Syntax, written.join(","), text, remedy.to_owned())
             }
             BadRow::End if std::str::from_utf8(cell(row, self.end)).is_err() => {
                 let value = value(self.end);

@@ -8,6 +8,10 @@ use crate::model::{Fault, FaultKind, Place, Records, delimiter, shortened};
 
 use super::outcome_row::Columns;
 
+/// Columns that later versions read: counts of equal rows, weights, runs cut short, several starts. To pass over them would
+/// compare something else than the file says.
+const WEIGHTY: [&str; 4] = ["count", "weight", "censored", "start"];
+
 /// The rows below the header, and what the header says of them.
 pub(super) struct Table<R> {
     pub(super) records: Records<BufReader<R>>,
@@ -67,6 +71,11 @@ fn columns(header: ByteRecord, delimiter: u8, place: Place) -> Result<(Columns, 
     if let Some((twice, ..)) = at.iter().find(|(.., second)| second.is_some()) {
         let text = format!("the header names `{twice}` twice");
         return Err(Fault::new(FaultKind::DuplicateName, place, text, "keep one").about(*twice).into());
+    }
+    if let Some(name) = names.iter().find(|name| WEIGHTY.iter().any(|known| name.eq_ignore_ascii_case(known))) {
+        let text = format!("the column `{name}` changes what a row says, and this version does not read it");
+        let remedy = "write one row a replication that ran to its end; rename the column if it means something else";
+        return Err(Fault::new(FaultKind::Unsupported, place, text, remedy).about(*name).into());
     }
     let [(_, Some(end), _), (_, Some(time), _), (_, replication, _)] = at else {
         let missing = at[..2].iter().filter(|(_, column, _)| column.is_none());

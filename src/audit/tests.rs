@@ -66,7 +66,7 @@ fn the_same_outcomes_in_any_dress_give_the_same_tally() {
         "time\tend\n2\tshipped\n3\tscrapped\n12\tshipped\n",
         "replication,end,time\n7,shipped,2\n0.0,scrapped,3\n18446744073709551615,shipped,12\n",
         "end,time\nshipped,+2,\nscrapped,003\nshipped,12,,\n",
-        "end,note,time\nshipped,\"a\n\"\"b\"\"\",2\nscrapped,,3\nshipped,\"x,y\",12\n",
+        "end,note,time\nshipped,\"a \"\"b\"\"\",2\nscrapped,,3\nshipped,\"x,y\",12\n",
     ] {
         let read = outcomes(dressed.as_bytes()).unwrap();
         assert_eq!(read.audited.tally, plain.audited.tally, "{dressed}");
@@ -79,6 +79,23 @@ fn other_columns_are_passed_over_and_listed_even_if_they_are_no_text() {
     let read = outcomes(b"seed,end,,time,worker\n\xff,shipped,x,2,\xfe\n").unwrap();
     assert_eq!(read.ignored_columns, ["seed", "worker"]);
     assert_eq!(read.audited.tally.replications(), 1);
+}
+
+#[test]
+fn columns_that_would_change_what_a_row_says_are_refused() {
+    for name in ["count", "Weight", "censored", "start"] {
+        let (rows, _, faults) = refusal(format!("end,time,{name}\nshipped,2,1\n").as_bytes());
+        assert_eq!((rows, faults.len()), (0, 1));
+        assert!(faults[0].starts_with(&format!("F:1: the column `{name}` changes what a row says")), "{}", faults[0]);
+    }
+}
+
+#[test]
+fn a_quotation_mark_cannot_swallow_rows() {
+    // A later quotation mark closes the cell: without a look at the line breaks the second row would vanish unseen.
+    let (rows, bad, faults) = refusal(b"end,time,note\nshipped,2,\"a\nshipped,3,b\nshipped,2,c\"\nshipped,2,d\n");
+    assert_eq!((rows, bad), (2, 1));
+    assert!(faults[0].starts_with("F:2: a quoted cell runs over several lines"), "{}", faults[0]);
 }
 
 #[test]

@@ -40,7 +40,7 @@ pub struct Ranks {
 /// ```
 #[must_use]
 pub fn quantile_ranks(n: u64, p: f64, alpha: f64) -> Option<Ranks> {
-    if !(p > 0.0 && p < 1.0) || !is_level(alpha) {
+    if !is_level(p) || !is_level(alpha) {
         return None;
     }
     let lower = largest_with_lower_tail_at_most(n, p, 0.5 * alpha)? + 1;

@@ -97,7 +97,7 @@ pub fn student_upper_quantile(q: f64, degrees_of_freedom: f64) -> f64 {
 /// ```
 #[must_use]
 pub fn mean_interval(mean: f64, variance: f64, n: u64, alpha: f64) -> Option<Interval> {
-    if n < 2 || !mean.is_finite() || !(variance.is_finite() && variance >= 0.0) || !is_level(alpha) {
+    if n < 2 || !mean.is_finite() || !(0.0..f64::INFINITY).contains(&variance) || !is_level(alpha) {
         return None;
     }
     let half_width = student_upper_quantile(0.5 * alpha, (n - 1) as f64) * (variance / n as f64).sqrt();

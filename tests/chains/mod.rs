@@ -2,6 +2,7 @@
 
 #![allow(dead_code)]
 
+use std::cmp::Ordering;
 use std::collections::BTreeMap;
 
 use tallystone::model::{Draft, Model};
@@ -167,12 +168,10 @@ pub(crate) fn slow_to_converge(n: usize) -> Model {
     let mut draft = Draft::new("slow to converge");
     draft.absorbing("0");
     for state in 1..2 * n {
-        let onwards = if state < n {
-            [state - 1, n]
-        } else if state == n {
-            [n - 1, n + 1]
-        } else {
-            [state + 1, n]
+        let onwards = match state.cmp(&n) {
+            Ordering::Less => [state - 1, n],
+            Ordering::Equal => [n - 1, n + 1],
+            Ordering::Greater => [state + 1, n],
         };
         onwards.iter().for_each(|to| draft.moves(&state.to_string(), &to.to_string(), "1/2"));
     }
