@@ -164,8 +164,7 @@ impl Class {
                 );
             }
             let own = i - first;
-            // What leads back to the state itself is a stay: it has no part in what leaves.
-            entries.set(own, Dd::ZERO);
+            // The cell on the diagonal, which leads back to the state itself, has no part in what leaves.
             let beyond = own + 1..entries.hi.len();
             let leave = beyond.clone().fold(exit, |sum, at| sum.plus(entries.get(at)));
             let least = beyond.map(|at| entries.hi[at]).filter(|x| *x > 0.0).fold(f64::INFINITY, f64::min);
