@@ -8,6 +8,7 @@ use sha2::{Digest, Sha256};
 use thiserror::Error;
 
 use super::grid::Grid;
+use crate::model::hexadecimal;
 use crate::statistics::{PowerSums, PowerSumsBlock};
 
 /// Why two tallies cannot be merged.
@@ -247,8 +248,7 @@ impl Tally {
 
     /// SHA-256 of the canonical text, in hexadecimal.
     pub fn digest(&self) -> String {
-        let hash = Sha256::digest(self.to_string());
-        hash.iter().fold(String::with_capacity(64), |hex, byte| hex + &format!("{byte:02x}"))
+        hexadecimal(Sha256::new_with_prefix(self.to_string()))
     }
 }
 
