@@ -124,14 +124,13 @@ fn write_comparison(
         writeln!(out, "and {hidden} more rows, none worse than these; --json holds all")?;
     }
     let item = |text: &str| wrapped(&format!("- {text}"), layout.width, 2);
-    let notes: Vec<String> = worst_first.iter().filter_map(|row| note(row, comparison.replications)).collect();
+    let notes = worst_first.iter().filter_map(|row| Some((row, note(row, comparison.replications)?)));
+    let notes = grouped(notes.map(|(row, text)| (row.quantity.to_string(), text)));
+    let left_out = grouped(comparison.not_compared.iter().map(|one| (one.quantity.to_string(), one.text.clone())));
     for (title, texts) in [
         ("Findings, impossible under the model:", comparison.findings.iter().map(|one| shown(&one.text)).collect()),
         ("Notes:", notes),
-        (
-            "Not compared:",
-            comparison.not_compared.iter().map(|one| shown(&format!("{}: {}", one.quantity, one.text))).collect(),
-        ),
+        ("Not compared:", left_out),
     ] {
         if !texts.is_empty() {
             writeln!(out, "\n{title}")?;
@@ -178,7 +177,19 @@ fn note(row: &Row, replications: u64) -> Option<String> {
     let needed = row.replications_needed.filter(|n| *n > replications);
     let needed = needed.map(|n| format!("needs {} replications", thousands(n)));
     let parts: Vec<String> = needed.into_iter().chain(row.note.clone()).collect();
-    (!parts.is_empty()).then(|| shown(&format!("{}: {}", row.quantity, parts.join("; "))))
+    (!parts.is_empty()).then(|| parts.join("; "))
+}
+
+/// Texts with the names that they are about; a text that several share stands once.
+fn grouped(texts: impl Iterator<Item = (String, String)>) -> Vec<String> {
+    let mut groups: Vec<(Vec<String>, String)> = Vec::new();
+    for (name, text) in texts {
+        match groups.iter_mut().find(|(_, known)| *known == text) {
+            Some((names, _)) => names.push(name),
+            None => groups.push((vec![name], text)),
+        }
+    }
+    groups.into_iter().map(|(names, text)| shown(&format!("{}: {text}", names.join(", ")))).collect()
 }
 
 fn marked(verdict: Verdict) -> String {
