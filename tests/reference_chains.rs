@@ -279,6 +279,26 @@ fn h03_hard_for_plain_solvers() {
 }
 
 #[test]
+fn what_no_double_holds_is_refused() {
+    // A mean of 1e150 is answered; its variance at 1e160 is not, and a probability of 1e-300 neither.
+    for (leave, answers) in [(150, true), (160, false), (300, false)] {
+        let text = format!(
+            "start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = {{ a = \"rest\", x = \"1/1{}\" }}\n",
+            "0".repeat(leave)
+        );
+        let model = Model::from_toml(&text).unwrap();
+        match Exact::solve(&model, &Request::default(), &Silent) {
+            Ok(exact) => {
+                assert!(answers);
+                near(exact.mean_time(), 1e150);
+                near(exact.variance_time(), 1e300);
+            }
+            Err(refused) => assert!(!answers && refused.to_string().contains("`a`"), "{refused}"),
+        }
+    }
+}
+
+#[test]
 fn i01_small_changes_prove_nothing() {
     // Haddad & Monmege, RP 2014; Theor. Comput. Sci. 735 (2018) 111–131.
     for n in [10, 20, 30, 200] {

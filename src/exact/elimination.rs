@@ -101,7 +101,7 @@ impl<'a> Elimination<'a> {
         let example = self.chain.name(states[0] as usize).to_owned();
         match why {
             Refusal::TooLarge { states, work } => ExactError::TooLarge { states, example, work, limit: WORK_LIMIT },
-            Refusal::Underflow => ExactError::OutOfRange { example },
+            Refusal::OutOfRange => ExactError::OutOfRange { example },
         }
     }
 

@@ -70,8 +70,8 @@ impl FactorRow {
 pub(super) enum Refusal {
     /// The predicted number of multiply-adds passes the limit.
     TooLarge { states: usize, work: u64 },
-    /// Numbers became too small for double-double arithmetic.
-    Underflow,
+    /// Numbers became too small or too large for double-double arithmetic.
+    OutOfRange,
 }
 
 impl Class {
@@ -114,7 +114,7 @@ impl Class {
     /// Eliminates the class.
     ///
     /// # Errors
-    /// [`Refusal`] before any work when it would cost too much, or when numbers become too small.
+    /// [`Refusal`] before any work when it would cost too much, or when numbers become too small or too large.
     ///
     /// # Complexity
     /// At most n³/3 multiply-adds for n states; n·b² for a band of width b.
@@ -125,59 +125,104 @@ impl Class {
             return Err(Refusal::TooLarge { states: n, work });
         }
         let position = inverse(&order);
-        let mut rows: Vec<FactorRow> = Vec::with_capacity(n);
-        let mut exits: Vec<Dd> = Vec::with_capacity(n);
-        // The smallest non-zero entry right of the diagonal, so that a vanishing product is seen before it is formed.
-        let mut smallest: Vec<f64> = Vec::with_capacity(n);
+        let mut done = Finished::default();
         let mut widest = self.widest;
-        for (i, state) in order.iter().enumerate() {
-            let moves = &self.inside[*state as usize];
-            let columns = moves.iter().map(|(to, _)| position[*to as usize] as usize);
-            let (first, last) = columns.fold((i, i), |(low, high), column| (low.min(column), high.max(column)));
-            let mut entries = Stretch::zeros(last - first + 1);
-            for (to, q) in moves {
-                entries.set(position[*to as usize] as usize - first, *q);
+        for start in (0..n).step_by(ROWS_AT_ONCE) {
+            let batch = start..n.min(start + ROWS_AT_ONCE);
+            let mut open: Vec<OpenRow> = batch.map(|i| self.open(order[i], &position)).collect();
+            // A finished row is fetched once for the whole batch; each open row still meets them in ascending order.
+            let first = open.iter().map(|row| row.first).min().unwrap_or(start);
+            for k in first..start {
+                open.iter_mut().try_for_each(|row| row.eliminate(k, &done, kernel))?;
             }
-            let mut exit = self.exit[*state as usize];
-            for k in first..i {
-                let q = entries.get(k - first);
-                if q.is_zero() {
-                    continue;
-                }
-                let above: &FactorRow = &rows[k];
-                let f = q.over(above.leave);
-                if f.hi < SMALLEST || f.hi * smallest[k] < SMALLEST {
-                    return Err(Refusal::Underflow);
-                }
-                entries.set(k - first, f);
-                exit = exit.plus(f.times(exits[k]));
-                let from = k + 1 - above.first;
-                let end = above.first + above.entries.hi.len();
-                let missing = end.saturating_sub(first + entries.hi.len());
-                entries.hi.resize(entries.hi.len() + missing, 0.0);
-                entries.lo.resize(entries.lo.len() + missing, 0.0);
-                let range = k + 1 - first..end - first;
-                kernel.add_multiple(
-                    f,
-                    (&above.entries.hi[from..], &above.entries.lo[from..]),
-                    (&mut entries.hi[range.clone()], &mut entries.lo[range]),
-                );
+            for (i, mut row) in (start..).zip(open) {
+                (start..i).try_for_each(|k| row.eliminate(k, &done, kernel))?;
+                widest = widest.max(row.entries.hi.len());
+                done.finish(i, row)?;
             }
-            let own = i - first;
-            // The cell on the diagonal, which leads back to the state itself, has no part in what leaves.
-            let beyond = own + 1..entries.hi.len();
-            let leave = beyond.clone().fold(exit, |sum, at| sum.plus(entries.get(at)));
-            let least = beyond.map(|at| entries.hi[at]).filter(|x| *x > 0.0).fold(f64::INFINITY, f64::min);
-            let least = if exit.hi > 0.0 { least.min(exit.hi) } else { least };
-            if least < SMALLEST || leave.hi < SMALLEST {
-                return Err(Refusal::Underflow);
-            }
-            widest = widest.max(entries.hi.len());
-            smallest.push(least);
-            exits.push(exit);
-            rows.push(FactorRow { first, entries, leave });
         }
-        Ok(Factor { rows, order, error: elimination_error(n, widest), widest })
+        Ok(Factor { rows: done.rows, order, error: elimination_error(n, widest), widest })
+    }
+
+    /// The row of a state before anything is eliminated from it.
+    fn open(&self, state: u32, position: &[u32]) -> OpenRow {
+        let i = position[state as usize] as usize;
+        let moves = &self.inside[state as usize];
+        let columns = moves.iter().map(|(to, _)| position[*to as usize] as usize);
+        let (first, last) = columns.fold((i, i), |(low, high), column| (low.min(column), high.max(column)));
+        let mut entries = Stretch::zeros(last - first + 1);
+        for (to, q) in moves {
+            entries.set(position[*to as usize] as usize - first, *q);
+        }
+        OpenRow { first, entries, exit: self.exit[state as usize] }
+    }
+}
+
+/// Rows that are eliminated at once, so that memory is read once for all of them.
+const ROWS_AT_ONCE: usize = 8;
+
+/// A row on its way.
+struct OpenRow {
+    first: usize,
+    entries: Stretch,
+    exit: Dd,
+}
+
+/// The rows that are finished.
+#[derive(Default)]
+struct Finished {
+    rows: Vec<FactorRow>,
+    exits: Vec<Dd>,
+    /// The smallest non-zero entry right of the diagonal, so that a vanishing product is seen before it is formed.
+    smallest: Vec<f64>,
+}
+
+impl OpenRow {
+    /// Removes state `k`: what leads there leads on as the finished row says.
+    fn eliminate(&mut self, k: usize, done: &Finished, kernel: Kernel) -> Result<(), Refusal> {
+        let Some(at) = k.checked_sub(self.first) else { return Ok(()) };
+        let q = self.entries.get(at);
+        if q.is_zero() {
+            return Ok(());
+        }
+        let above = &done.rows[k];
+        let f = q.over(above.leave);
+        if f.hi < SMALLEST || f.hi * done.smallest[k] < SMALLEST {
+            return Err(Refusal::OutOfRange);
+        }
+        self.entries.set(at, f);
+        self.exit = self.exit.plus(f.times(done.exits[k]));
+        let from = k + 1 - above.first;
+        let end = above.first + above.entries.hi.len();
+        let length = self.entries.hi.len().max(end - self.first);
+        self.entries.hi.resize(length, 0.0);
+        self.entries.lo.resize(length, 0.0);
+        let range = at + 1..end - self.first;
+        kernel.add_multiple(
+            f,
+            (&above.entries.hi[from..], &above.entries.lo[from..]),
+            (&mut self.entries.hi[range.clone()], &mut self.entries.lo[range]),
+        );
+        Ok(())
+    }
+}
+
+impl Finished {
+    /// Takes row `i` once all states before it are eliminated from it.
+    fn finish(&mut self, i: usize, row: OpenRow) -> Result<(), Refusal> {
+        let OpenRow { first, entries, exit } = row;
+        // The cell on the diagonal, which leads back to the state itself, has no part in what leaves.
+        let beyond = i - first + 1..entries.hi.len();
+        let leave = beyond.clone().fold(exit, |sum, at| sum.plus(entries.get(at)));
+        let least = beyond.map(|at| entries.hi[at]).filter(|x| *x > 0.0).fold(f64::INFINITY, f64::min);
+        let least = if exit.hi > 0.0 { least.min(exit.hi) } else { least };
+        if least < SMALLEST || leave.hi < SMALLEST {
+            return Err(Refusal::OutOfRange);
+        }
+        self.smallest.push(least);
+        self.exits.push(exit);
+        self.rows.push(FactorRow { first, entries, leave });
+        Ok(())
     }
 }
 
@@ -198,7 +243,7 @@ impl Factor {
     /// Solves `x = b + Q x` for a right-hand side that is not negative, in place, in local numbers.
     ///
     /// # Errors
-    /// [`Refusal::Underflow`].
+    /// [`Refusal::OutOfRange`].
     ///
     /// # Complexity
     /// Two operations an entry of the factor.
@@ -221,7 +266,7 @@ impl Factor {
     /// Solves `y = a + y Q` likewise.
     ///
     /// # Errors
-    /// [`Refusal::Underflow`].
+    /// [`Refusal::OutOfRange`].
     ///
     /// # Complexity
     /// Two operations an entry of the factor.
@@ -244,7 +289,7 @@ impl Factor {
     fn give_back(&self, solution: &[Dd], into: &mut [Dd]) -> Result<(), Refusal> {
         for (state, value) in self.order.iter().zip(solution) {
             if !value.hi.is_finite() || (value.hi != 0.0 && value.hi < SMALLEST) {
-                return Err(Refusal::Underflow);
+                return Err(Refusal::OutOfRange);
             }
             into[*state as usize] = *value;
         }
@@ -252,10 +297,11 @@ impl Factor {
     }
 }
 
-/// A product of numbers that are not negative, refused when it could lose its low-order part.
+/// A product of numbers that are not negative, refused when it could lose its low-order part, or is too large.
 pub(super) fn product(a: Dd, b: Dd) -> Result<Dd, Refusal> {
     let p = a.times(b);
-    if p.hi < SMALLEST && !a.is_zero() && !b.is_zero() { Err(Refusal::Underflow) } else { Ok(p) }
+    let vanishes = p.hi < SMALLEST && !a.is_zero() && !b.is_zero();
+    if vanishes || !p.hi.is_finite() { Err(Refusal::OutOfRange) } else { Ok(p) }
 }
 
 fn inverse(order: &[u32]) -> Vec<u32> {

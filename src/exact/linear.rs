@@ -56,6 +56,9 @@ impl Linear {
 
         let mut visits = elimination.row(&start)?;
         let variance = variance(&elimination, &transient, &start, &times, &visits, mean, mean_error);
+        if !variance.high.is_finite() {
+            return Err(ExactError::OutOfRange { example: chain.name(begins[0]).to_owned() });
+        }
         let mut ends = vec![RisingSums::default(); chain.ends().len()];
         let mut errors = Vec::new();
         for order in 0..ORDERS {
