@@ -279,6 +279,23 @@ fn h03_hard_for_plain_solvers() {
 }
 
 #[test]
+fn long_lines_with_drift_either_way() {
+    // Feller I, XIV.2 and 3, from memory: ruin from z is (ρ^z − ρ^a)/(1 − ρ^a) with ρ = q/p, and the mean duration
+    // z/(q − p) − a/(q − p) (1 − ρ^z)/(1 − ρ^a). On a line of 2,000 the far end is 1e-1908 away.
+    for (up, start) in [("0.9", 20), ("0.1", 1980)] {
+        let model = chains::walk(up, start, 2000);
+        let exact = solve_linear(&model);
+        let (near_end, distance) = if up == "0.9" { ("0", 20) } else { ("2000", 20) };
+        let rho = |power: isize| RBig::from(9).pow(-power);
+        let chance = (rho(distance) - rho(2000)) / (RBig::ONE - rho(2000));
+        is(exact.absorption(&end(&model, near_end)), &chance.to_string());
+        let share = (RBig::ONE - rho(distance)) / (RBig::ONE - rho(2000));
+        let time = (RBig::from(2000) * share - RBig::from(distance)) * RBig::from(5) / RBig::from(4);
+        is(exact.mean_time(), &time.to_string());
+    }
+}
+
+#[test]
 fn what_no_double_holds_is_refused() {
     // A mean of 1e150 is answered; its variance at 1e160 is not, and a probability of 1e-300 neither.
     for (leave, answers) in [(150, true), (160, false), (300, false)] {

@@ -75,13 +75,15 @@ pub(super) enum Refusal {
 }
 
 impl Class {
-    /// The cheaper of the order as given and its reverse, with the predicted multiply-adds.
-    fn order(&self) -> (Vec<u32>, u64) {
+    /// The order as given and its reverse with their predicted multiply-adds, the cheaper first.
+    fn orders(&self) -> [(Vec<u32>, u64); 2] {
         let n = self.inside.len() as u32;
-        let forward: Vec<u32> = (0..n).collect();
-        let backward: Vec<u32> = (0..n).rev().collect();
-        let (there, back) = (self.work(&forward), self.work(&backward));
-        if back < there { (backward, back) } else { (forward, there) }
+        let priced = |order: Vec<u32>| {
+            let work = self.work(&order);
+            (order, work)
+        };
+        let (forward, backward) = (priced((0..n).collect()), priced((0..n).rev().collect()));
+        if backward.1 < forward.1 { [backward, forward] } else { [forward, backward] }
     }
 
     /// Multiply-adds that the elimination will take in a given order, saturating above the limit.
@@ -119,11 +121,19 @@ impl Class {
     /// # Complexity
     /// At most n³/3 multiply-adds for n states; n·b² for a band of width b.
     pub(super) fn factor(&self, kernel: Kernel) -> Result<Factor, Refusal> {
-        let n = self.inside.len();
-        let (order, work) = self.order();
+        let [(order, work), (other, other_work)] = self.orders();
         if work > WORK_LIMIT {
-            return Err(Refusal::TooLarge { states: n, work });
+            return Err(Refusal::TooLarge { states: self.inside.len(), work });
         }
+        match self.factor_in(order, kernel) {
+            // Where a line drifts one way, the way out at its start vanishes from the other end but not from this one.
+            Err(Refusal::OutOfRange) if other_work <= WORK_LIMIT => self.factor_in(other, kernel),
+            factored => factored,
+        }
+    }
+
+    fn factor_in(&self, order: Vec<u32>, kernel: Kernel) -> Result<Factor, Refusal> {
+        let n = self.inside.len();
         let position = inverse(&order);
         let mut done = Finished::default();
         let mut widest = self.widest;
