@@ -180,6 +180,9 @@ fn note(row: &Row, replications: u64) -> Option<String> {
     (!parts.is_empty()).then(|| parts.join("; "))
 }
 
+/// Names that stand before a text that they share; the others are counted.
+const MOST_NAMES: usize = 8;
+
 /// Texts with the names that they are about; a text that several share stands once.
 fn grouped(texts: impl Iterator<Item = (String, String)>) -> Vec<String> {
     let mut groups: Vec<(Vec<String>, String)> = Vec::new();
@@ -189,7 +192,13 @@ fn grouped(texts: impl Iterator<Item = (String, String)>) -> Vec<String> {
             None => groups.push((vec![name], text)),
         }
     }
-    groups.into_iter().map(|(names, text)| shown(&format!("{}: {text}", names.join(", ")))).collect()
+    let line = |(names, text): (Vec<String>, String)| {
+        let listed = names[..names.len().min(MOST_NAMES)].join(", ");
+        let more = names.len().saturating_sub(MOST_NAMES);
+        let more = if more > 0 { format!(" and {more} more") } else { String::new() };
+        shown(&format!("{listed}{more}: {text}"))
+    };
+    groups.into_iter().map(line).collect()
 }
 
 fn marked(verdict: Verdict) -> String {
