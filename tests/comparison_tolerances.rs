@@ -3,8 +3,9 @@
 mod studies;
 
 use studies::{COIN, asking, made, quantity, row, run, tolerating, with_study};
-use tallystone::compare::{ToleranceSource, Verdict};
-use tallystone::model::{Tolerance, WarningKind};
+use tallystone::compare::{Settings, Study, ToleranceSource, Verdict};
+use tallystone::exact::{Exact, Request};
+use tallystone::model::{Model, Silent, Tolerance, ToleranceKey, WarningKind};
 use tallystone::sampling::BLOCK;
 use tallystone::statistics::{agree_miss_probability, proportion_size};
 
@@ -150,4 +151,47 @@ fn without_tolerance_a_row_is_consistent_once_it_would_have_seen_the_default() {
             Some(186)
         );
     });
+}
+
+#[test]
+fn looks_of_a_series_spend_the_error_rate_once() {
+    let rates: Vec<f64> = (1..=20)
+        .map(|look| {
+            let settings = Settings { look: Some(look), ..asking(&["mean_time"]) };
+            with_study(COIN, &settings, |_, study| {
+                let comparison = made(study, &[(0, 1, 5000), (1, 2, 1000)]);
+                // One row: its level is that of the table.
+                assert!((comparison.rows[0].level - (1.0 - comparison.error_rate)).abs() < 1e-12);
+                comparison.error_rate
+            })
+        })
+        .collect();
+    assert_eq!(rates[..2], [0.005, 0.0025]);
+    assert!(rates.iter().sum::<f64>() < 0.01);
+    let model = Model::from_toml(COIN).unwrap();
+    let exact = Exact::solve(&model, &Request::default(), &Silent).unwrap();
+    for look in [0, 21] {
+        let refused = Study::new(&exact, &Settings { look: Some(look), ..asking(&["mean_time"]) }).unwrap_err();
+        assert!(refused.text.contains(&format!("look {look}")), "{refused}");
+    }
+}
+
+#[test]
+fn without_tolerance_the_detectable_difference_decides_what_is_consistent() {
+    // ((z_{α/2} + 1.282) σ/d)² with α = 0.01, σ² = 0.3125 and d = 1.25 %, half of it, or twice: z = 2.576.
+    let none = tolerating(asking(&["mean_time"]), "mean_time", Tolerance::Absolute(0.0));
+    for share in [0.01, 0.005, 0.02] {
+        let mut settings = none.clone();
+        settings.detectable.set(ToleranceKey::One(quantity("mean_time")), Tolerance::Relative(share));
+        with_study(COIN, &settings, |_, study| {
+            let by_hand = (2.575_829 + 1.281_552_f64).powi(2) * 0.3125 / (share * 1.25).powi(2);
+            let plan = study.plan().replications.unwrap();
+            assert_eq!(plan, (by_hand as u64).div_ceil(BLOCK) * BLOCK, "{share}");
+        });
+    }
+    let mut nothing = none;
+    nothing.detectable.set(ToleranceKey::All("mean_time".into()), Tolerance::Absolute(0.0));
+    let model = Model::from_toml(COIN).unwrap();
+    let exact = Exact::solve(&model, &Request::default(), &Silent).unwrap();
+    assert!(Study::new(&exact, &nothing).unwrap_err().text.contains("difference of 0"));
 }

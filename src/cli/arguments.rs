@@ -4,6 +4,7 @@ use std::path::PathBuf;
 
 use clap::{ArgGroup, Args, Parser, Subcommand, ValueEnum};
 
+use crate::compare::MOST_LOOKS;
 use crate::model::{Quantity, Tolerance, ToleranceKey};
 
 /// Seeds are fixed unless the user says otherwise, so that a build gate does not flap.
@@ -164,6 +165,12 @@ pub(super) struct Comparing {
     /// Compare this instead of the default rows, such as mean_time or time_quantile:0.9; repeatable
     #[arg(long = "quantity", value_name = "NAME[:ARG]", value_parser = quantity)]
     pub(super) quantities: Vec<Quantity>,
+    /// Difference that a row with a tolerance of 0 must be able to see [default: the default tolerance]; repeatable
+    #[arg(long = "detectable", value_name = "NAME[:ARG]=VALUE", value_parser = tolerance)]
+    pub(super) detectable: Vec<(ToleranceKey, Tolerance)>,
+    /// Number of this look at a planned series of ever larger runs; look J spends the error rate over 2^J
+    #[arg(long, value_name = "J", value_parser = clap::value_parser!(u32).range(1..=i64::from(MOST_LOOKS)))]
+    pub(super) look: Option<u32>,
     /// A difference that does not matter: 0.005 is absolute, "1 %" relative; repeatable
     #[arg(long = "tolerance", value_name = "NAME[:ARG]=VALUE", value_parser = tolerance)]
     pub(super) tolerances: Vec<(ToleranceKey, Tolerance)>,

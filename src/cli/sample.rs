@@ -48,6 +48,7 @@ fn document(
     let mut document = Document::new(ModelSummary::of(model), Body::Sample(estimates(model, tally)));
     document.plan = Some(PlanSummary {
         error_rate: None,
+        look: None,
         rows: 0,
         power: None,
         replications: Some(plan.replications),

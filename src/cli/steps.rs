@@ -10,7 +10,7 @@ use super::arguments::{Comparing, DEFAULT_SEED, Reading, Sampling, Seed, Warning
 use super::failure::{Failure, refused};
 use super::{Session, output};
 use crate::compare::{Settings, Study};
-use crate::model::{Model, ReadOptions, Silent, Tolerances, Warning};
+use crate::model::{Model, ReadOptions, Silent, Tolerance, ToleranceKey, Tolerances, Warning};
 use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary, SeedSource};
 use crate::sampling::{Plan, Sampler, Tally, sample};
 
@@ -34,13 +34,18 @@ pub(super) fn look_at(warnings: &[Warning], reading: &Reading) -> Result<(), Fai
 
 /// The wishes for a comparison.
 pub(super) fn settings(comparing: &Comparing) -> Settings {
-    let mut tolerances = Tolerances::default();
-    comparing.tolerances.iter().for_each(|(key, value)| tolerances.set(key.clone(), *value));
+    let collected = |given: &[(ToleranceKey, Tolerance)]| {
+        let mut all = Tolerances::default();
+        given.iter().for_each(|(key, value)| all.set(key.clone(), *value));
+        all
+    };
     Settings {
         error_rate: comparing.error_rate,
         power: comparing.power,
         quantities: (!comparing.quantities.is_empty()).then(|| comparing.quantities.clone()),
-        tolerances,
+        tolerances: collected(&comparing.tolerances),
+        detectable: collected(&comparing.detectable),
+        look: comparing.look,
     }
 }
 
@@ -104,7 +109,8 @@ pub(super) fn compared(
     let model = exact.model();
     let mut document = Document::new(ModelSummary::of(model), body);
     document.plan = Some(PlanSummary {
-        error_rate: Some(settings.error_rate),
+        error_rate: Some(settings.spent()),
+        look: settings.look,
         rows: study.rows(),
         power: Some(settings.power),
         replications: size.replications,

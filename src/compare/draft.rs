@@ -14,7 +14,8 @@ use super::share::{Event, Share};
 use super::variance::{Squares, Variance};
 use super::{NotCompared, tolerance};
 
-/// Makes a row of a quantity, with the tolerance that the user gave, if any; a default one is not settled yet.
+/// Makes a row of a quantity, with the tolerance and the detectable difference that the user gave, if any; a default
+/// tolerance is not settled yet.
 ///
 /// # Errors
 /// Why there is no such row.
@@ -22,6 +23,7 @@ pub(super) fn draft<'a>(
     exact: &'a Exact<'a>,
     quantity: Quantity,
     given: Option<Tolerance>,
+    detectable: Option<Tolerance>,
 ) -> Result<Planned<'a>, NotCompared> {
     if let Some((answer, certain)) = certainty(exact, &quantity) {
         return Ok(Planned { quantity, exact: answer, basis: Basis::Certain(certain) });
@@ -38,6 +40,7 @@ pub(super) fn draft<'a>(
                 method: chosen.method,
                 bounds,
                 default,
+                detectable: detectable.unwrap_or(default),
                 tolerance: tolerance::given(given.unwrap_or(default), bounds),
                 is_given: given.is_some(),
                 outcomes: outcomes(exact, &quantity),

@@ -90,7 +90,7 @@ mod warnings;
 mod words;
 
 pub use comparison::{AppliedTolerance, Comparison, Finding, Guarantee, NotCompared, Row, ToleranceSource};
-pub use settings::{Settings, StudyFault};
+pub use settings::{MOST_LOOKS, Settings, StudyFault};
 pub use size::SizePlan;
 pub use study::Study;
 pub use verdict::Verdict;

@@ -10,7 +10,7 @@ use super::tolerance::value_of;
 use super::words::rounded;
 use super::{AppliedTolerance, verdict};
 
-/// Without tolerance a row is consistent once it would see the default tolerance with probability 0.9. The interval misses
+/// Without tolerance a row is consistent once it would see the detectable difference with probability 0.9. The interval misses
 /// the answer on one side then, while a miss is counted on both.
 const UNSEEN: f64 = 0.2;
 
@@ -39,6 +39,8 @@ pub(super) struct Tested<'a> {
     /// Bounds of the exact answer; for the law, those of the distance 0.
     pub(super) bounds: Bounded,
     pub(super) default: Tolerance,
+    /// What the row must be able to see if nothing is tolerated.
+    pub(super) detectable: Tolerance,
     /// The tolerance in use.
     pub(super) tolerance: AppliedTolerance,
     /// Whether that is the user's.
@@ -99,14 +101,14 @@ impl Tested<'_> {
         self.method.miss_probability(self.tolerance.value, n, alpha)
     }
 
-    /// Whether `n` replications would show a difference of the default tolerance.
+    /// Whether `n` replications would show the difference that must be seen.
     pub(super) fn is_sensitive(&self, n: u64, alpha: f64) -> bool {
-        self.method.miss_probability(value_of(self.default, self.bounds), n, alpha) <= UNSEEN
+        self.method.miss_probability(value_of(self.detectable, self.bounds), n, alpha) <= UNSEEN
     }
 
     /// Why no number of replications decides the row with a tolerance, if that is so.
     pub(super) fn never(&self, tolerance: f64) -> Option<String> {
-        let tolerance = if tolerance == 0.0 { value_of(self.default, self.bounds) } else { tolerance };
+        let tolerance = if tolerance == 0.0 { value_of(self.detectable, self.bounds) } else { tolerance };
         if let Some(reason) = self.method.never_agrees(tolerance) {
             return Some(reason);
         }

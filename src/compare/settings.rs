@@ -14,11 +14,27 @@ pub struct Settings {
     pub quantities: Option<Vec<Quantity>>,
     /// Tolerances that take precedence over those of the model.
     pub tolerances: Tolerances,
+    /// Differences that a row without tolerance must be able to see before it is consistent; the default tolerances where
+    /// none is given.
+    pub detectable: Tolerances,
+    /// The number, from 1, of this look at a series of ever larger runs; look j spends 1/2^j of the error rate, so that all
+    /// looks together spend it once. `None` for a run that stands alone.
+    pub look: Option<u32>,
 }
+
+/// More looks than this leave next to nothing to spend.
+pub const MOST_LOOKS: u32 = 20;
 
 impl Default for Settings {
     fn default() -> Self {
-        Self { error_rate: 0.01, power: 0.95, quantities: None, tolerances: Tolerances::default() }
+        Self {
+            error_rate: 0.01,
+            power: 0.95,
+            quantities: None,
+            tolerances: Tolerances::default(),
+            detectable: Tolerances::default(),
+            look: None,
+        }
     }
 }
 
@@ -38,6 +54,11 @@ impl Settings {
         self.quantities.as_deref().or_else(|| model.compare())
     }
 
+    /// The error rate that this table spends.
+    pub fn spent(&self) -> f64 {
+        self.error_rate / self.look.map_or(1.0, |look| 2f64.powi(look.min(MOST_LOOKS) as i32))
+    }
+
     /// The tolerance given for a quantity, by the user before the model.
     pub(super) fn tolerance(&self, model: &Model, quantity: &Quantity) -> Option<Tolerance> {
         self.tolerances.of(quantity).or_else(|| model.tolerances().of(quantity))
@@ -51,19 +72,24 @@ impl Settings {
                 return Err(StudyFault { text, remedy: "give a probability such as 0.01 or 0.95".to_owned() });
             }
         }
-        let named = self.tolerances.keys().filter_map(|key| match key {
+        if self.look.is_some_and(|look| !(1..=MOST_LOOKS).contains(&look)) {
+            let text = format!("look {} is not between 1 and {MOST_LOOKS}", self.look.unwrap_or_default());
+            return Err(StudyFault { text, remedy: "number the looks of a series from 1".to_owned() });
+        }
+        let given = || self.tolerances.keys().chain(self.detectable.keys());
+        let named = given().filter_map(|key| match key {
             ToleranceKey::One(quantity) => Some(quantity),
             ToleranceKey::All(_) => None,
         });
         for quantity in self.quantities.iter().flatten().chain(named) {
             model.resolve(quantity).map_err(|fault| StudyFault { text: fault.text, remedy: fault.remedy })?;
         }
-        for key in self.tolerances.keys() {
+        for key in given() {
             check_name(key)?;
         }
         // Those of the model are looked at here too: what a tolerance may be is no matter of reading.
         let asked = self.quantities.iter().flatten().chain(model.compare().into_iter().flatten());
-        let keys = self.tolerances.keys().chain(model.tolerances().keys());
+        let keys = given().chain(model.tolerances().keys());
         let keyed = keys.map(|key| match key {
             ToleranceKey::One(quantity) => quantity.clone(),
             ToleranceKey::All(name) => stand_in(name),
@@ -71,6 +97,13 @@ impl Settings {
         for quantity in asked.cloned().chain(keyed) {
             if let Some(tolerance) = self.tolerance(model, &quantity) {
                 check_tolerance(&quantity, tolerance)?;
+            }
+            if let Some(difference) = self.detectable.of(&quantity) {
+                check_tolerance(&quantity, difference)?;
+                if matches!(difference, Tolerance::Absolute(0.0) | Tolerance::Relative(0.0)) {
+                    let text = format!("no number of replications can see a difference of 0 in `{}`", quantity.name());
+                    return Err(StudyFault { text, remedy: "give a difference above 0, such as 1 %".to_owned() });
+                }
             }
         }
         Ok(())

@@ -47,12 +47,13 @@ impl<'a> Study<'a> {
         let mut refused = Vec::new();
         for quantity in selection.rows {
             let given = settings.tolerance(model, &quantity);
-            match draft(exact, quantity, given) {
+            let detectable = settings.detectable.of(&quantity);
+            match draft(exact, quantity, given, detectable) {
                 Ok(row) => drafted.push(row),
                 Err(not_compared) => refused.push(not_compared),
             }
         }
-        let (rows, too_much) = settle(drafted, settings.error_rate, settings.power);
+        let (rows, too_much) = settle(drafted, settings.spent(), settings.power);
         refused.extend(too_much);
         let mut warnings = warnings::left_out(&refused);
         warnings.extend(warnings::unlisted(&selection.left_out));
@@ -60,9 +61,9 @@ impl<'a> Study<'a> {
         warnings.extend(warnings::wide(&rows, settings.power));
         warnings.extend(warnings::unused(model, settings, &rows, &refused));
         let grid = Arc::new(Grid::new(rows.iter().flat_map(Planned::cuts).collect()));
-        let alpha = level(&rows, settings.error_rate);
+        let alpha = level(&rows, settings.spent());
         warnings.extend(warnings::never(&rows, alpha, settings.power));
-        let terms = Terms { error_rate: settings.error_rate, power: settings.power, alpha };
+        let terms = Terms { error_rate: settings.spent(), power: settings.power, alpha };
         Ok(Self { exact, rows, not_compared: refused, warnings, grid, terms })
     }
 

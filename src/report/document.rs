@@ -127,8 +127,10 @@ pub enum SeedSource {
 /// What was planned.
 #[derive(Debug, Clone, PartialEq)]
 pub struct PlanSummary {
-    /// The error rate of the whole table; `None` where nothing is compared.
+    /// The error rate that the whole table spends; `None` where nothing is compared.
     pub error_rate: Option<f64>,
+    /// The number of this look at a series of runs; `None` for a run that stands alone.
+    pub look: Option<u32>,
     /// Number of rows.
     pub rows: usize,
     /// Probability of a conclusive table, if there is no difference, to which the plan is sized.

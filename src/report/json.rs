@@ -85,6 +85,7 @@ fn number(value: Option<f64>) -> Option<Number> {
 #[derive(Serialize)]
 struct Plan {
     error_rate: Option<f64>,
+    look: Option<u32>,
     rows: usize,
     power: Option<f64>,
     replications: Option<String>,
@@ -97,6 +98,7 @@ impl Plan {
     fn of(plan: &PlanSummary) -> Self {
         Self {
             error_rate: plan.error_rate,
+            look: plan.look,
             rows: plan.rows,
             power: plan.power,
             replications: plan.replications.map(|n| n.to_string()),

@@ -91,7 +91,8 @@ fn particulars(document: &Document) -> Vec<String> {
             ),
             _ => String::new(),
         };
-        lines.push(format!("Error rate of the whole table: {}{sized}", rounded(rate, 3)));
+        let look = plan.look.map_or(String::new(), |look| format!(" (look {look} of a series)"));
+        lines.push(format!("Error rate of the whole table: {}{look}{sized}", rounded(rate, 3)));
     }
     lines
 }
