@@ -232,6 +232,7 @@ fn every_kind_of_end_has_its_status() {
         (&["check", "--demo", "--error-rate", "2"], 2, "between 0 and 1"),
         (&["check", "--demo", "--replications", "many"], 2, "whole number"),
         (&["check", "--demo", "--replications", "4096"], 3, ""),
+        (&["check", "--demo", "--tolerance", "mean_time=0", "--quantity", "mean_time"], 0, ""),
         (&["check", "--demo", "--tolerance", "mean_time=1e-6"], 3, "not started"),
         (&["check", "bench.toml", "--json", "bench.toml"], 2, "overwritten"),
         (&["check", "bench.toml", "--json", "no/such/place.json"], 74, "no/such/place.json"),

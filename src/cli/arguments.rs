@@ -29,7 +29,7 @@ pub(super) struct Arguments {
 }
 
 pub(super) const EXIT_STATUSES: &str = "\
-Exit status: 0 agree, or the command simply worked; 1 disagree; 2 usage; 3 not decided; \
+Exit status: 0 agree or consistent, or the command simply worked; 1 disagree; 2 usage; 3 not decided; \
 65 bad input data; 70 internal error; 74 input/output failure; 130 interrupted; 143 terminated.";
 
 #[derive(Debug, Subcommand)]

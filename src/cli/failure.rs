@@ -26,9 +26,10 @@ pub(super) mod status {
 /// The exit status of a verdict.
 pub(super) fn of_verdict(verdict: Verdict) -> u8 {
     match verdict {
-        Verdict::Agree => status::WORKED,
+        // Consistent is the best that a row without tolerance can be, and it has the power to see what matters.
+        Verdict::Agree | Verdict::Consistent => status::WORKED,
         Verdict::Disagree => status::DISAGREE,
-        Verdict::Consistent | Verdict::Inconclusive => status::UNDECIDED,
+        Verdict::Inconclusive => status::UNDECIDED,
     }
 }
 
