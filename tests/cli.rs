@@ -240,6 +240,11 @@ fn every_kind_of_end_has_its_status() {
         (&["audit", "bench.toml"], 2, "--outcomes"),
         (&["audit", "bench.toml", "--outcomes", "nothing.csv"], 74, "nothing.csv"),
         (&["exact", "bench.toml", "--quantity", "law"], 2, "no single number"),
+        (&["check", "--demo", "--start", "board"], 2, "--start"),
+        (&["check", "--demo", "--absorbing", "board"], 2, "--absorbing"),
+        (&["sample", "bench.toml", "--write-tally", "both.txt", "--json", "./both.txt"], 2, "two results"),
+        (&["sample", "bench.toml", "--write-tally", "."], 74, "directory"),
+        (&["audit", "bench.toml", "--outcomes", "broken.toml", "--json", "broken.toml"], 2, "overwritten"),
         (&["--help"], 0, ""),
         (&["--version"], 0, ""),
     ] {
@@ -250,6 +255,26 @@ fn every_kind_of_end_has_its_status() {
     // A result that could not be written leaves no half file behind.
     let names: Vec<_> = fs::read_dir(&place).unwrap().map(|entry| entry.unwrap().file_name()).collect();
     assert_eq!(names.len(), 2, "{names:?}");
+}
+
+// The run would take ages: the place of its result is looked at before.
+#[test]
+fn a_result_without_a_place_is_refused_before_the_work() {
+    let place = directory(&[]);
+    endless(place.path());
+    let refused = within(&place, &["sample", "endless.toml", "--json", "no/such/place.json"]);
+    assert_eq!(status(&refused), 74);
+    assert!(err(&refused).starts_with("error: no/such/place.json: ") && !err(&refused).contains(".tallystone-"));
+}
+
+// A device takes the file in place, so only its writing fails.
+#[cfg(target_os = "linux")]
+#[test]
+fn a_result_that_cannot_be_written_is_still_printed() {
+    let place = directory(&[]);
+    let full = within(&place, &["check", "bench.toml", "--json", "/dev/full"]);
+    assert_eq!(status(&full), 74, "{}", err(&full));
+    assert!(out(&full).contains("Verdict:") && err(&full).contains("/dev/full"), "{}", err(&full));
 }
 
 #[test]

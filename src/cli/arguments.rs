@@ -58,7 +58,8 @@ pub(super) struct Check {
     #[arg(value_name = "MODEL")]
     pub(super) models: Vec<PathBuf>,
     /// Check the built-in example model, a field-radio refurbishing bench
-    #[arg(long)]
+    // The example has its own start and ends; what would be ignored is refused.
+    #[arg(long, conflicts_with_all = ["start", "absorbing"])]
     pub(super) demo: bool,
     #[command(flatten)]
     pub(super) reading: Reading,

@@ -13,6 +13,9 @@ use crate::report::{Body, Input};
 /// Reads the model, solves, reads the outcomes, compares, writes.
 pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
     let model = steps::read(&arguments.model, &arguments.reading)?;
+    let mut inputs = steps::files_of(&model);
+    inputs.push(&arguments.outcomes);
+    output::look_at_destinations(&[arguments.output.json.as_deref()], &inputs)?;
     let settings = steps::settings(&arguments.comparing);
     let started = Instant::now();
     let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, &settings)), &session.watch)?;

@@ -37,6 +37,7 @@ pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
 
 /// Reads, solves, samples, compares, writes.
 fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, Failure> {
+    output::look_at_destinations(&[arguments.output.json.as_deref()], &steps::files_of(model))?;
     let settings = steps::settings(&arguments.comparing);
     let (seed, seed_source) = steps::seed(&arguments.sampling)?;
     let started = Instant::now();

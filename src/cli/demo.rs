@@ -33,7 +33,7 @@ pub(super) fn run(arguments: &Demo, session: &Session) -> Result<u8, Failure> {
     let bench = output::new_file(directory, "bench.toml")?;
     let right = output::new_file(directory, "outcomes-right.csv")?;
     let wrong = output::new_file(directory, "outcomes-wrong.csv")?;
-    output::write_file(&bench, &[], |out| out.write_all(MODEL.as_bytes()))?;
+    output::write_file(&bench, |out| out.write_all(MODEL.as_bytes()))?;
     outcomes(MODEL, &right, session)?;
     outcomes(&MODEL.replace(RIGHT, WRONG), &wrong, session)?;
     let shown = |path: &Path| path.display().to_string();
@@ -49,7 +49,7 @@ pub(super) fn run(arguments: &Demo, session: &Session) -> Result<u8, Failure> {
 fn outcomes(text: &str, path: &Path, session: &Session) -> Result<(), Failure> {
     let model = Model::from_toml(text)?;
     let plan = Plan { replications: REPLICATIONS, seed: SEED, grid: Arc::new(Grid::new(Vec::new())) };
-    write_outcomes(path, &[], &Sampler::new(model.chain()), &plan, model.chain(), &session.watch).map(drop)
+    write_outcomes(path, &Sampler::new(model.chain()), &plan, model.chain(), &session.watch).map(drop)
 }
 
 #[cfg(test)]

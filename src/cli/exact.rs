@@ -14,12 +14,14 @@ use crate::report::{Answer, Body, Document, ModelSummary, RunSummary};
 pub(super) fn run(arguments: &Arguments, session: &Session) -> Result<u8, Failure> {
     let model = steps::read(&arguments.model, &arguments.reading)?;
     let quantities = quantities(arguments, &model)?;
+    output::look_at_destinations(&[arguments.output.json.as_deref()], &steps::files_of(&model))?;
     let started = Instant::now();
     let exact = Exact::solve(&model, &Request::of(&quantities), &session.watch)?;
     let answers = quantities.into_iter().map(|quantity| answer(&exact, quantity)).collect();
     let mut document = Document::new(ModelSummary::of(&model), Body::Exact(answers));
     let seconds = started.elapsed().as_secs_f64();
-    document.run = Some(RunSummary { replications: None, steps: None, seconds, solver: Some(exact.solver()) });
+    document.run =
+        Some(RunSummary { replications: None, steps: None, times: None, seconds, solver: Some(exact.solver()) });
     document.warnings = model.warnings().to_vec();
     output::deliver(&steps::complete(document, &model, session), &arguments.output)?;
     Ok(status::WORKED)

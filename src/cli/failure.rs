@@ -131,7 +131,7 @@ impl From<ExactError> for Failure {
         let text = error.to_string();
         let (text, remedy) = text.split_once("; ").or_else(|| text.split_once(": ")).unwrap_or((&text, ""));
         match error {
-            ExactError::Interrupted => Self::Interrupted("interrupted while solving; nothing was compared".to_owned()),
+            ExactError::Interrupted => Self::Interrupted("interrupted while solving; no result was written".to_owned()),
             ExactError::Contradiction { .. } => Self::Internal(refused("internal", text, remedy)),
             _ => Self::Data(refused("unsolvable", text, remedy)),
         }
@@ -146,7 +146,7 @@ impl From<StudyFault> for Failure {
 
 impl From<Interrupted> for Failure {
     fn from(interrupted: Interrupted) -> Self {
-        Self::Interrupted(format!("{interrupted}; nothing was compared"))
+        Self::Interrupted(format!("{interrupted}; no result was written"))
     }
 }
 

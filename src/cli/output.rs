@@ -4,6 +4,8 @@ use std::fs::{self, File};
 use std::io::{self, BufWriter, IsTerminal, Write};
 use std::path::{Path, PathBuf};
 
+use tempfile::NamedTempFile;
+
 use super::arguments::{Output, When};
 use super::failure::{Failure, refused};
 use crate::model::Warning;
@@ -37,20 +39,51 @@ pub(super) fn width() -> usize {
     said.or_else(seen).unwrap_or(80).clamp(NARROWEST, WIDEST)
 }
 
-/// Delivers a finished document.
+/// Delivers a finished document. A file that cannot be written does not cost the table as well.
 pub(super) fn deliver(document: &Document, output: &Output) -> Result<(), Failure> {
-    match &output.json {
+    let filed = match &output.json {
         Some(path) if is_standard_output(path) => return to_standard_output(|out| write_json(document, out)),
-        Some(path) => {
-            let inputs: Vec<&Path> = document.inputs.iter().map(|input| Path::new(&input.file)).collect();
-            write_file(path, &inputs, |out| write_json(document, out))?;
-        }
-        None => {}
-    }
+        Some(path) => write_file(path, |out| write_json(document, out)),
+        None => Ok(()),
+    };
     if output.quiet {
-        return Ok(());
+        return filed;
     }
-    to_standard_output(|out| write_text(document, layout(output), out))
+    let printed = to_standard_output(|out| write_text(document, layout(output), out));
+    filed.and(printed)
+}
+
+/// Looks before the work at where its results will go, so that none is done in vain.
+///
+/// # Errors
+/// A file that is one of the inputs, that is named twice, or that cannot be made.
+pub(super) fn look_at_destinations(files: &[Option<&Path>], inputs: &[&Path]) -> Result<(), Failure> {
+    let files: Vec<&Path> = files.iter().flatten().copied().filter(|path| !is_standard_output(path)).collect();
+    for (number, path) in files.iter().enumerate() {
+        let usage = |text: String| Failure::Usage(refused("usage", text, "give another name for the result"));
+        if inputs.iter().any(|input| is_same(path, input)) {
+            return Err(usage(format!("`{}` is an input of this run and would be overwritten", path.display())));
+        }
+        if !is_special(path) && files[..number].iter().any(|earlier| is_same(path, earlier)) {
+            return Err(usage(format!("`{}` is named for two results, of which one would be lost", path.display())));
+        }
+        if path.is_dir() {
+            return Err(Failure::io(path, &io::ErrorKind::IsADirectory.into()));
+        }
+        if !is_special(path) {
+            temporary(path).map_err(|error| Failure::io(path, &error))?;
+        }
+    }
+    Ok(())
+}
+
+/// Whether two paths are one file, there already or not.
+fn is_same(a: &Path, b: &Path) -> bool {
+    let place = |path: &Path| {
+        let made = || Some(fs::canonicalize(directory(path)).ok()?.join(path.file_name()?));
+        fs::canonicalize(path).ok().or_else(made)
+    };
+    a == b || place(a).is_some_and(|place_of_a| place(b) == Some(place_of_a))
 }
 
 /// Delivers a refusal as JSON, where JSON was asked for on standard output.
@@ -80,39 +113,46 @@ pub(super) fn to_standard_output(
 /// Writes a file that appears whole or not at all; devices and pipes are written in place.
 ///
 /// # Errors
-/// A path that is one of the inputs, or one that cannot be written.
+/// A path that cannot be written.
 pub(super) fn write_file(
     path: &Path,
-    inputs: &[&Path],
     write: impl FnOnce(&mut BufWriter<&mut File>) -> io::Result<()>,
 ) -> Result<(), Failure> {
-    let same = |input: &&Path| matches!((fs::canonicalize(path), fs::canonicalize(input)), (Ok(a), Ok(b)) if a == b);
-    if inputs.iter().any(same) {
-        let text = format!("`{}` is an input of this run and would be overwritten", path.display());
-        return Err(Failure::Usage(refused("usage", text, "give another name for the result")));
-    }
     written(path, write).map_err(|error| Failure::io(path, &error))
 }
 
 fn written(path: &Path, write: impl FnOnce(&mut BufWriter<&mut File>) -> io::Result<()>) -> io::Result<()> {
-    if fs::metadata(path).is_ok_and(|found| !found.is_file()) {
+    if is_special(path) {
         let mut file = File::options().write(true).open(path)?;
         let mut out = BufWriter::new(&mut file);
         return write(&mut out).and_then(|()| out.flush());
     }
-    let directory = match path.parent() {
-        Some(directory) if !directory.as_os_str().is_empty() => directory,
-        _ => Path::new("."),
-    };
-    let mut builder = tempfile::Builder::new();
-    // As any other new file, not private as temporary files are.
-    #[cfg(unix)]
-    builder.permissions(std::os::unix::fs::PermissionsExt::from_mode(0o666));
-    let mut file = builder.prefix(".tallystone-").tempfile_in(directory)?;
+    let mut file = temporary(path)?;
     let mut out = BufWriter::new(file.as_file_mut());
     write(&mut out).and_then(|()| out.flush())?;
     drop(out);
     file.persist(path).map(drop).map_err(|error| error.error)
+}
+
+/// A device, a pipe or a directory: nothing that a new file could replace.
+fn is_special(path: &Path) -> bool {
+    fs::metadata(path).is_ok_and(|found| !found.is_file())
+}
+
+/// The directory of a path.
+fn directory(path: &Path) -> &Path {
+    path.parent().filter(|directory| !directory.as_os_str().is_empty()).unwrap_or(Path::new("."))
+}
+
+/// A file beside a path, which it may replace; it is gone when it is dropped.
+fn temporary(path: &Path) -> io::Result<NamedTempFile> {
+    let mut builder = tempfile::Builder::new();
+    // As any other new file, not private as temporary files are.
+    #[cfg(unix)]
+    builder.permissions(std::os::unix::fs::PermissionsExt::from_mode(0o666));
+    fs::metadata(directory(path))?;
+    // The name of the temporary file, which the error holds, would tell nobody anything: the kind is enough.
+    builder.prefix(".tallystone-").tempfile_in(directory(path)).map_err(|error| error.kind().into())
 }
 
 /// Prints warnings on standard error.

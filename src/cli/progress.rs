@@ -6,8 +6,12 @@ use std::time::Duration;
 
 use indicatif::{HumanCount, ProgressBar, ProgressDrawTarget, ProgressState, ProgressStyle};
 
+use super::output::width;
 use super::signals::Stop;
 use crate::model::Progress;
+
+/// Columns that a bar with all its words takes; the outlook is dropped on narrower terminals.
+const ROOMY: usize = 100;
 
 /// Shows progress bars, if they are wanted, and passes on the wish to stop.
 #[derive(Debug)]
@@ -46,10 +50,13 @@ impl Progress for Watch {
             return;
         }
         let template = match total {
-            Some(_) => "{msg} {bar:24} {human_pos} of {human_len} {prefix} ({rate}, {eta} left)",
+            Some(_) => "{msg} {wide_bar} {percent}% of {human_len} {prefix} ({rate}, {eta} left)",
             None => "{msg} {spinner} {human_pos} {prefix} ({rate})",
         };
-        let outlook = std::mem::take(&mut *self.outlook.lock().unwrap_or_else(PoisonError::into_inner));
+        let mut outlook = std::mem::take(&mut *self.outlook.lock().unwrap_or_else(PoisonError::into_inner));
+        if width() < ROOMY {
+            outlook.clear();
+        }
         let bar = ProgressBar::with_draw_target(total, ProgressDrawTarget::stderr_with_hz(8))
             .with_message(format!("{phase}{outlook}"))
             .with_prefix(unit.to_owned());

@@ -23,15 +23,16 @@ pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> 
     let replications = arguments.sampling.replications.unwrap_or(REPLICATIONS);
     let plan = Plan { replications, seed, grid: Arc::new(Grid::logarithmic()) };
     let sampler = Sampler::new(model.chain());
-    let inputs: Vec<&Path> = model.inputs().iter().map(|input| Path::new(&input.file)).collect();
+    let files = [&arguments.write_outcomes, &arguments.write_tally, &arguments.output.json];
+    output::look_at_destinations(&files.map(Option::as_deref), &steps::files_of(&model))?;
     let started = Instant::now();
     let tally = match &arguments.write_outcomes {
-        Some(path) => write_outcomes(path, &inputs, &sampler, &plan, model.chain(), &session.watch)?,
+        Some(path) => write_outcomes(path, &sampler, &plan, model.chain(), &session.watch)?,
         None => steps::on_threads(&arguments.sampling, || Ok(sample(&sampler, &plan, &session.watch)?))?,
     };
     let seconds = started.elapsed().as_secs_f64();
     if let Some(path) = &arguments.write_tally {
-        output::write_file(path, &inputs, |out| write!(out, "{tally}"))?;
+        output::write_file(path, |out| write!(out, "{tally}"))?;
     }
     let document = document(&model, &tally, &plan, seed_source, seconds);
     output::deliver(&steps::complete(document, &model, session), &arguments.output)?;
@@ -56,7 +57,8 @@ fn document(
         seed: Some((plan.seed, seed_source)),
     });
     let replications = Some(tally.replications());
-    document.run = Some(RunSummary { replications, steps: Some(tally.steps()), seconds, solver: None });
+    document.run =
+        Some(RunSummary { replications, steps: Some(tally.steps()), times: tally.range(), seconds, solver: None });
     document.warnings = model.warnings().to_vec();
     document
 }
@@ -64,7 +66,6 @@ fn document(
 /// Samples one replication after another, which are the same as those of any number of threads, and writes each.
 pub(super) fn write_outcomes(
     path: &Path,
-    inputs: &[&Path],
     sampler: &Sampler,
     plan: &Plan,
     chain: &Chain,
@@ -72,7 +73,7 @@ pub(super) fn write_outcomes(
 ) -> Result<Tally, Failure> {
     let mut tally = Tally::new(sampler.ends(), Arc::clone(&plan.grid));
     let mut interrupted = None;
-    let walked = output::write_file(path, inputs, |out| {
+    let walked = output::write_file(path, |out| {
         progress.begin("sampling", "replications", Some(plan.replications));
         walk(out, sampler, plan, chain, &mut tally, progress).inspect_err(|_| interrupted = Some(tally.replications()))
     });

@@ -1,4 +1,4 @@
-//! Ctrl-C and termination: the first asks to stop, the second stops at once.
+//! Ctrl-C and termination: the first signal asks to stop, a second one, of either kind, stops at once.
 
 use std::io;
 use std::sync::Arc;
@@ -20,11 +20,11 @@ impl Stop {
     /// When the system refuses a handler.
     pub(super) fn listen() -> io::Result<Self> {
         let stop = Self::default();
+        let armed = Arc::new(AtomicBool::new(false));
         for (signal, exit) in [(SIGINT, status::INTERRUPTED), (SIGTERM, status::TERMINATED)] {
-            let armed = Arc::new(AtomicBool::new(false));
             // In this order: only the second signal finds the flag set.
             flag::register_conditional_shutdown(signal, i32::from(exit), Arc::clone(&armed))?;
-            flag::register(signal, armed)?;
+            flag::register(signal, Arc::clone(&armed))?;
             flag::register_usize(signal, Arc::clone(&stop.0), signal.unsigned_abs() as usize)?;
         }
         Ok(stop)

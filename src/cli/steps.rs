@@ -22,6 +22,11 @@ pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
     Ok(model)
 }
 
+/// The files that a model was read from.
+pub(super) fn files_of(model: &Model) -> Vec<&Path> {
+    model.inputs().iter().map(|input| Path::new(&input.file)).collect()
+}
+
 /// Prints warnings, and stops if the user refuses them.
 pub(super) fn look_at(warnings: &[Warning], reading: &Reading) -> Result<(), Failure> {
     output::warn(warnings);
@@ -120,6 +125,7 @@ pub(super) fn compared(
     document.run = Some(RunSummary {
         replications: Some(tally.replications()),
         steps: Some(tally.steps()),
+        times: tally.range(),
         seconds: started.elapsed().as_secs_f64(),
         solver: Some(exact.solver()),
     });

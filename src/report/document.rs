@@ -150,6 +150,8 @@ pub struct RunSummary {
     pub replications: Option<u64>,
     /// Their steps together.
     pub steps: Option<u128>,
+    /// The shortest and the longest of their times.
+    pub times: Option<(u64, u64)>,
     /// How long it took.
     pub seconds: f64,
     /// How the exact answers were found.

@@ -113,6 +113,8 @@ impl Plan {
 struct Run {
     replications: Option<String>,
     steps: Option<String>,
+    shortest: Option<String>,
+    longest: Option<String>,
     seconds: Option<f64>,
     solver: Option<&'static str>,
 }
@@ -123,6 +125,8 @@ impl Run {
         Self {
             replications: run.replications.map(|n| n.to_string()),
             steps: run.steps.map(|n| n.to_string()),
+            shortest: run.times.map(|(shortest, _)| shortest.to_string()),
+            longest: run.times.map(|(_, longest)| longest.to_string()),
             seconds: timed.then_some(run.seconds),
             solver: run.solver,
         }

@@ -18,7 +18,7 @@
 //! | `inputs` | files read: `file`, `sha256`, `rows` and `bad_rows` of outcomes, `ignored_columns` |
 //! | `model` | `title`, `sha256` of the chain's meaning, `clock`, `clock_unit`, `states`, `moves`, `ends`, `largest_correction` |
 //! | `plan` | `error_rate` spent, `look` in a series of runs, number of `rows`, `power`, `replications` planned, `demanding` row, `seed`, `seed_source` (`default`, `given`, `random`) |
-//! | `run` | `replications`, `steps`, `seconds`, `solver` |
+//! | `run` | `replications`, their `steps` together, `shortest` and `longest` of their times, `seconds`, `solver` |
 //! | `rows` | see below |
 //! | `findings` | impossible outcomes: `end`, `time`, `line` of the first, `count`, `text` |
 //! | `not_compared` | `quantity`, `of`, `exact`, `text` |

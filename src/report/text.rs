@@ -70,8 +70,9 @@ fn particulars(document: &Document) -> Vec<String> {
             if ignored.is_empty() { String::new() } else { format!("; columns not read: {}", ignored.join(", ")) };
         lines.push(format!("{rows} outcomes from {}{ignored}", shown(&input.file)));
     }
-    let Some(plan) = &document.plan else { return lines };
     let run = document.run.as_ref();
+    let times = run.and_then(|run| run.times).filter(|_| matches!(document.body, Body::Sample(_)));
+    let Some(plan) = &document.plan else { return lines };
     if let (Some((seed, source)), Some(replications)) = (plan.seed, run.and_then(|run| run.replications)) {
         let source = match source {
             SeedSource::Default => " (default)",
@@ -81,6 +82,9 @@ fn particulars(document: &Document) -> Vec<String> {
         let steps =
             run.and_then(|run| run.steps).map_or(String::new(), |steps| format!(", {} steps", thousands(steps)));
         lines.push(format!("{} replications, seed {seed}{source}{steps}", thousands(replications)));
+    }
+    if let Some((shortest, longest)) = times {
+        lines.push(format!("Shortest time {}, longest {}", thousands(shortest), thousands(longest)));
     }
     if let Some(rate) = plan.error_rate {
         let sized = match (plan.replications, &plan.demanding) {

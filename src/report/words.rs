@@ -10,7 +10,8 @@ use unicode_width::UnicodeWidthStr;
 pub fn shown(name: &str) -> String {
     let hidden = |c: char| {
         c.is_control()
-            || matches!(c, '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}')
+            || matches!(c, '\u{ad}' | '\u{61c}' | '\u{180e}' | '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}')
+            || matches!(c, '\u{2060}'..='\u{206f}' | '\u{feff}' | '\u{fff9}'..='\u{fffb}' | '\u{e0000}'..='\u{e007f}')
     };
     let mut text = String::with_capacity(name.len());
     for c in name.chars() {
@@ -19,11 +20,12 @@ pub fn shown(name: &str) -> String {
     text
 }
 
-/// A paragraph in lines of at most `width` columns; later lines start with `indent` spaces. Words are never parted.
+/// A paragraph in lines of at most `width` columns; later lines start with `indent` spaces. Words are never parted,
+/// and blanks within a line stay as they are: they may belong to a name.
 pub fn wrapped(text: &str, width: usize, indent: usize) -> String {
     let mut lines = String::new();
     let mut used = 0;
-    for word in text.split_whitespace() {
+    for word in text.split(' ') {
         let columns = word.width();
         if used > 0 && used + 1 + columns > width {
             lines.push('\n');
@@ -69,6 +71,7 @@ mod tests {
 
     #[test]
     fn names_cannot_speak_to_the_terminal() {
+        assert_eq!(shown("x\u{61c}y\u{e0041}"), "x\\u{61c}y\\u{e0041}");
         assert_eq!(shown("a\u{202e}b\tc\u{7}"), "a\\u{202e}b\\u{9}c\\u{7}");
         assert_eq!(shown("Prüfstand 3 ✓"), "Prüfstand 3 ✓");
     }
@@ -78,6 +81,7 @@ mod tests {
         let text = wrapped("one two three four five six seven", 12, 2);
         assert!(text.lines().all(|line| line.width() <= 12), "{text}");
         assert_eq!(text.split_whitespace().count(), 7);
+        assert_eq!(wrapped("the file a  b.toml", 40, 0), "the file a  b.toml");
         assert_eq!(wrapped("unbreakable-and-long", 5, 0), "unbreakable-and-long");
     }
 

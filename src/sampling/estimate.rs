@@ -16,7 +16,11 @@ pub struct Estimate {
     pub standard_error: Option<f64>,
 }
 
-/// The shares of ends and groups, mean and standard deviation of the time, and the mean time given each end.
+/// Levels of the quantiles that are estimated.
+const LEVELS: [f64; 3] = [0.5, 0.9, 0.99];
+
+/// The shares of ends and groups, mean and standard deviation of the time, its quantiles at 0.5, 0.9 and 0.99 where a cell
+/// of the grid holds one time alone, and the mean time given each end.
 ///
 /// # Panics
 /// When the tally is over other ends than the model.
@@ -42,12 +46,52 @@ pub fn estimates(model: &Model, tally: &Tally) -> Vec<Estimate> {
         .zip(times.central_moment(4))
         .map(|(sd, fourth)| ((fourth - sd.powi(4)).max(0.0) / n).sqrt() / (2.0 * sd));
     all.push(Estimate { quantity: Quantity::SdTime, estimate: sd, standard_error: sd_error });
+    all.extend(LEVELS.into_iter().filter_map(|p| quantile(p, tally)));
     let given = ends.iter().enumerate();
     all.extend(given.map(|(end, one)| mean(Quantity::MeanTimeGiven(one.name.clone()), &tally.power_sums(end))));
     all
 }
 
+/// The smallest time at or below which the share `p` of the outcomes lies, if the grid cuts right before and after it.
+fn quantile(p: f64, tally: &Tally) -> Option<Estimate> {
+    let share = |time: u64| Some(tally.at_or_below(time)? as f64 / tally.replications() as f64);
+    let edges = tally.grid().edges();
+    // The share never falls from one edge to the next.
+    let time = *edges.get(edges.partition_point(|edge| share(*edge).is_some_and(|share| share < p)))?;
+    let is_alone = time == 0 || share(time - 1).is_some_and(|share| share < p);
+    let quantity = Quantity::TimeQuantile(p);
+    (is_alone && tally.replications() > 0).then_some(Estimate {
+        quantity,
+        estimate: Some(time as f64),
+        standard_error: None,
+    })
+}
+
 fn mean(quantity: Quantity, times: &PowerSums) -> Estimate {
     let standard_error = times.variance().map(|variance| (variance / times.count() as f64).sqrt());
     Estimate { quantity, estimate: times.mean(), standard_error }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::sync::Arc;
+
+    use super::super::Grid;
+    use super::*;
+
+    // 100 times, one each from 1 to 100: by counting, the quantiles at 0.5, 0.9, 0.99 are 50, 90 and 99.
+    #[test]
+    fn quantiles_are_told_where_the_grid_knows_them() {
+        let quantiles = |edges: Vec<u64>| {
+            let mut tally = Tally::new(1, Arc::new(Grid::new(edges)));
+            (1..=100).for_each(|time| tally.add(0, time));
+            LEVELS.map(|p| quantile(p, &tally).and_then(|one| one.estimate))
+        };
+        assert_eq!(quantiles((0..=100).collect()), [Some(50.0), Some(90.0), Some(99.0)]);
+        assert_eq!(quantiles((49..=90).collect()), [Some(50.0), Some(90.0), None]);
+        // From 50 alone it cannot be told that fewer than half lie at or below 49.
+        assert_eq!(quantiles(vec![50, 89, 90]), [None, Some(90.0), None]);
+        assert_eq!(quantiles(vec![]), [None; 3]);
+        assert_eq!(quantile(0.5, &Tally::new(1, Arc::new(Grid::logarithmic()))), None);
+    }
 }

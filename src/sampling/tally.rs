@@ -222,6 +222,12 @@ impl Tally {
         self.ends[end].range.map(|(_, largest)| largest)
     }
 
+    /// The smallest and the largest of all times; `None` when there is no outcome.
+    pub fn range(&self) -> Option<(u64, u64)> {
+        let ranges = self.ends.iter().filter_map(|end| end.range);
+        ranges.reduce(|a, b| (a.0.min(b.0), a.1.max(b.1)))
+    }
+
     /// The counts over the cells of the grid, at an end.
     ///
     /// # Panics
@@ -342,6 +348,9 @@ mod tests {
             assert_eq!(tally.power_sums(end).sums()[3], fourth);
             assert_eq!(tally.at_or_below_for(end, 1000), Some(times(end).filter(|time| *time <= 1000).count() as u64));
         }
+        let all = || outcomes.iter().map(|outcome| outcome.1);
+        assert_eq!(tally.range(), all().min().zip(all().max()));
+        assert_eq!(empty().range(), None);
         assert_eq!(tally.replications(), 10_000);
         assert_eq!(tally.count_of(&[0, 1]), 10_000);
         assert_eq!(tally.power_sums_of(&[0, 1]), tally.all());
