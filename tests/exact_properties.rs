@@ -6,7 +6,7 @@ mod naive;
 use dashu_ratio::RBig;
 use rand_pcg::Lcg128CmDxsm64;
 use rand_pcg::rand_core::Rng;
-use tallystone::exact::{Bounded, Exact, Request};
+use tallystone::exact::{Bounded, Exact, ExactError, Request};
 use tallystone::model::{Draft, Model, Silent};
 
 /// A random chain as weights: `rows[i][j]` leads from state i to state j, the last `ends` columns being ends; the start
@@ -103,7 +103,7 @@ fn units(bounded: Bounded) -> f64 {
 #[test]
 fn the_truth_lies_inside_every_bound_and_the_bounds_are_tight() {
     let mut rng = Lcg128CmDxsm64::new(20_261_201, 1);
-    let mut slowest = 0.0f64;
+    let (mut slowest, mut widest) = (0.0f64, 0.0f64);
     for _ in 0..3000 {
         let model = random(&mut rng).in_order();
         let exact = solve(&model);
@@ -112,6 +112,7 @@ fn the_truth_lies_inside_every_bound_and_the_bounds_are_tight() {
         holds(exact.mean_time(), &truth.mean, "mean");
         assert!(units(exact.mean_time()) <= 3.0);
         holds(exact.variance_time(), &truth.variance, "variance");
+        widest = widest.max(units(exact.variance_time()));
         for (end, (probability, time)) in truth.ends.iter().enumerate() {
             let answer = exact.absorption(&[end]);
             holds(answer, probability, "probability");
@@ -124,6 +125,97 @@ fn the_truth_lies_inside_every_bound_and_the_bounds_are_tight() {
     }
     // The draws reach the hard cases.
     assert!(slowest > 1e17, "{slowest}");
+    assert!(widest <= 4.0, "{widest}");
+}
+
+/// Up to four states in a ring of rare moves down to 1e-300, and starts as rare: at the edge of the arithmetic and beyond.
+fn extreme(rng: &mut Lcg128CmDxsm64) -> Model {
+    let rare = |rng: &mut Lcg128CmDxsm64| {
+        let most = [12, 100, 300][below(rng, 3) as usize];
+        let power = below(rng, most);
+        format!("{}e-{}", 1 + below(rng, 9), power + 2)
+    };
+    let states = 2 + below(rng, 3) as usize;
+    let mut draft = Draft::new("extreme");
+    draft.absorbing("x");
+    draft.absorbing("y");
+    for state in 0..states {
+        let from = format!("s{state}");
+        draft.moves(&from, &format!("s{}", (state + 1) % states), "rest");
+        for to in ["x", "y", &from] {
+            // Every way into both ends exists at least once.
+            if (state == 0 && to != from) || below(rng, 3) == 0 {
+                draft.moves(&from, to, &rare(rng));
+            }
+        }
+    }
+    draft.start_with(&format!("s{}", below(rng, states as u64)), "rest");
+    if below(rng, 3) == 0 {
+        draft.start_with("x", &rare(rng));
+    }
+    draft.check().unwrap()
+}
+
+#[test]
+fn at_the_edge_of_the_arithmetic_a_number_is_right_or_refused() {
+    let mut rng = Lcg128CmDxsm64::new(20_261_201, 6);
+    let (mut refused, mut largest) = (0, 0.0f64);
+    for _ in 0..2000 {
+        let model = extreme(&mut rng);
+        let exact = match Exact::solve(&model, &Request::default(), &Silent) {
+            Ok(exact) => exact,
+            Err(ExactError::OutOfRange { .. }) => {
+                refused += 1;
+                continue;
+            }
+            Err(error) => panic!("{error}"),
+        };
+        let truth = naive::solve(model.chain());
+        largest = largest.max(exact.mean_time().value);
+        holds(exact.mean_time(), &truth.mean, "mean");
+        holds(exact.variance_time(), &truth.variance, "variance");
+        assert!(units(exact.mean_time()) <= 3.0);
+        for (end, (probability, time)) in truth.ends.iter().enumerate() {
+            let answer = exact.absorption(&[end]);
+            holds(answer, probability, "probability");
+            assert!(units(answer) <= 3.0);
+            holds(exact.mean_time_given(&[end]).unwrap(), &(time / probability), "mean given");
+        }
+    }
+    // Both sides of the edge are reached.
+    assert!((200..1800).contains(&refused) && largest > 1e90, "{refused} {largest:e}");
+}
+
+#[test]
+fn an_overflow_or_an_underflow_is_refused_and_never_reads_zero() {
+    let ring = |out: &str| {
+        let mut draft = Draft::new("ring");
+        draft.moves("a", "b", out);
+        draft.moves("a", "x", "rest");
+        draft.moves("b", "x", out);
+        draft.moves("b", "b", "rest");
+        draft.absorbing("x");
+        draft.start("a");
+        draft.check().unwrap()
+    };
+    // b lives 1e160 steps and is seen once in 1e160 times: a variance of 2e160, whose parts overflow.
+    let refused =
+        |model: &Model| matches!(Exact::solve(model, &Request::default(), &Silent), Err(ExactError::OutOfRange { .. }));
+    assert!(refused(&ring("1e-160")));
+    let kept = ring("1e-60");
+    let truth = naive::solve(kept.chain()).variance;
+    let variance = solve(&kept).variance_time();
+    holds(variance, &truth, "variance");
+    assert!(variance.value > 1e60 && units(variance) <= 10.0, "{variance:?}");
+    // A start that underflows.
+    let mut draft = Draft::new("start");
+    draft.moves("a", "x", "1");
+    draft.moves("b", "y", "1");
+    draft.absorbing("x");
+    draft.absorbing("y");
+    draft.start_with("b", "1e-350");
+    draft.start_with("a", "rest");
+    assert!(refused(&draft.check().unwrap()));
 }
 
 #[test]

@@ -127,13 +127,11 @@ impl From<ModelError> for Failure {
 
 impl From<ExactError> for Failure {
     fn from(error: ExactError) -> Self {
-        // The messages of the solver name the remedy themselves, after the last semicolon or colon.
-        let text = error.to_string();
-        let (text, remedy) = text.split_once("; ").or_else(|| text.split_once(": ")).unwrap_or((&text, ""));
-        match error {
-            ExactError::Interrupted => Self::Interrupted("interrupted while solving; no result was written".to_owned()),
-            ExactError::Contradiction { .. } => Self::Internal(refused("internal", text, remedy)),
-            _ => Self::Data(refused("unsolvable", text, remedy)),
+        let reasons = |kind| refused(kind, error.text(), error.remedy());
+        match &error {
+            ExactError::Interrupted => Self::Interrupted(format!("{}; no result was written", error.text())),
+            ExactError::Contradiction { .. } => Self::Internal(reasons("internal")),
+            _ => Self::Data(reasons("unsolvable")),
         }
     }
 }

@@ -12,11 +12,11 @@ use super::{Bounded, ExactError, Law, LawRefusal, Shape};
 /// What is asked beyond probabilities, means and variances.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct Request {
-    /// Whether the law of end and time is wanted at all; quantiles and survival probabilities rest on it.
+    /// Whether the joint law of end and time is wanted.
     pub law: bool,
-    /// Probabilities whose quantiles are wanted.
+    /// Probabilities whose quantiles are wanted, which rest on the law of the time.
     pub levels: Vec<f64>,
-    /// Times whose survival probabilities are wanted.
+    /// Times whose survival probabilities are wanted, likewise.
     pub times: Vec<u64>,
 }
 
@@ -28,10 +28,9 @@ impl Request {
             match quantity {
                 Quantity::TimeQuantile(p) => request.levels.push(*p),
                 Quantity::SurvivalProbability(time) => request.times.push(*time),
-                Quantity::Law => {}
-                _ => continue,
+                Quantity::Law => request.law = true,
+                _ => {}
             }
-            request.law = true;
         }
         request
     }
@@ -44,6 +43,8 @@ pub struct Exact<'a> {
     linear: Linear,
     /// Ends that the start can reach.
     reachable: Vec<bool>,
+    /// The only time of all, if the moves leave just one.
+    only: Option<u64>,
     /// Only audits ask for it.
     support: OnceLock<Support>,
     law: Result<Law, LawRefusal>,
@@ -64,17 +65,20 @@ impl<'a> Exact<'a> {
     /// Each answer lies within its bounds; see [`crate::exact`].
     pub fn solve(model: &'a Model, request: &Request, progress: &dyn Progress) -> Result<Self, ExactError> {
         let chain = model.chain();
-        let linear = Linear::solve(chain, progress)?;
+        let mut linear = Linear::solve(chain, progress)?;
         let law = Law::of(chain, linear.mean.value, request, progress)?;
         let reachable =
             chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
-        let mut exact = Self { model, linear, reachable, support: OnceLock::new(), law, shape: Shape::constant(0.0) };
         let all: Vec<usize> = (0..chain.ends().len()).collect();
+        let only = only_time(chain, &all);
+        if let Some(time) = only {
+            linear.mean = Bounded::exactly(time as f64);
+            linear.variance = Bounded::exactly(0.0);
+        }
+        let shape = Shape::constant(0.0);
+        let mut exact = Self { model, linear, reachable, only, support: OnceLock::new(), law, shape };
         if let Some(shape) = exact.shape_given(&all) {
             exact.shape = shape;
-        }
-        if only_time(chain, &all).is_some() {
-            exact.linear.variance = Bounded::exactly(0.0);
         }
         Ok(exact)
     }
@@ -110,7 +114,7 @@ impl<'a> Exact<'a> {
         if (0..self.reachable.len()).all(|end| !self.reachable[end] || ends.contains(&end)) {
             return Bounded::exactly(1.0);
         }
-        Bounded::probability(self.summed(ends, 0), self.sum_error(ends, 0))
+        Bounded::probability(Bounded::relative(self.summed(ends, 0), self.sum_error(ends, 0)))
     }
 
     /// Mean time to the end, in clock units.
@@ -135,7 +139,7 @@ impl<'a> Exact<'a> {
             return Some(Bounded::exactly(time as f64));
         }
         let ratio = self.summed(ends, 1).over(self.summed(ends, 0));
-        Some(Bounded::relative(ratio, self.sum_error(ends, 0) + self.sum_error(ends, 1) + 15.0 * U2))
+        Bounded::relative(ratio, self.sum_error(ends, 0) + self.sum_error(ends, 1) + 15.0 * U2)
     }
 
     /// The only time at which replications that finish in any of these ends can do so, if the moves leave just one; `None`
@@ -197,8 +201,14 @@ impl<'a> Exact<'a> {
             Quantity::VarianceTime => Some(self.variance_time()),
             Quantity::SdTime => Some(self.variance_time().sqrt()),
             Quantity::MeanTimeGiven(name) => named(name).and_then(|ends| self.mean_time_given(&ends)),
-            Quantity::TimeQuantile(p) => self.law()?.quantile(*p),
-            Quantity::SurvivalProbability(time) => Some(self.law()?.survival(*time)),
+            Quantity::TimeQuantile(p) => match self.only {
+                Some(time) => Some(Bounded::exactly(time as f64)),
+                None => self.law()?.quantile(*p),
+            },
+            Quantity::SurvivalProbability(time) => Some(match self.only {
+                Some(only) => Bounded::exactly(if *time < only { 1.0 } else { 0.0 }),
+                None => self.law()?.survival(*time),
+            }),
             Quantity::Law => None,
         })
     }

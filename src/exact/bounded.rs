@@ -19,32 +19,39 @@ impl Bounded {
         Self { value, low: value, high: value }
     }
 
-    /// A double-double within `error` of the truth; `least` is a bound that the quantity obeys anyway.
-    pub(super) fn within(value: Dd, error: f64, least: f64) -> Self {
+    /// A double-double within `error` of a truth that is not negative; `None` when either is no finite number, which is
+    /// all that an overflow leaves.
+    pub(super) fn within(value: Dd, error: f64) -> Option<Self> {
+        if !(value.hi.is_finite() && value.lo.is_finite() && error.is_finite()) {
+            return None;
+        }
         if value.lo == 0.0 && error == 0.0 {
-            return Self::exactly(value.hi);
+            return Some(Self::exactly(value.hi));
         }
         // The comparisons hold a unit of slack, since the error itself is a rounded number.
         let slack = error * (1.0 + 1e-10) + f64::MIN_POSITIVE;
         let low = if value.lo >= slack { value.hi } else { outwards(value.hi, value.lo - slack) };
         let high = if value.lo <= -slack { value.hi } else { outwards(value.hi, value.lo + slack) };
-        Self { value: value.hi.max(least), low: low.max(least), high: high.max(least) }
+        Some(Self { value: value.hi.max(0.0), low: low.max(0.0), high: high.max(0.0) })
     }
 
-    /// A double-double within the share `relative` of a truth that is not negative.
-    pub(super) fn relative(value: Dd, relative: f64) -> Self {
-        Self::within(value, value.hi * relative * (1.0 + 1e-10), 0.0)
+    /// The same within the share `relative` of the truth.
+    pub(super) fn relative(value: Dd, relative: f64) -> Option<Self> {
+        Self::within(value, value.hi * relative * (1.0 + 1e-10))
     }
 
-    /// The same, for a probability.
-    pub(super) fn probability(value: Dd, relative: f64) -> Self {
-        let bounded = Self::relative(value, relative);
-        Self { value: bounded.value.min(1.0), low: bounded.low.min(1.0), high: bounded.high.min(1.0) }
+    /// The same for a truth that is a probability, of which at least that is known.
+    pub(super) fn probability(found: Option<Self>) -> Self {
+        let Self { value, low, high } = found.unwrap_or(Self { value: 0.5, low: 0.0, high: 1.0 });
+        Self { value: value.min(1.0), low: low.min(1.0), high: high.min(1.0) }
     }
 
     /// The square root, for an answer that is not negative.
     #[must_use]
     pub fn sqrt(self) -> Self {
+        if self.high == 0.0 {
+            return Self::exactly(0.0);
+        }
         let value = self.value.sqrt();
         Self { value, low: self.low.sqrt().next_down().max(0.0), high: self.high.sqrt().next_up() }
     }
@@ -72,14 +79,26 @@ mod tests {
 
     #[test]
     fn bounds_face_outwards_and_exact_numbers_have_none() {
-        assert_eq!(Bounded::within(Dd::of(21.0), 0.0, 0.0), Bounded::exactly(21.0));
-        let tight = Bounded::within(Dd { hi: 21.0, lo: 1e-17 }, 1e-25, 0.0);
+        assert_eq!(Bounded::within(Dd::of(21.0), 0.0), Some(Bounded::exactly(21.0)));
+        let tight = Bounded::within(Dd { hi: 21.0, lo: 1e-17 }, 1e-25).unwrap();
         assert_eq!(tight.low, 21.0);
         assert!(tight.high > 21.0 && tight.high <= 21.0f64.next_up().next_up());
-        let wide = Bounded::within(Dd::of(1e-3), 1e-2, 0.0);
+        let wide = Bounded::within(Dd::of(1e-3), 1e-2).unwrap();
         assert_eq!(wide.low, 0.0);
         assert!(wide.high > 1.1e-2);
         let root = Bounded::exactly(2.0).sqrt();
         assert!(root.low < root.value && root.value < root.high);
+        assert_eq!(Bounded::exactly(0.0).sqrt(), Bounded::exactly(0.0));
+    }
+
+    #[test]
+    fn an_overflow_is_never_an_answer() {
+        let overflown = Dd::of(1e300).times(Dd::of(1e300));
+        for (value, error) in
+            [(overflown, 0.0), (Dd::of(f64::INFINITY), 0.0), (Dd::ONE, f64::NAN), (Dd::ONE, f64::INFINITY)]
+        {
+            assert_eq!(Bounded::within(value, error), None);
+        }
+        assert_eq!(Bounded::probability(None), Bounded { value: 0.5, low: 0.0, high: 1.0 });
     }
 }

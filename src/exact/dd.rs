@@ -1,7 +1,7 @@
 //! Double-double arithmetic: an unevaluated sum `hi + lo` of two doubles, about 106 bits.
 //!
 //! With `u = 2⁻⁵³` and no underflow, the relative errors are at most 3 u² for sums of equal sign and for [`Dd::sum`] of any
-//! sign unless it cancels, 5 u² for products and 15 u² for quotients (Joldes, Muller & Popescu, ACM Trans. Math. Softw.
+//! signs, 5 u² for products and 15 u² for quotients (Joldes, Muller & Popescu, ACM Trans. Math. Softw.
 //! 44 (2017) 15, doi:10.1145/3121432, algorithms 5, 6, 10 and 17). Low-order terms use plain multiplications and
 //! additions, so machines with and without a fused multiply-add give the same bits.
 
@@ -12,6 +12,11 @@ use dashu_int::ops::BitTest;
 pub(super) const U2: f64 = 1.0 / (1u128 << 106) as f64;
 /// Units of `u²` that a probability loses when its exact weights become a [`Dd`]: two conversions and a quotient.
 pub(super) const INPUT: f64 = 18.0;
+
+/// Numbers below this could lose their low-order part to underflow.
+pub(super) const SMALLEST: f64 = 1.183_129_797_395_182_6e-271; // 2^-900
+/// Numbers above this could overflow within a product.
+pub(super) const LARGEST: f64 = 1.0 / SMALLEST;
 
 /// A number of about 106 bits.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]
@@ -114,6 +119,11 @@ impl Dd {
 
     pub(super) fn is_zero(self) -> bool {
         self.hi == 0.0
+    }
+
+    /// Whether a number that is not negative is zero or so far from underflow and overflow that the bounds hold.
+    pub(super) fn is_in_range(self) -> bool {
+        self.is_zero() || (SMALLEST..=LARGEST).contains(&self.hi)
     }
 
     pub(super) fn to_f64(self) -> f64 {

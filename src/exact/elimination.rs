@@ -4,8 +4,11 @@ use crate::model::{Chain, Progress, Row, Weights};
 
 use super::ExactError;
 use super::dd::{Dd, INPUT, U2, power_of_two};
-use super::envelope::{Class, Factor, Refusal, WORK_LIMIT, product};
+use super::envelope::{Class, ENTRIES_LIMIT, Factor, Refusal, WORK_LIMIT, product};
 use super::kernel::Kernel;
+
+/// Bytes of a double-double.
+const BYTES: u64 = 16;
 
 /// One move in double-double.
 #[derive(Debug, Clone, Copy)]
@@ -28,10 +31,24 @@ pub(super) fn probabilities(row: Row<'_>) -> impl Iterator<Item = Move> + '_ {
     row.targets.iter().enumerate().map(move |(i, to)| Move { to: *to, probability: at(i) })
 }
 
+/// The same, held to the range of the arithmetic.
+///
+/// # Errors
+/// [`ExactError::OutOfRange`].
+pub(super) fn usable_probabilities(chain: &Chain, row: Row<'_>) -> Result<Vec<Move>, ExactError> {
+    let usable = |one: Move| {
+        let is_usable = one.probability.is_in_range() && !one.probability.is_zero();
+        is_usable
+            .then_some(one)
+            .ok_or_else(|| ExactError::OutOfRange { example: chain.name(one.to as usize).to_owned() })
+    };
+    probabilities(row).map(usable).collect()
+}
+
 /// The factored chain: everything that is reachable and transient.
-#[derive(Debug)]
 pub(super) struct Elimination<'a> {
     chain: &'a Chain,
+    progress: &'a dyn Progress,
     factors: Vec<Factor>,
     /// Class and place in it of each state; `u32::MAX` for ends and unreachable states.
     class_of: Vec<u32>,
@@ -52,8 +69,9 @@ impl<'a> Elimination<'a> {
     /// Factors every class.
     ///
     /// # Errors
-    /// A class that would cost too much is refused before any work; numbers too small for the arithmetic are refused.
-    pub(super) fn of(chain: &'a Chain, progress: &dyn Progress) -> Result<Self, ExactError> {
+    /// A class that would cost too much is refused before its work; numbers too small for the arithmetic are refused, and
+    /// so is all when the user asks to stop.
+    pub(super) fn of(chain: &'a Chain, progress: &'a dyn Progress) -> Result<Self, ExactError> {
         let n = chain.states();
         let mut class_of = vec![u32::MAX; n];
         let mut place_of = vec![u32::MAX; n];
@@ -63,21 +81,17 @@ impl<'a> Elimination<'a> {
                 place_of[*state as usize] = place as u32;
             }
         }
-        let moves: Vec<Vec<Move>> = (0..n)
-            .map(|state| match class_of[state] {
-                u32::MAX => Vec::new(),
-                _ => probabilities(chain.row(state)).filter(|one| one.to as usize != state).collect(),
-            })
-            .collect();
+        let mut moves: Vec<Vec<Move>> = vec![Vec::new(); n];
+        for state in chain.components().iter().flatten().map(|state| *state as usize) {
+            moves[state] = usable_probabilities(chain, chain.row(state))?;
+            moves[state].retain(|one| one.to as usize != state);
+        }
         let widest = moves.iter().map(Vec::len).max().unwrap_or(0) + 1;
-        let mut all = Self { chain, factors: Vec::new(), class_of, place_of, moves, widest };
+        let mut all = Self { chain, progress, factors: Vec::new(), class_of, place_of, moves, widest };
         progress.begin("elimination", "states", Some(chain.components().iter().map(|class| class.len() as u64).sum()));
         let kernel = Kernel::new();
         for (number, states) in chain.components().iter().enumerate() {
-            if progress.interrupted() {
-                return Err(ExactError::Interrupted);
-            }
-            let factor = all.class(number, states).factor(kernel).map_err(|why| all.refused(why, states))?;
+            let factor = all.class(number, states).factor(kernel, progress).map_err(|why| all.refused(why, states))?;
             all.factors.push(factor);
             progress.advance(states.len() as u64);
         }
@@ -100,9 +114,20 @@ impl<'a> Elimination<'a> {
     fn refused(&self, why: Refusal, states: &[u32]) -> ExactError {
         let example = self.chain.name(states[0] as usize).to_owned();
         match why {
-            Refusal::TooLarge { states, work } => ExactError::TooLarge { states, example, work, limit: WORK_LIMIT },
+            Refusal::TooLarge(cost) => ExactError::TooLarge {
+                states: states.len(),
+                example,
+                work: (cost.work, WORK_LIMIT),
+                bytes: (cost.entries * BYTES, ENTRIES_LIMIT * BYTES),
+            },
             Refusal::OutOfRange => ExactError::OutOfRange { example },
+            Refusal::Interrupted => ExactError::Interrupted,
         }
+    }
+
+    /// Asked once a class, the longest unit of work in a solve.
+    fn go_on(&self) -> Result<(), ExactError> {
+        if self.progress.interrupted() { Err(ExactError::Interrupted) } else { Ok(()) }
     }
 
     pub(super) fn chain(&self) -> &Chain {
@@ -114,7 +139,7 @@ impl<'a> Elimination<'a> {
         &self.moves[state]
     }
 
-    /// Relative error, in units of u², of a sum over the moves of one state.
+    /// Relative error of a sum over the moves of one state.
     pub(super) fn row_sum_error(&self) -> f64 {
         U2 * (3.0 * self.widest as f64 + INPUT + 10.0)
     }
@@ -125,6 +150,7 @@ impl<'a> Elimination<'a> {
         let mut errors = vec![0.0f64; self.factors.len()];
         let mut worst = b.error;
         for (number, states) in self.chain.components().iter().enumerate().rev() {
+            self.go_on()?;
             let factor = &self.factors[number];
             let mut error = b.error;
             let mut right: Vec<Dd> = Vec::with_capacity(states.len());
@@ -156,6 +182,7 @@ impl<'a> Elimination<'a> {
         let mut arrived = vec![a.error; self.factors.len()];
         let mut worst = a.error;
         for (number, states) in self.chain.components().iter().enumerate() {
+            self.go_on()?;
             let factor = &self.factors[number];
             let mut right: Vec<Dd> = states.iter().map(|state| y[*state as usize]).collect();
             factor.solve_row(&mut right).map_err(|why| self.refused(why, states))?;
@@ -184,8 +211,10 @@ impl<'a> Elimination<'a> {
 mod tests {
     use dashu_ratio::RBig;
 
+    use std::sync::atomic::Ordering::SeqCst;
+
     use super::*;
-    use crate::model::{Draft, Silent};
+    use crate::model::{Draft, Model, Silent};
 
     /// The walk on `0..=top` that goes up with probability 9/10, state `i` at number `i − 1`.
     fn walk(top: usize) -> crate::model::Model {
@@ -254,8 +283,64 @@ mod tests {
         draft.start("s0");
         let model = draft.check().unwrap();
         match Elimination::of(model.chain(), &Silent) {
-            Err(ExactError::TooLarge { states, work, limit, .. }) => assert!(states == 6000 && work > limit),
+            Err(ExactError::TooLarge { states, work, .. }) => assert!(states == 6000 && work.0 > work.1),
             other => panic!("{:?}", other.err()),
         }
+    }
+
+    // Few operations, but half of all pairs of states would be kept.
+    #[test]
+    fn a_class_that_needs_too_much_memory_is_refused_before_any_work() {
+        let n = 20_000;
+        let mut draft = Draft::new("onwards or back to the start");
+        for i in 0..n {
+            let next = if i + 1 < n { format!("s{}", i + 1) } else { "end".to_owned() };
+            draft.moves(&format!("s{i}"), &next, "0.9999");
+            draft.moves(&format!("s{i}"), "s0", "rest");
+        }
+        draft.absorbing("end");
+        draft.start("s0");
+        let model = draft.check().unwrap();
+        match Elimination::of(model.chain(), &Silent) {
+            Err(ExactError::TooLarge { work, bytes, .. }) => assert!(work.0 < work.1 && bytes.0 > bytes.1),
+            other => panic!("{:?}", other.err()),
+        }
+    }
+
+    #[test]
+    fn probabilities_below_the_range_of_the_arithmetic_are_refused() {
+        for text in [
+            "start = \"a\"\nabsorbing = [\"x\", \"y\"]\n[moves]\na = { x = \"1e-350\", y = \"rest\" }\n",
+            "start = \"a\"\nabsorbing = [\"x\", \"y\"]\n[moves]\na = { x = \"1e-272\", y = \"rest\" }\n",
+            "start = \"a\"\nabsorbing = [\"y\"]\n[moves]\na = { a = \"1e-350\", y = \"rest\" }\n",
+        ] {
+            let model = Model::from_toml(text).unwrap();
+            let refused = Elimination::of(model.chain(), &Silent);
+            assert!(matches!(refused.err(), Some(ExactError::OutOfRange { .. })), "{text}");
+        }
+    }
+
+    #[test]
+    fn a_wish_to_stop_is_heard_inside_a_class_and_between_solves() {
+        struct Impatient(std::sync::atomic::AtomicU32);
+        impl Progress for Impatient {
+            fn begin(&self, _: &str, _: &str, _: Option<u64>) {}
+            fn advance(&self, _: u64) {}
+            fn end(&self) {}
+            fn interrupted(&self) -> bool {
+                self.0.fetch_update(SeqCst, SeqCst, |left| Some(left.saturating_sub(1))).unwrap_or_default() == 0
+            }
+        }
+        let model = walk(200);
+        let asked = |questions: u32| Impatient(questions.into());
+        let ones = Solution { of: vec![Dd::ONE; model.chain().states()], error: 0.0 };
+        // One question for each eight of the 199 states, then one for the solve.
+        for questions in [0, 24] {
+            assert_eq!(Elimination::of(model.chain(), &asked(questions)).err(), Some(ExactError::Interrupted));
+        }
+        let patient = asked(25);
+        let elimination = Elimination::of(model.chain(), &patient).unwrap();
+        assert_eq!(elimination.column(&ones).err(), Some(ExactError::Interrupted));
+        assert_eq!(elimination.row(&ones).err(), Some(ExactError::Interrupted));
     }
 }

@@ -14,13 +14,15 @@
 //! # Reference
 //! Grassmann, Taksar & Heyman, Oper. Res. 33 (1985) 1107, doi:10.1287/opre.33.5.1107.
 
-use super::dd::{Dd, INPUT, U2};
+use crate::model::Progress;
+
+use super::dd::{Dd, INPUT, SMALLEST, U2};
 use super::kernel::{Kernel, Stretch};
 
-/// Numbers below this could lose their low-order part to underflow.
-pub(super) const SMALLEST: f64 = 1.183_129_797_395_182_6e-271; // 2^-900
 /// Multiply-adds that one class may cost: 2,000 states when every row is full.
 pub(super) const WORK_LIMIT: u64 = 2_700_000_000;
+/// Numbers of the factor that one class may keep: 1 GB.
+pub(super) const ENTRIES_LIMIT: u64 = 1 << 26;
 
 /// The moves of one class in local numbers: for each state the moves inside the class and the sum of those out of it.
 #[derive(Debug)]
@@ -68,31 +70,49 @@ impl FactorRow {
 /// Why a class could not be eliminated.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Refusal {
-    /// The predicted number of multiply-adds passes the limit.
-    TooLarge { states: usize, work: u64 },
+    /// The predicted cost passes a limit.
+    TooLarge(Cost),
     /// Numbers became too small or too large for double-double arithmetic.
     OutOfRange,
+    /// The user asked to stop.
+    Interrupted,
+}
+
+/// What an elimination takes.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+pub(super) struct Cost {
+    /// Multiply-adds.
+    pub(super) work: u64,
+    /// Numbers kept.
+    pub(super) entries: u64,
+}
+
+impl Cost {
+    fn is_too_large(self) -> bool {
+        self.work > WORK_LIMIT || self.entries > ENTRIES_LIMIT
+    }
 }
 
 impl Class {
-    /// The order as given and its reverse with their predicted multiply-adds, the cheaper first.
-    fn orders(&self) -> [(Vec<u32>, u64); 2] {
+    /// The order as given and its reverse with their predicted costs, the better first.
+    fn orders(&self) -> [(Vec<u32>, Cost); 2] {
         let n = self.inside.len() as u32;
         let priced = |order: Vec<u32>| {
-            let work = self.work(&order);
-            (order, work)
+            let cost = self.cost(&order);
+            (order, cost)
         };
         let (forward, backward) = (priced((0..n).collect()), priced((0..n).rev().collect()));
-        if backward.1 < forward.1 { [backward, forward] } else { [forward, backward] }
+        let worth = |cost: Cost| (cost.is_too_large(), cost.work);
+        if worth(backward.1) < worth(forward.1) { [backward, forward] } else { [forward, backward] }
     }
 
-    /// Multiply-adds that the elimination will take in a given order, saturating above the limit.
-    fn work(&self, order: &[u32]) -> u64 {
+    /// What the elimination will take in a given order; counting ends far above the limits.
+    fn cost(&self, order: &[u32]) -> Cost {
         let position = inverse(order);
         // Last columns of finished rows that no later row exceeds: the widest row above a column is found by bisection.
         let mut tops: Vec<(usize, usize)> = Vec::new();
         let mut widths: Vec<u64> = vec![0];
-        let mut work = 0u64;
+        let mut cost = Cost::default();
         for (i, state) in order.iter().enumerate() {
             let columns = self.inside[*state as usize].iter().map(|(to, _)| position[*to as usize] as usize);
             let (first, mut last) = columns.fold((i, i), |(low, high), column| (low.min(column), high.max(column)));
@@ -100,9 +120,10 @@ impl Class {
                 let at = tops.partition_point(|(row, _)| *row < first);
                 last = last.max(tops.get(at).map_or(i, |(_, last)| *last));
             }
-            work = work.saturating_add(widths[i] - widths[first]);
-            if work > 64 * WORK_LIMIT {
-                return work;
+            cost.work += widths[i] - widths[first];
+            cost.entries += (last - first) as u64 + 1;
+            if cost.work > 64 * WORK_LIMIT {
+                return cost;
             }
             widths.push(widths[i] + (last - i) as u64 + 1);
             while tops.last().is_some_and(|(_, earlier)| *earlier <= last) {
@@ -110,34 +131,38 @@ impl Class {
             }
             tops.push((i, last));
         }
-        work
+        cost
     }
 
     /// Eliminates the class.
     ///
     /// # Errors
-    /// [`Refusal`] before any work when it would cost too much, or when numbers become too small or too large.
+    /// [`Refusal`] before any work when it would cost too much, when numbers become too small or too large, or when the
+    /// user asks to stop.
     ///
     /// # Complexity
     /// At most n³/3 multiply-adds for n states; n·b² for a band of width b.
-    pub(super) fn factor(&self, kernel: Kernel) -> Result<Factor, Refusal> {
-        let [(order, work), (other, other_work)] = self.orders();
-        if work > WORK_LIMIT {
-            return Err(Refusal::TooLarge { states: self.inside.len(), work });
+    pub(super) fn factor(&self, kernel: Kernel, progress: &dyn Progress) -> Result<Factor, Refusal> {
+        let [(order, cost), (other, other_cost)] = self.orders();
+        if cost.is_too_large() {
+            return Err(Refusal::TooLarge(cost));
         }
-        match self.factor_in(order, kernel) {
+        match self.factor_in(order, kernel, progress) {
             // Where a line drifts one way, the way out at its start vanishes from the other end but not from this one.
-            Err(Refusal::OutOfRange) if other_work <= WORK_LIMIT => self.factor_in(other, kernel),
+            Err(Refusal::OutOfRange) if !other_cost.is_too_large() => self.factor_in(other, kernel, progress),
             factored => factored,
         }
     }
 
-    fn factor_in(&self, order: Vec<u32>, kernel: Kernel) -> Result<Factor, Refusal> {
+    fn factor_in(&self, order: Vec<u32>, kernel: Kernel, progress: &dyn Progress) -> Result<Factor, Refusal> {
         let n = self.inside.len();
         let position = inverse(&order);
         let mut done = Finished::default();
         let mut widest = self.widest;
         for start in (0..n).step_by(ROWS_AT_ONCE) {
+            if progress.interrupted() {
+                return Err(Refusal::Interrupted);
+            }
             let batch = start..n.min(start + ROWS_AT_ONCE);
             let mut open: Vec<OpenRow> = batch.map(|i| self.open(order[i], &position)).collect();
             // A finished row is fetched once for the whole batch; each open row still meets them in ascending order.
@@ -298,7 +323,7 @@ impl Factor {
 
     fn give_back(&self, solution: &[Dd], into: &mut [Dd]) -> Result<(), Refusal> {
         for (state, value) in self.order.iter().zip(solution) {
-            if !value.hi.is_finite() || (value.hi != 0.0 && value.hi < SMALLEST) {
+            if !value.is_in_range() {
                 return Err(Refusal::OutOfRange);
             }
             into[*state as usize] = *value;
@@ -310,8 +335,8 @@ impl Factor {
 /// A product of numbers that are not negative, refused when it could lose its low-order part, or is too large.
 pub(super) fn product(a: Dd, b: Dd) -> Result<Dd, Refusal> {
     let p = a.times(b);
-    let vanishes = p.hi < SMALLEST && !a.is_zero() && !b.is_zero();
-    if vanishes || !p.hi.is_finite() { Err(Refusal::OutOfRange) } else { Ok(p) }
+    let vanishes = p.is_zero() && !a.is_zero() && !b.is_zero();
+    if vanishes || !p.is_in_range() { Err(Refusal::OutOfRange) } else { Ok(p) }
 }
 
 fn inverse(order: &[u32]) -> Vec<u32> {

@@ -1,40 +1,28 @@
 //! Why an exact answer is refused.
 
+use std::fmt;
+
 /// Why there are no exact answers.
-#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[derive(Debug, Clone, PartialEq)]
 #[non_exhaustive]
 pub enum ExactError {
-    /// A communicating class that would take too long to eliminate.
-    #[error(
-        "the communicating class of `{example}` has {states} states, which would take about {work:.1e} multiply-adds to \
-         eliminate; this version stops at {limit:.1e} (about 2,000 states that all lead to one another): list the states in an order in which \
-         moves lead to near ones, split the model, or wait for the sparse solver",
-        limit = *limit as f64, work = *work as f64
-    )]
+    /// A communicating class that would take too long, or too much memory, to eliminate.
     TooLarge {
         /// States of the class.
         states: usize,
         /// One of them.
         example: String,
-        /// Multiply-adds that it would take.
-        work: u64,
-        /// Multiply-adds that are allowed.
-        limit: u64,
+        /// Multiply-adds that it would take at least, and those that are allowed.
+        work: (u64, u64),
+        /// Bytes that it would take at least, and those that are allowed.
+        bytes: (u64, u64),
     },
-    /// Numbers below 2⁻⁹⁰⁰ occurred, where double-double arithmetic loses its bounds.
-    #[error(
-        "numbers below 1e-271 or above 1e308 occur around state `{example}`, where this version cannot keep its error bounds; \
-         check the smallest probabilities there, or leave out what cannot happen in practice"
-    )]
+    /// Numbers below 2⁻⁹⁰⁰ or above 2⁹⁰⁰ occurred, where double-double arithmetic loses its bounds.
     OutOfRange {
         /// A state of the class where they occurred.
         example: String,
     },
     /// The independent reference solver contradicts the elimination: an internal error.
-    #[error(
-        "internal error: elimination gives a mean time of {elimination:e} and the dense reference solver {reference:e}, \
-         which its conditioning does not explain; please report this model"
-    )]
     Contradiction {
         /// Mean time by elimination.
         elimination: f64,
@@ -42,9 +30,53 @@ pub enum ExactError {
         reference: f64,
     },
     /// The user asked to stop.
-    #[error("interrupted while solving")]
     Interrupted,
 }
+
+impl ExactError {
+    /// What is wrong, and where.
+    pub fn text(&self) -> String {
+        match self {
+            Self::TooLarge { states, example, work, bytes } => format!(
+                "the communicating class of `{example}` has {states} states and would take {:.1e} multiply-adds and {:.1e} \
+                 bytes to eliminate, beyond the {:.1e} and {:.1e} of this version (about 2,000 states that all lead to one \
+                 another)",
+                work.0 as f64, bytes.0 as f64, work.1 as f64, bytes.1 as f64
+            ),
+            Self::OutOfRange { example } => format!(
+                "numbers below 1e-271 or above 1e271 occur around state `{example}`, where this version cannot keep its error \
+                 bounds"
+            ),
+            Self::Contradiction { elimination, reference } => format!(
+                "internal error: elimination gives a mean time of {elimination:e} and the dense reference solver \
+                 {reference:e}, which its conditioning does not explain"
+            ),
+            Self::Interrupted => "interrupted while solving".to_owned(),
+        }
+    }
+
+    /// What can be done about it.
+    pub fn remedy(&self) -> &'static str {
+        match self {
+            Self::TooLarge { .. } => {
+                "list the states in an order in which moves lead to near ones, split the model, or wait for the sparse solver"
+            }
+            Self::OutOfRange { .. } => {
+                "check the smallest probabilities there, or leave out what cannot happen in practice"
+            }
+            Self::Contradiction { .. } => "please report this model",
+            Self::Interrupted => "start it again",
+        }
+    }
+}
+
+impl fmt::Display for ExactError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        write!(f, "{}; {}", self.text(), self.remedy())
+    }
+}
+
+impl std::error::Error for ExactError {}
 
 /// Why the law of the time is not there, while the other answers are.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]

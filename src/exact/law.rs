@@ -16,16 +16,18 @@ use crate::model::{Chain, Progress};
 
 use super::bounded::Bounded;
 use super::dd::{Dd, INPUT, U2};
-use super::elimination::probabilities;
+use super::steps::{Real, Steps};
+use super::support::{first_times, last_time};
 use super::{ExactError, LawRefusal, Request};
 
 /// What may be left at the horizon.
 const TAIL: f64 = 1e-9;
-/// Most mass between two edges, save in a single step.
+/// Most mass between two edges, save in a single step, unless so many ends are kept that it must be more.
 const CELL: f64 = 1.0 / 4096.0;
-/// Multiply-adds in doubles that a law may cost; one in double-double counts as six.
+/// Probabilities that are kept at most, ends times edges: 100 MB.
+const MOST_KEPT: f64 = (1 << 22) as f64;
+/// Multiply-adds in doubles that a law may cost.
 const BUDGET: f64 = 4e9;
-const DOUBLE_DOUBLE_COST: f64 = 6.0;
 /// Laws that are expected to cost less than this are computed in double-double.
 const DOUBLE_DOUBLE_BUDGET: f64 = 1e9;
 /// Steps that are kept at most: 64 MB.
@@ -41,122 +43,12 @@ pub struct Law {
     survival: Vec<f64>,
     /// Relative error of `survival[t]`: `errors.0 + t · errors.1`.
     errors: (f64, f64),
+    /// From this time on nothing is left, by the moves alone.
+    last: Option<u64>,
     edges: Vec<u64>,
     /// P(end = e, time ≤ edge), ends within edges.
     at_edges: Vec<Bounded>,
     ends: usize,
-}
-
-/// The arithmetic of the iteration.
-trait Real: Copy + Send {
-    const ZERO: Self;
-    /// Cost of a multiply-add, in multiply-adds of doubles.
-    const COST: f64;
-    fn of(value: Dd) -> Self;
-    fn dd(self) -> Dd;
-    fn plus(self, other: Self) -> Self;
-    fn times(self, other: Self) -> Self;
-    /// Relative error of one step when at most `d` moves lead into a state.
-    fn step_error(d: f64) -> f64;
-    /// Relative error of adding `n` numbers.
-    fn sum_error(n: f64) -> f64;
-}
-
-impl Real for f64 {
-    const ZERO: Self = 0.0;
-    const COST: f64 = 1.0;
-    fn of(value: Dd) -> Self {
-        value.to_f64()
-    }
-    fn dd(self) -> Dd {
-        Dd::of(self)
-    }
-    fn plus(self, other: Self) -> Self {
-        self + other
-    }
-    fn times(self, other: Self) -> Self {
-        self * other
-    }
-    fn step_error(d: f64) -> f64 {
-        (d + 2.5) * f64::EPSILON / 2.0
-    }
-    fn sum_error(n: f64) -> f64 {
-        (n + 1.0) * f64::EPSILON / 2.0
-    }
-}
-
-impl Real for Dd {
-    const ZERO: Self = Dd::ZERO;
-    const COST: f64 = DOUBLE_DOUBLE_COST;
-    fn of(value: Dd) -> Self {
-        value
-    }
-    fn dd(self) -> Dd {
-        self
-    }
-    fn plus(self, other: Self) -> Self {
-        Dd::plus(self, other)
-    }
-    fn times(self, other: Self) -> Self {
-        Dd::times(self, other)
-    }
-    fn step_error(d: f64) -> f64 {
-        (3.0 * d + INPUT + 6.0) * U2
-    }
-    fn sum_error(n: f64) -> f64 {
-        3.0 * (n + 1.0) * U2
-    }
-}
-
-/// Moves between reachable transient states, and into ends, in one numbering.
-struct Steps<T> {
-    offsets: Vec<usize>,
-    /// Transient states by their place; ends after them.
-    moves: Vec<(u32, T)>,
-    states: usize,
-    ends: usize,
-    /// Most moves into one state.
-    most: f64,
-}
-
-impl<T: Real> Steps<T> {
-    fn of(chain: &Chain) -> (Self, Vec<T>) {
-        let order: Vec<u32> = chain.components().iter().flatten().copied().collect();
-        let mut place = vec![u32::MAX; chain.states()];
-        order.iter().enumerate().for_each(|(at, state)| place[*state as usize] = at as u32);
-        let target = |state: u32| match chain.end_of(state as usize) {
-            Some(end) => (order.len() + end) as u32,
-            None => place[state as usize],
-        };
-        let mut steps =
-            Self { offsets: vec![0], moves: Vec::new(), states: order.len(), ends: chain.ends().len(), most: 0.0 };
-        let mut into = vec![0u32; order.len() + steps.ends];
-        for state in &order {
-            for one in probabilities(chain.row(*state as usize)) {
-                steps.moves.push((target(one.to), T::of(one.probability)));
-                into[target(one.to) as usize] += 1;
-            }
-            steps.offsets.push(steps.moves.len());
-        }
-        steps.most = f64::from(into.into_iter().max().unwrap_or(0));
-        let mut start = vec![T::ZERO; order.len() + steps.ends];
-        for one in probabilities(chain.start()) {
-            let at = target(one.to) as usize;
-            start[at] = start[at].plus(T::of(one.probability));
-        }
-        (steps, start)
-    }
-
-    /// One step: `after` becomes the distribution over states and what has newly entered each end.
-    fn take(&self, before: &[T], after: &mut [T]) {
-        after.fill(T::ZERO);
-        for (state, mass) in before[..self.states].iter().enumerate() {
-            for (to, probability) in &self.moves[self.offsets[state]..self.offsets[state + 1]] {
-                let cell = &mut after[*to as usize];
-                *cell = cell.plus(mass.times(*probability));
-            }
-        }
-    }
 }
 
 impl Law {
@@ -170,17 +62,19 @@ impl Law {
         request: &Request,
         progress: &dyn Progress,
     ) -> Result<Result<Self, LawRefusal>, ExactError> {
-        if !request.law {
+        if !request.law && request.levels.is_empty() && request.times.is_empty() {
             return Ok(Err(LawRefusal::NotRequested));
         }
         let moves: usize =
             chain.components().iter().flatten().map(|state| chain.row(*state as usize).targets.len()).sum();
+        // Every step also looks at every end.
+        let moves = moves + chain.ends().len();
         // An exponential tail falls below the limit after some twenty means.
         let expected = moves as f64 * mean * 21.0;
         if moves as f64 * mean > BUDGET || mean > LONGEST as f64 {
             return Ok(Err(refusal(moves, mean)));
         }
-        if expected * DOUBLE_DOUBLE_COST < DOUBLE_DOUBLE_BUDGET {
+        if expected * Dd::COST < DOUBLE_DOUBLE_BUDGET {
             Self::iterate::<Dd>(chain, moves, mean, request, progress)
         } else {
             Self::iterate::<f64>(chain, moves, mean, request, progress)
@@ -200,14 +94,20 @@ impl Law {
         let sum_error = (T::sum_error(states as f64) + INPUT * U2 + f64::EPSILON) * (1.0 + 1e-6);
         let longest = LONGEST.min((BUDGET / T::COST / (moves as f64 + states as f64)) as u64);
         let least_level = request.levels.iter().fold(1.0f64, |least, level| least.min((1.0 - level) * 0.5));
-        let last_time = request.times.iter().copied().max().unwrap_or(0);
+        let latest = request.times.iter().copied().max().unwrap_or(0);
+        // Asked often enough to answer at once, rarely enough to cost nothing.
+        let between_questions = ((1 << 16) / (moves as u64 + 1)).clamp(1, 1024);
         let mut law = Self {
             survival: Vec::new(),
             errors: (sum_error, step_error),
+            last: last_time(chain),
             edges: Vec::new(),
             at_edges: Vec::new(),
             ends,
         };
+        let firsts = if request.law { first_times(chain) } else { Vec::new() };
+        // Two edges a cell at most: one at its end, and one before a jump.
+        let cell = CELL.max(2.0 * ends as f64 / MOST_KEPT);
         let mut entered: Vec<T> = mass[states..].to_vec();
         let mut next = mass.clone();
         // What entered since the last edge.
@@ -217,11 +117,11 @@ impl Law {
         loop {
             let survival = mass[..states].iter().fold(T::ZERO, |sum, x| sum.plus(*x)).dd().hi;
             law.survival.push(survival);
-            if gathered > CELL {
-                law.edge(time, &entered, step_error, sum_error);
+            if request.law && gathered > cell {
+                law.edge(time, &entered, &firsts);
                 gathered = 0.0;
             }
-            let enough = survival < TAIL && survival < least_level && time >= last_time;
+            let enough = survival < TAIL && survival < least_level && time >= latest;
             if enough || survival == 0.0 || (time >= longest && survival < TAIL) {
                 break;
             }
@@ -229,8 +129,8 @@ impl Law {
                 progress.end();
                 return Ok(Err(refusal(moves, longest as f64)));
             }
-            if time % 1024 == 1023 {
-                progress.advance(1024);
+            if time.is_multiple_of(between_questions) {
+                progress.advance(between_questions);
                 if progress.interrupted() {
                     return Err(ExactError::Interrupted);
                 }
@@ -239,29 +139,32 @@ impl Law {
             std::mem::swap(&mut mass, &mut next);
             let fresh = mass[states..].iter().map(|x| x.dd().hi).sum::<f64>();
             // Also before a jump out of nothing, so that its cell holds a single time.
-            if gathered + fresh > CELL && law.edges.last() != Some(&time) {
-                law.edge(time, &entered, step_error, sum_error);
+            if request.law && gathered + fresh > cell && law.edges.last() != Some(&time) {
+                law.edge(time, &entered, &firsts);
                 gathered = 0.0;
             }
             gathered += fresh;
             entered.iter_mut().zip(&mass[states..]).for_each(|(sum, x)| *sum = sum.plus(*x));
             time += 1;
         }
-        if law.edges.last() != Some(&time) {
-            law.edge(time, &entered, step_error, sum_error);
+        if request.law && law.edges.last() != Some(&time) {
+            law.edge(time, &entered, &firsts);
         }
         progress.end();
         Ok(Ok(law))
     }
 
-    fn edge<T: Real>(&mut self, time: u64, entered: &[T], step_error: f64, sum_error: f64) {
+    /// Keeps what has entered each end up to a time; `firsts` are the times from which that is possible at all.
+    fn edge<T: Real>(&mut self, time: u64, entered: &[T], firsts: &[Option<u64>]) {
+        let (sum_error, step_error) = self.errors;
         let relative = (time as f64 + 1.0) * (step_error + T::sum_error(1.0)) + sum_error;
         self.edges.push(time);
-        self.at_edges.extend(entered.iter().map(|sum| {
+        self.at_edges.extend(entered.iter().zip(firsts).map(|(sum, first)| {
+            if first.is_none_or(|first| time < first) {
+                return Bounded::exactly(0.0);
+            }
             let sum = sum.dd();
-            let error = if sum.is_zero() { 0.0 } else { sum.hi * relative + UNDERFLOW };
-            let bounded = Bounded::within(sum, error, 0.0);
-            Bounded { value: bounded.value.min(1.0), low: bounded.low.min(1.0), high: bounded.high.min(1.0) }
+            Bounded::probability(Bounded::within(sum, sum.hi * relative + UNDERFLOW))
         }));
     }
 
@@ -272,22 +175,22 @@ impl Law {
 
     /// P(time > t). Beyond the horizon the bounds are 0 and what was left there.
     pub fn survival(&self, time: u64) -> Bounded {
+        if self.last.is_some_and(|last| last <= time) {
+            return Bounded::exactly(0.0);
+        }
         let at = time.min(self.horizon());
         let value = self.survival[at as usize];
-        if value == 0.0 {
-            // Nothing was left, unless it vanished in underflow.
-            let high = if at == 0 || self.errors.1 == 0.0 { 0.0 } else { UNDERFLOW };
-            return Bounded { value: 0.0, low: 0.0, high };
-        }
         let error = value * (self.errors.0 + at as f64 * self.errors.1) + UNDERFLOW;
-        let bounded = Bounded::within(Dd::of(value), error, 0.0);
-        let bounded = Bounded { value: bounded.value.min(1.0), low: bounded.low.min(1.0), high: bounded.high.min(1.0) };
+        let bounded = Bounded::probability(Bounded::within(Dd::of(value), error));
         if time > at { Bounded { value: 0.5 * bounded.high, low: 0.0, ..bounded } } else { bounded }
     }
 
     /// P(time ≤ t), as survival is.
     pub fn at_or_below(&self, time: u64) -> Bounded {
         let survival = self.survival(time);
+        if survival.high == 0.0 {
+            return Bounded::exactly(1.0);
+        }
         let value = 1.0 - survival.value;
         let low = (1.0 - survival.high).next_down().max(0.0);
         let high = (1.0 - survival.low).next_up().min(1.0);
@@ -306,7 +209,8 @@ impl Law {
     }
 
     /// Ascending times, the last of them the horizon, at which P(end = e, time ≤ t) was kept: so close that no more than
-    /// 1/4096 of all outcomes lies between two of them, unless they are neighbouring times.
+    /// 1/4096 of all outcomes lies between two of them, unless they are neighbouring times; beyond 500 ends the cells grow
+    /// with their number. None when the joint law was not asked for.
     pub fn edges(&self) -> &[u64] {
         &self.edges
     }
@@ -337,12 +241,15 @@ fn refusal(moves: usize, steps: f64) -> LawRefusal {
 
 #[cfg(test)]
 mod tests {
+    use dashu_ratio::RBig;
+
     use super::*;
-    use crate::model::{Model, Silent};
+    use crate::model::{Draft, Model, Silent};
 
     fn law<T: Real>(text: &str, request: &Request) -> Law {
         let model = Model::from_toml(text).unwrap();
-        Law::iterate::<T>(model.chain(), 10, 10.0, request, &Silent).unwrap().unwrap()
+        let request = Request { law: true, ..request.clone() };
+        Law::iterate::<T>(model.chain(), 10, 10.0, &request, &Silent).unwrap().unwrap()
     }
 
     const COIN: &str = "start = \"a\"\nabsorbing = [\"x\", \"y\"]\n[moves]\na = { a = 0.5, x = 0.25, y = 0.25 }\n";
@@ -371,6 +278,118 @@ mod tests {
         assert_eq!(law.quantile(0.9).unwrap(), Bounded::exactly(4.0));
         assert_eq!(law.quantile(0.999_999_999_999).unwrap(), Bounded::exactly(40.0));
         assert_eq!(law.quantile(1.0), None);
+    }
+
+    /// The law of a chain in fractions, step by step: the mass of each state, ends keeping what enters them.
+    fn in_fractions(chain: &Chain, steps: usize) -> Vec<Vec<RBig>> {
+        let mut mass = vec![RBig::ZERO; chain.states()];
+        let start = chain.start();
+        start.targets.iter().enumerate().for_each(|(i, to)| mass[*to as usize] += start.probability(i));
+        let mut all = vec![mass];
+        for _ in 0..steps {
+            let before = &all[all.len() - 1];
+            let mut after = vec![RBig::ZERO; chain.states()];
+            for (state, here) in before.iter().enumerate() {
+                let row = chain.row(state);
+                if chain.end_of(state).is_some() {
+                    after[state] += here;
+                }
+                row.targets.iter().enumerate().for_each(|(i, to)| after[*to as usize] += row.probability(i) * here);
+            }
+            all.push(after);
+        }
+        all
+    }
+
+    // Weights that no double holds, so that every step rounds in both arithmetics.
+    #[test]
+    fn both_arithmetics_hold_the_law_in_fractions() {
+        let text = "start = { a = \"1/3\", b = \"2/7\", c = \"rest\" }\nabsorbing = [\"x\", \"y\"]\n[moves]\n\
+            a = { a = \"2/3\", b = \"1/7\", x = \"1/97\", c = \"rest\" }\nb = { c = \"5/11\", a = \"3/13\", y = \"rest\" }\n\
+            c = { c = \"9/10\", a = \"1/19\", x = \"rest\" }\n";
+        let model = Model::from_toml(text).unwrap();
+        let chain = model.chain();
+        let truth = in_fractions(chain, 120);
+        let holds = |found: Bounded, truth: &RBig| {
+            let exactly = |value: f64| RBig::try_from(value).unwrap();
+            assert!(
+                exactly(found.low) <= *truth && *truth <= exactly(found.high),
+                "{found:?} {}",
+                truth.to_f64().value()
+            );
+            (found.high - found.low) / found.value
+        };
+        let mut widths = Vec::new();
+        for law in [law::<Dd>(text, &Request::default()), law::<f64>(text, &Request::default())] {
+            let mut widest = 0.0f64;
+            for (time, mass) in truth.iter().enumerate() {
+                let left = (0..chain.states()).filter(|state| chain.end_of(*state).is_none());
+                let survival = left.fold(RBig::ZERO, |sum, state| sum + &mass[state]);
+                widest = widest.max(holds(law.survival(time as u64), &survival));
+                if let Ok(edge) = law.edges().binary_search(&(time as u64)) {
+                    for (end, found) in chain.ends().iter().enumerate() {
+                        widest = widest.max(holds(law.at_edge(end, edge), &mass[found.states[0]]));
+                    }
+                }
+            }
+            widths.push(widest);
+        }
+        assert!(widths[0] < 2e-15 && widths[1] < 1e-12 && widths[1] > 2.0 * widths[0], "{widths:?}");
+    }
+
+    // 120 steps of a thousandth within 150: about 1e-330, which no double holds and which is not zero.
+    #[test]
+    fn what_underflows_is_not_impossible() {
+        let mut draft = Draft::new("line");
+        for i in 0..120 {
+            draft.moves(&format!("l{i}"), &if i < 119 { format!("l{}", i + 1) } else { "y".to_owned() }, "0.001");
+            draft.moves(&format!("l{i}"), &format!("l{i}"), "rest");
+        }
+        for i in 0..150 {
+            draft.moves(&format!("d{i}"), &if i < 149 { format!("d{}", i + 1) } else { "x".to_owned() }, "1");
+        }
+        draft.absorbing("x");
+        draft.absorbing("y");
+        draft.start_with("l0", "0.5");
+        draft.start_with("d0", "0.5");
+        let model = draft.check().unwrap();
+        let request = Request { law: true, ..Request::default() };
+        let law = Law::iterate::<f64>(model.chain(), 1, 1e5, &request, &Silent).unwrap().unwrap();
+        let at = |time| law.edges().binary_search(&time).unwrap();
+        let [x, y] = ["x", "y"].map(|name| model.ends_named(name).unwrap()[0]);
+        assert_eq!(law.at_edge(y, at(149)).low, 0.0);
+        assert!(law.at_edge(y, at(149)).high > 0.0);
+        assert_eq!(law.at_edge(x, at(149)), Bounded::exactly(0.0));
+        assert!(law.at_edge(x, at(150)).contains(0.5));
+    }
+
+    #[test]
+    fn a_time_that_is_over_by_the_moves_is_over_exactly() {
+        let text = "start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = { b = \"1/3\", x = \"rest\" }\nb = { x = 1 }\n";
+        let law = law::<f64>(text, &Request::default());
+        assert_eq!(law.survival(2), Bounded::exactly(0.0));
+        assert_eq!(law.at_or_below(7), Bounded::exactly(1.0));
+        assert!(law.survival(1).low > 0.333);
+    }
+
+    #[test]
+    fn many_ends_widen_the_cells_and_without_the_joint_law_there_are_none() {
+        let mut draft = Draft::new("wide");
+        let ends = 30_000;
+        for i in 0..ends {
+            draft.moves("a", &format!("e{i}"), "1/60000");
+            draft.absorbing(&format!("e{i}"));
+        }
+        draft.moves("a", "a", "rest");
+        draft.start("a");
+        let model = draft.check().unwrap();
+        let law = |law| {
+            let request = Request { law, levels: vec![0.5], times: vec![] };
+            Law::of(model.chain(), 2.0, &request, &Silent).unwrap().unwrap()
+        };
+        let kept = law(true).at_edges.len();
+        assert!(kept as f64 <= MOST_KEPT && kept >= 2 * ends, "{kept}");
+        assert!(law(false).edges().is_empty() && law(false).quantile(0.5).is_some());
     }
 
     #[test]

@@ -3,8 +3,8 @@
 use crate::model::{Chain, Progress};
 
 use super::bounded::Bounded;
-use super::dd::{Dd, INPUT, U2};
-use super::elimination::{Elimination, Solution, probabilities};
+use super::dd::{Dd, INPUT, SMALLEST, U2};
+use super::elimination::{Elimination, Solution, usable_probabilities};
 use super::reference;
 use super::shape::ORDERS;
 use super::{ExactError, envelope};
@@ -27,10 +27,10 @@ pub(super) struct Linear {
 }
 
 /// The start, over states.
-fn start(chain: &Chain) -> Solution {
+fn start(chain: &Chain) -> Result<Solution, ExactError> {
     let mut of = vec![Dd::ZERO; chain.states()];
-    probabilities(chain.start()).for_each(|one| of[one.to as usize] = one.probability);
-    Solution { of, error: U2 * INPUT }
+    usable_probabilities(chain, chain.start())?.iter().for_each(|one| of[one.to as usize] = one.probability);
+    Ok(Solution { of, error: U2 * INPUT })
 }
 
 /// The sum of products over `terms` of two numbers that are not negative, with the error that the summation adds.
@@ -45,9 +45,9 @@ fn sum_of_products(terms: impl Iterator<Item = (Dd, Dd)>) -> (Dd, f64) {
 
 impl Linear {
     pub(super) fn solve(chain: &Chain, progress: &dyn Progress) -> Result<Self, ExactError> {
+        let start = start(chain)?;
         let elimination = Elimination::of(chain, progress)?;
         let transient: Vec<usize> = chain.components().iter().flatten().map(|state| *state as usize).collect();
-        let start = start(chain);
         let ones = Solution { of: vec![Dd::ONE; chain.states()], error: 0.0 };
         let times = elimination.column(&ones)?;
         let begins: Vec<usize> = chain.start().targets.iter().map(|state| *state as usize).collect();
@@ -55,10 +55,9 @@ impl Linear {
         let mean_error = start.error + times.error + adding;
 
         let mut visits = elimination.row(&start)?;
-        let variance = variance(&elimination, &transient, &start, &times, &visits, mean, mean_error);
-        if !variance.high.is_finite() {
-            return Err(ExactError::OutOfRange { example: chain.name(begins[0]).to_owned() });
-        }
+        let around_start = || ExactError::OutOfRange { example: chain.name(begins[0]).to_owned() };
+        let mean_bound = Bounded::relative(mean, mean_error).ok_or_else(around_start)?;
+        let squares = squares(&elimination, &transient, &start, &times, &visits, (mean, mean_error))?;
         let mut ends = vec![RisingSums::default(); chain.ends().len()];
         let mut errors = Vec::new();
         for order in 0..ORDERS {
@@ -77,7 +76,13 @@ impl Linear {
                 Err(refused) => return Err(refused),
             }
         }
-        let mean_bound = Bounded::relative(mean, mean_error);
+        for (end, sums) in chain.ends().iter().zip(&ends).filter(|(_, sums)| !sums.of[0].is_zero()) {
+            if !sums.of[1].over(sums.of[0]).is_in_range() {
+                return Err(ExactError::OutOfRange { example: end.name.clone() });
+            }
+        }
+        let variance = squares.narrower(second_moment(&ends, &errors, (mean, mean_error)));
+        let variance = variance.ok_or_else(around_start)?;
         reference::confirm(chain, &transient, mean_bound)?;
         Ok(Self { ends, errors, mean: mean_bound, variance })
     }
@@ -109,22 +114,49 @@ fn rising_sums(
     Ok(visits.error + U2 * (3.0 * f64::from(most) + INPUT + 5.0))
 }
 
+/// A variance with an absolute error, before it is an answer.
+#[derive(Debug, Clone, Copy)]
+struct Variance {
+    value: Dd,
+    error: f64,
+}
+
+impl Variance {
+    /// The answer of the smaller error; `None` when neither is a finite number.
+    fn narrower(self, other: Option<Self>) -> Option<Bounded> {
+        let better =
+            other.filter(|other| other.value.hi.is_finite() && (!self.error.is_finite() || other.error < self.error));
+        let Self { value, error } = better.unwrap_or(self);
+        Bounded::within(value, error)
+    }
+}
+
+/// `Var T = 2 E[C(T + 1, 2)] − m − m²`: it cancels where the time hardly varies, but its error does not grow with the mean.
+fn second_moment(ends: &[RisingSums], errors: &[f64], (mean, mean_error): (Dd, f64)) -> Option<Variance> {
+    let sum = ends.iter().try_fold(Dd::ZERO, |sum, end| Some(sum.plus(*end.of.get(2)?)))?;
+    let (twice, square) = (sum.times(Dd::of(2.0)), mean.times(mean));
+    let value = twice.minus(mean).minus(square);
+    let sum_error = errors.get(2)? + U2 * 3.0 * ends.len() as f64;
+    let sizes = twice.hi + mean.hi + square.hi;
+    let error = twice.hi * sum_error + (mean.hi + 2.0 * square.hi) * mean_error + 16.0 * U2 * sizes;
+    Some(Variance { value, error: error * (1.0 + 1e-10) })
+}
+
 /// `Var T = y·g + Σ α_i (h_i − m)²`, where `g_i = Σ_j p_ij (1 + h_j − h_i)²`: a sum of squares, so that only the deviations
 /// cancel, and each of those is held to its absolute error.
-fn variance(
+fn squares(
     elimination: &Elimination<'_>,
     transient: &[usize],
     start: &Solution,
     times: &Solution,
     visits: &Solution,
-    mean: Dd,
-    mean_error: f64,
-) -> Bounded {
+    (mean, mean_error): (Dd, f64),
+) -> Result<Variance, ExactError> {
     let chain = elimination.chain();
     let mut total = Squares::default();
     for state in transient {
         let own = times.of[*state];
-        for one in probabilities(chain.row(*state)) {
+        for one in usable_probabilities(chain, chain.row(*state))? {
             let after = if chain.end_of(one.to as usize).is_some() { Dd::ZERO } else { times.of[one.to as usize] };
             // A stay, and any move between states of equal mean, deviates by exactly one step.
             let (deviation, off) = if after == own {
@@ -136,7 +168,7 @@ fn variance(
             total.add(one.probability.times(visits.of[*state]), deviation, off);
         }
     }
-    for one in probabilities(chain.start()) {
+    for one in usable_probabilities(chain, chain.start())? {
         let own = if chain.end_of(one.to as usize).is_some() { Dd::ZERO } else { times.of[one.to as usize] };
         if own != mean {
             let off = times.error * own.hi + mean_error * mean.hi + 8.0 * U2 * (own.hi + mean.hi);
@@ -146,7 +178,7 @@ fn variance(
         }
     }
     let relative = visits.error + U2 * (INPUT + 20.0 + 3.0 * total.terms);
-    Bounded::within(total.sum, total.absolute + total.sum.hi * relative * (1.0 + 1e-10), 0.0)
+    Ok(Variance { value: total.sum, error: total.absolute + total.sum.hi * relative * (1.0 + 1e-10) })
 }
 
 /// A weighted sum of squares of numbers that are known within absolute errors.
@@ -159,9 +191,15 @@ struct Squares {
 
 impl Squares {
     fn add(&mut self, weight: Dd, deviation: Dd, off: f64) {
-        self.sum = self.sum.plus(weight.times(deviation.times(deviation)));
         // (d ± off)² is within 2 |d| off + off² of d²; the factor covers the rounding of these few operations.
-        self.absolute += weight.hi * off * (2.0 * deviation.hi.abs() + off) * (1.0 + 1e-10);
+        let slack = off * (2.0 * deviation.hi.abs() + off) * (1.0 + 1e-10);
+        if weight.hi < SMALLEST {
+            // Such a weight has no relative bound: all that its term can be is counted as error.
+            self.absolute += SMALLEST * (deviation.hi * deviation.hi + slack) * (1.0 + 1e-9);
+        } else {
+            self.sum = self.sum.plus(weight.times(deviation.times(deviation)));
+            self.absolute += weight.hi * slack;
+        }
         self.terms += 1.0;
     }
 }

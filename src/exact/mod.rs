@@ -5,7 +5,7 @@
 //!
 //! **Limits.** The clock counts steps. A communicating class of transient states may be as large as 2,000 states that all
 //! lead to one another, or much larger when moves lead only to states near in the order of the model; larger ones are
-//! refused before any work. The law is refused when it would take more than some seconds. This room knows nothing of the
+//! refused before any work, by time or by memory (1 GB). The law is refused when it would take more than some seconds. This room knows nothing of the
 //! sampler, so that a comparison does not test code against itself.
 //!
 //! ```
@@ -30,7 +30,8 @@
 //! the moves into ends, a column solve gives the mean times h = N 1, and row solves give y = α N, α N², …; then
 //!
 //! - P(end e) = α_e + Σ_i y_i R_ie and E\[T; e\] = Σ_i (α N²)_i R_ie;
-//! - Var T = Σ_i y_i Σ_j p_ij (1 + h_j − h_i)² + Σ_i α_i (h_i − E T)², a sum of squares.
+//! - Var T = Σ_i y_i Σ_j p_ij (1 + h_j − h_i)² + Σ_i α_i (h_i − E T)², a sum of squares; and Var T = 2 E\[C(T + 1, 2)\] −
+//!   E T − (E T)², which is better where the mean is beyond 1e30. The one of the smaller proven error is the answer.
 //!
 //! # Why the bounds hold
 //! Let u = 2⁻⁵³. Sums, products and quotients of double-doubles that are not negative lose at most 3 u², 5 u² and 15 u²
@@ -57,7 +58,8 @@
 //! the sum of squares the error Σ y_i p_ij (2 |d| δ + δ²) besides the relative one of its weights.
 //!
 //! All this is first order in quantities below 1e-12; a factor 1 + 1e-10 and outward rounding to doubles cover the rest.
-//! Numbers below 2⁻⁹⁰⁰ are refused where they occur, since underflow would void the relative bounds.
+//! Numbers below 2⁻⁹⁰⁰ or above 2⁹⁰⁰ are refused where they occur, given probabilities included, since underflow and overflow
+//! would void the relative bounds. In the sum of squares, weights below that count as error instead.
 //! `tests/exact_properties.rs` holds all of it against fractions, leave probabilities of 1e-18 included.
 //!
 //! A second solution of small chains by dense LU, in doubles, stands beside the elimination: a contradiction that the
@@ -80,6 +82,7 @@ mod law;
 mod linear;
 mod reference;
 mod shape;
+mod steps;
 mod support;
 
 pub use answers::{Exact, Request};

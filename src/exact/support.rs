@@ -82,12 +82,57 @@ impl Support {
     }
 }
 
+/// The first time at which each end can be entered; `None` for one that the start cannot reach.
+///
+/// # Complexity
+/// Linear in states and moves.
+pub(super) fn first_times(chain: &Chain) -> Vec<Option<u64>> {
+    let mut firsts = vec![None; chain.ends().len()];
+    let mut seen = vec![false; chain.states()];
+    let mut now = chain.start().targets.to_vec();
+    for time in 0.. {
+        let mut next = Vec::new();
+        for state in now {
+            if let Some(end) = chain.end_of(state as usize) {
+                firsts[end].get_or_insert(time);
+            } else if !std::mem::replace(&mut seen[state as usize], true) {
+                next.extend_from_slice(chain.row(state as usize).targets);
+            }
+        }
+        if next.is_empty() {
+            break;
+        }
+        now = next;
+    }
+    firsts
+}
+
+/// The time by which every replication has finished; `None` when some cycle or stay leaves none.
+///
+/// # Complexity
+/// Linear in states and moves.
+pub(super) fn last_time(chain: &Chain) -> Option<u64> {
+    // Steps that may follow, over classes from last to first.
+    let mut follow = vec![0u64; chain.states()];
+    for class in chain.components().iter().rev() {
+        let [state] = class[..] else { return None };
+        let targets = chain.row(state as usize).targets;
+        if targets.contains(&state) {
+            return None;
+        }
+        follow[state as usize] = 1 + targets.iter().map(|to| follow[*to as usize]).max().unwrap_or(0);
+    }
+    chain.start().targets.iter().map(|state| follow[*state as usize]).max()
+}
+
 /// The only time at which the given ends can be entered, if the moves leave just one.
 ///
 /// # Complexity
 /// Linear in states and moves.
 pub(super) fn only_time(chain: &Chain, ends: &[usize]) -> Option<u64> {
-    let wanted = |state: usize| chain.end_of(state).is_some_and(|end| ends.contains(&end));
+    let mut wanted_ends = vec![false; chain.ends().len()];
+    ends.iter().for_each(|end| wanted_ends[*end] = true);
+    let wanted = |state: usize| chain.end_of(state).is_some_and(|end| wanted_ends[end]);
     // States that can still reach the ends, classes from last to first; inside a class all or none can.
     let mut leads = vec![false; chain.states()];
     for class in chain.components().iter().rev() {
@@ -154,6 +199,7 @@ mod tests {
         }
         assert!(support.is_possible(0, 1 << 60) && !support.is_possible(0, (1 << 60) + 1));
         assert_eq!(only_time(walk.chain(), &[0]), None);
+        assert_eq!((first_times(walk.chain()), last_time(walk.chain())), (vec![Some(2), Some(3)], None));
     }
 
     #[test]
@@ -165,9 +211,11 @@ mod tests {
         assert_eq!(only_time(fixed.chain(), &[0]), Some(2));
         assert_eq!(only_time(fixed.chain(), &[1]), Some(3));
         assert_eq!(only_time(fixed.chain(), &[0, 1]), None);
+        assert_eq!((first_times(fixed.chain()), last_time(fixed.chain())), (vec![Some(2), Some(3)], Some(3)));
         let support = Support::of(fixed.chain());
         assert!(support.is_possible(0, 2) && !support.is_possible(0, 3) && !support.is_possible(1, 1000));
         let stay = model("start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = { a = 0.5, x = 0.5 }\n");
         assert_eq!(only_time(stay.chain(), &[0]), None);
+        assert_eq!((first_times(stay.chain()), last_time(stay.chain())), (vec![Some(1)], None));
     }
 }

@@ -1,6 +1,9 @@
 //! Numbers as people read them.
 
+use dashu_ratio::RBig;
+
 use crate::exact::Bounded;
+use crate::model::Number;
 
 /// A number to some significant digits, without trailing zeros; plain decimals for usual sizes, an exponent beyond.
 ///
@@ -13,6 +16,9 @@ use crate::exact::Bounded;
 pub fn rounded(value: f64, digits: usize) -> String {
     if value == 0.0 {
         return "0".to_owned();
+    }
+    if value.is_nan() {
+        return "undefined".to_owned();
     }
     if value.is_infinite() {
         return if value > 0.0 { "infinity" } else { "-infinity" }.to_owned();
@@ -47,12 +53,49 @@ fn trimmed(digits: &str) -> &str {
 /// use tallystone::report::proven;
 /// assert_eq!(proven(Bounded { value: 0.123_456, low: 0.123_452, high: 0.123_461 }, 10), "0.1235");
 /// assert_eq!(proven(Bounded { value: 0.2, low: 0.199_999_999_999_999_98, high: 0.2 }, 17), "0.2");
+/// assert_eq!(proven(Bounded { value: 0.5, low: 0.014_9, high: 1.0 }, 10), "0.014 to 1");
 /// ```
 pub fn proven(answer: Bounded, digits: usize) -> String {
     let agreed = (2..=digits).rev().find(|digits| rounded(answer.low, *digits) == rounded(answer.high, *digits));
     match agreed {
         Some(digits) => rounded(answer.value, digits),
-        None => format!("{} to {}", rounded(answer.low, 2), rounded(answer.high, 2)),
+        None => format!("{} to {}", outwards(answer.low, false), outwards(answer.high, true)),
+    }
+}
+
+/// A number to two digits that lies not above it, or not below it.
+fn outwards(value: f64, up: bool) -> String {
+    let text = rounded(value, 2);
+    let shown: f64 = text.parse().unwrap_or(value);
+    if if up { shown >= value } else { shown <= value } {
+        return text;
+    }
+    // Half a unit of the second digit further, the nearest such number lies on the right side.
+    let half = 0.5 * 10f64.powf(value.abs().log10().floor() - 1.0);
+    rounded(if up { value + half } else { value - half }, 2)
+}
+
+/// How far the truth can be from the number that [`proven`] shows, rounded up: ahead of it comes what the shown digits
+/// leave out.
+///
+/// ```
+/// use tallystone::exact::Bounded;
+/// use tallystone::report::proven_within;
+/// assert_eq!(proven_within(Bounded::exactly(42.0), 17), "exactly");
+/// assert_eq!(proven_within(Bounded { value: 0.2, low: 0.199_999_999_999_999_98, high: 0.2 }, 17), "± 1.7e-17");
+/// assert_eq!(proven_within(Bounded { value: 1.0, low: 1.0, high: 2.0 }, 17), "between these");
+/// ```
+pub fn proven_within(answer: Bounded, digits: usize) -> String {
+    let ratio = |value: f64| RBig::try_from(value).ok();
+    let shown = Number::parse(&proven(answer, digits)).ok().map(|number| number.to_ratio());
+    let (Some(shown), Some(low), Some(high)) = (shown, ratio(answer.low), ratio(answer.high)) else {
+        return "between these".to_owned();
+    };
+    let farthest = (high - &shown).max(shown - low);
+    if farthest <= RBig::ZERO {
+        "exactly".to_owned()
+    } else {
+        format!("± {}", outwards(farthest.to_f64().value().next_up(), true))
     }
 }
 
@@ -91,6 +134,7 @@ mod tests {
             (2e17, 6, "2e17"),
             (1e300, 3, "1e300"),
             (f64::INFINITY, 3, "infinity"),
+            (f64::NAN, 3, "undefined"),
         ] {
             assert_eq!(rounded(value, digits), text, "{value}");
         }
@@ -102,5 +146,25 @@ mod tests {
     fn an_answer_that_proves_no_digit_shows_its_range() {
         assert_eq!(proven(Bounded { value: 1.0, low: 0.0, high: 2.0 }, 10), "0 to 2");
         assert_eq!(proven(Bounded::exactly(42.0), 10), "42");
+    }
+
+    #[test]
+    fn a_range_is_rounded_away_from_its_middle() {
+        for exponent in -300..300 {
+            let value = 1.2345 * 10f64.powi(exponent);
+            for value in [value, 1.0449 * value, 10f64.powi(exponent), 9.99 * value] {
+                assert!(outwards(value, false).parse::<f64>().unwrap() <= value, "{value}");
+                assert!(outwards(value, true).parse::<f64>().unwrap() >= value, "{value}");
+            }
+        }
+    }
+
+    // The lower bound is 1.5e-16 below two thirds, and the fifteen digits are a third of 1e-15 above them.
+    #[test]
+    fn what_the_shown_digits_leave_out_counts() {
+        let value = 2.0 / 3.0;
+        let answer = Bounded { value, low: value.next_down(), high: value.next_up() };
+        assert_eq!(proven(answer, 17), "0.666666666666667");
+        assert_eq!(proven_within(answer, 17), "± 4.9e-16");
     }
 }

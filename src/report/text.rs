@@ -3,10 +3,11 @@
 use std::io::{self, Write};
 
 use crate::compare::{Comparison, Row, Verdict};
+use crate::exact::Bounded;
 use crate::sampling::Estimate;
 
 use super::document::{Answer, Body, Document, SeedSource};
-use super::number::{proven, rounded, thousands};
+use super::number::{proven, proven_within, rounded, thousands};
 use super::table::{Column, KEPT, lines};
 use super::words::{shown, wrapped};
 
@@ -266,12 +267,8 @@ fn write_answers(answers: &[Answer], layout: Layout, out: &mut impl Write) -> io
 }
 
 fn answer_cells(answer: &Answer) -> Vec<String> {
-    let (value, within) = match answer.exact {
-        Some(exact) if exact.error() == 0.0 => (proven(exact, 17), "exactly".to_owned()),
-        Some(exact) => (proven(exact, 17), format!("± {}", rounded(exact.error(), 2))),
-        None => ("-".to_owned(), "-".to_owned()),
-    };
-    vec![shown(&answer.quantity.to_string()), value, within]
+    let cell = |write: fn(Bounded, usize) -> String| answer.exact.map_or("-".to_owned(), |exact| write(exact, 17));
+    vec![shown(&answer.quantity.to_string()), cell(proven), cell(proven_within)]
 }
 
 fn write_estimates(estimates: &[Estimate], layout: Layout, out: &mut impl Write) -> io::Result<()> {
