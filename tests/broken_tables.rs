@@ -21,13 +21,13 @@ fn broken_lists_of_moves() {
             "from,to,prob\na,x,1\n",
             "a",
             ends,
-            &[(Shape, 1, "", "from,to,prob", "no column `probability`", "did you mean `prob`?")],
+            &[(Shape, 1, "", "from,to,prob", "no column `probability`", "rename `prob` to `probability`")],
         ),
         (
             "\n\nform,to,probability\na,x,1\n",
             "a",
             ends,
-            &[(Shape, 3, "", "form,to,probability", "no column `from`", "did you mean `form`?")],
+            &[(Shape, 3, "", "form,to,probability", "no column `from`", "rename `form` to `from`")],
         ),
         (
             "from,to,probability\na,x,0.5\na,x,0.5\n",
@@ -101,6 +101,7 @@ fn broken_square_tables() {
             &[(RowSum, 3, "x", "", "the row of `x` holds no moves", "declare it so or give it a stay of 1")],
         ),
         (",a,x\na,0.5,0.5\n", &[(UnknownState, 1, "x", "", "the state `x` has no moves", GIVE_MOVES)]),
+        ("a,x,0.5\na,a,0.5\n", &[(Shape, 1, "", "a,x,0.5", "does not name the states", "from,to,probability")]),
         (",a,x\na,0.5\nx,0,1\n", &[(Shape, 2, "a", "", "the row of `a` has 2 cells, the header 3", "every row")]),
         (
             ",a,shipped\na,0.5,0.5\nshiped,0,1\nshipped,0,1\n",

@@ -4,9 +4,9 @@
 //! read before it is committed.
 
 use std::fs;
-use std::io::Read;
+use std::io::{Read, Write};
 use std::path::{Path, PathBuf};
-use std::process::{Command, Output, Stdio};
+use std::process::{Child, Command, Output, Stdio};
 
 use serde_json::Value;
 use tempfile::TempDir;
@@ -244,6 +244,7 @@ fn every_kind_of_end_has_its_status() {
         (&["check", "--demo", "--absorbing", "board"], 2, "--absorbing"),
         (&["sample", "bench.toml", "--write-tally", "both.txt", "--json", "./both.txt"], 2, "two results"),
         (&["sample", "bench.toml", "--write-tally", "."], 74, "directory"),
+        (&["sample", "bench.toml", "--threads", "5000"], 2, "1024"),
         (&["audit", "bench.toml", "--outcomes", "broken.toml", "--json", "broken.toml"], 2, "overwritten"),
         (&["--help"], 0, ""),
         (&["--version"], 0, ""),
@@ -285,6 +286,77 @@ fn several_models_count_by_the_worst() {
     assert_eq!(out(&both).matches("Verdict:").count(), 2);
     let one_undecided = within(&place, &["check", "coin.toml", "bench.toml", "--replications", "4096"]);
     assert_eq!(status(&one_undecided), 3);
+}
+
+#[test]
+fn a_faulty_model_among_several_leaves_the_others_their_turn() {
+    let place = directory(&[("coin.toml", "start = \"t\"\nabsorbing = [\"h\"]\n[moves]\nt = { t = 0.5, h = 0.5 }\n")]);
+    let both = within(&place, &["check", "nothing.toml", "coin.toml"]);
+    assert_eq!(status(&both), 74);
+    assert!(err(&both).contains("nothing.toml") && out(&both).contains("Verdict: ● agree"), "{}", err(&both));
+}
+
+#[test]
+fn wrong_arguments_are_an_object_too_where_json_is_asked_for() {
+    for arguments in
+        [["check", "--demo", "--json", "-", "--replication", "5"], ["exact", "--json=-", "a", "b", "c", "d"]]
+    {
+        let wrong = run(&arguments);
+        assert_eq!(status(&wrong), 2);
+        let document: Value = serde_json::from_str(&out(&wrong)).unwrap();
+        assert_eq!(document["schema"], "tallystone.error/1");
+        assert_eq!(document["errors"][0]["kind"], "usage");
+    }
+    assert!(out(&run(&["check", "--demo", "--json", "x", "--replication", "5"])).is_empty());
+}
+
+// What one command writes another reads, without a file between them.
+#[test]
+fn a_dash_is_standard_output_and_input() {
+    let place = directory(&[]);
+    let arguments = ["sample", "bench.toml", "--replications", "5000", "--seed", "2", "--write-outcomes"];
+    let written = within(&place, &[&arguments[..], &["outcomes.csv"]].concat());
+    assert!(out(&written).contains("standard error"));
+    let printed = within(&place, &[&arguments[..], &["-"]].concat());
+    assert_eq!(out(&printed), fs::read_to_string(place.path().join("outcomes.csv")).unwrap());
+    let twice = within(&place, &[&arguments[..], &["-", "--json", "-"]].concat());
+    assert_eq!(status(&twice), 2, "{}", err(&twice));
+
+    let audit = |name: &str| {
+        let outcomes = fs::File::open(place.path().join("outcomes.csv")).unwrap();
+        let arguments = ["audit", "bench.toml", "--outcomes", name, "--json", "-"];
+        let done = program().current_dir(&place).args(arguments).stdin(outcomes).output().unwrap();
+        serde_json::from_str::<Value>(&out(&done)).unwrap()
+    };
+    let (from_file, from_pipe) = (audit("outcomes.csv"), audit("-"));
+    assert_eq!(from_file["rows"], from_pipe["rows"]);
+    assert_eq!(from_pipe["inputs"][1]["file"], "standard input");
+    assert_eq!(from_file["inputs"][1]["sha256"], from_pipe["inputs"][1]["sha256"]);
+}
+
+#[cfg(unix)]
+#[test]
+fn a_link_stays_a_link() {
+    let place = directory(&[("old.json", "old")]);
+    std::os::unix::fs::symlink("old.json", place.path().join("link.json")).unwrap();
+    assert_eq!(status(&within(&place, &["check", "bench.toml", "--json", "link.json"])), 0);
+    assert!(fs::symlink_metadata(place.path().join("link.json")).unwrap().is_symlink());
+    assert!(fs::read_to_string(place.path().join("old.json")).unwrap().contains("tallystone.check/1"));
+}
+
+// More rows than are shown: those about all replications are among them.
+#[test]
+fn of_many_rows_alike_the_common_ones_are_shown() {
+    let ends: Vec<String> = (0..30).map(|i| format!("e{i} = \"1/60\"")).collect();
+    let names: Vec<String> = (0..30).map(|i| format!("\"e{i}\"")).collect();
+    let model =
+        format!("start = \"a\"\nabsorbing = [{}]\n[moves]\na = {{ a = 0.5, {} }}\n", names.join(","), ends.join(","));
+    let place = directory(&[("many.toml", &model)]);
+    let check = within(&place, &["check", "many.toml"]);
+    let text = out(&check);
+    for name in ["mean_time ", "variance_time", "time_quantile:0.9 ", "law ", "more rows, none worse"] {
+        assert!(text.contains(name), "{name}: {text}");
+    }
 }
 
 #[test]
@@ -336,7 +408,7 @@ fn a_reader_that_goes_away_is_no_panic() {
     drop(child.stdout.take());
     let mut said = String::new();
     child.stderr.take().unwrap().read_to_string(&mut said).unwrap();
-    assert!(child.wait().unwrap().code().is_some());
+    assert_eq!(child.wait().unwrap().code(), Some(74));
     assert!(!said.contains("panic"), "{said}");
 }
 
@@ -344,6 +416,37 @@ fn a_reader_that_goes_away_is_no_panic() {
 fn endless(place: &Path) {
     let text = "start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = { x = \"1/1000000000000000\", a = \"rest\" }\n";
     fs::write(place.join("endless.toml"), text).unwrap();
+}
+
+/// Sends a signal to a program that has started.
+#[cfg(unix)]
+fn send(signal: &str, child: &Child) {
+    // The handler stands within milliseconds; a signal before it would end the program with the same status.
+    std::thread::sleep(std::time::Duration::from_millis(500));
+    let sent = Command::new("kill").args([&format!("-{signal}"), &child.id().to_string()]).status().unwrap();
+    assert!(sent.success());
+}
+
+// Ctrl-C reaches both ends of a pipe: the simulator stops, and what it wrote until then is no whole file.
+#[cfg(unix)]
+#[test]
+fn an_audit_of_an_interrupted_simulator_gives_no_verdict() {
+    let place = directory(&[]);
+    let mut child = program()
+        .current_dir(&place)
+        .args(["audit", "bench.toml", "--outcomes", "-"])
+        .stdin(Stdio::piped())
+        .stdout(Stdio::piped())
+        .stderr(Stdio::piped())
+        .spawn()
+        .unwrap();
+    let mut pipe = child.stdin.take().unwrap();
+    pipe.write_all(b"end,time\nshipped,5\n").unwrap();
+    send("INT", &child);
+    drop(pipe);
+    let done = child.wait_with_output().unwrap();
+    assert_eq!(status(&done), 130, "{}", err(&done));
+    assert!(out(&done).is_empty() && err(&done).contains("interrupted"), "{}", out(&done));
 }
 
 #[cfg(unix)]
@@ -358,10 +461,7 @@ fn an_interrupted_run_ends_cleanly() {
             .stderr(Stdio::piped())
             .spawn()
             .unwrap();
-        // The handler stands within milliseconds; a signal before it would end the program with the same status.
-        std::thread::sleep(std::time::Duration::from_millis(500));
-        let sent = Command::new("kill").args([&format!("-{signal}"), &child.id().to_string()]).status().unwrap();
-        assert!(sent.success());
+        send(signal, &child);
         let mut said = String::new();
         child.stderr.take().unwrap().read_to_string(&mut said).unwrap();
         assert_eq!(child.wait().unwrap().code(), Some(expected), "{said}");

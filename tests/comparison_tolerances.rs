@@ -110,6 +110,17 @@ fn tolerances_that_are_wide_useless_or_hopeless_are_said_before_the_run() {
         assert_eq!(warning.kind, WarningKind::NotCompared);
         assert!(warning.text.contains("`law`, which is not compared"));
     });
+    let whole = tolerating(asking(&["mean_time"]), "mean_time", Tolerance::Relative(2.0));
+    with_study(COIN, &whole, |_, study| {
+        let [warning] = &study.warnings()[..] else { panic!("{:?}", study.warnings()) };
+        assert_eq!(warning.kind, WarningKind::WideTolerance);
+        assert!(warning.text.contains("as wide as the answer"), "{}", warning.text);
+    });
+    // One or two steps, equally likely: (T − 1.5)² is always 1/4, and its estimate differs from that by O(1/n) only.
+    let even = "start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = { b = 0.5, x = 0.5 }\nb = { x = 1 }\n";
+    with_study(even, &asking(&["variance_time"]), |_, study| {
+        assert!(study.warnings()[0].text.contains("two values equally far from its mean"));
+    });
     // The median of the coin is 1 with P(time ≤ 1) = 0.8: no tolerance is too small for it, but 1e-13 of a mean needs more
     // than 2^53 replications.
     let hopeless = tolerating(asking(&["mean_time"]), "mean_time", Tolerance::Absolute(1e-13));

@@ -83,7 +83,8 @@ impl OutcomeError {
     }
 }
 
-/// Reads outcomes from a CSV file with the columns `end` and `time`, in any order, optionally `replication`.
+/// Reads outcomes from a CSV file with the columns `end` and `time`, in any order, optionally `replication`. The path `-`
+/// is standard input.
 ///
 /// Comma, semicolon or tab separates; the first line is the header. A time is a whole number of steps (`12`, `12.0`);
 /// replications, where they are given, are whole numbers, each there once, in any order. Other columns are passed over.
@@ -103,9 +104,11 @@ pub(super) fn read(
     collector: Collector<'_>,
     progress: &dyn Progress,
 ) -> Result<OutcomeFile, OutcomeError> {
-    let size = fs::metadata(path).ok().filter(Metadata::is_file).map(|file| file.len());
+    let named = Some(path).filter(|path| path.as_os_str() != "-");
+    let size = named.and_then(|path| fs::metadata(path).ok()).filter(Metadata::is_file).map(|file| file.len());
     progress.begin("reading outcomes", "bytes", size);
-    let source = Source { path, name: path.display().to_string().into(), is_file: size.is_some() };
+    let name = named.map_or("standard input".into(), |path| path.display().to_string().into());
+    let source = Source { path: named, name, is_file: size.is_some() };
     let outcomes = source.outcomes(collector, progress);
     progress.end();
     outcomes
@@ -113,7 +116,8 @@ pub(super) fn read(
 
 /// A result file by its name.
 struct Source<'a> {
-    path: &'a Path,
+    /// `None` for standard input.
+    path: Option<&'a Path>,
     name: Arc<str>,
     /// Whether it can be read again, as a pipe cannot.
     is_file: bool,
@@ -124,8 +128,15 @@ impl Source<'_> {
         Place { file: Some(Arc::clone(&self.name)), line }
     }
 
+    fn open(&self) -> io::Result<Box<dyn Read>> {
+        match self.path {
+            Some(path) => Ok(Box::new(File::open(path)?)),
+            None => Ok(Box::new(io::stdin())),
+        }
+    }
+
     fn unreadable(&self, source: io::Error) -> OutcomeError {
-        OutcomeError::Read { path: self.path.to_owned(), source }
+        OutcomeError::Read { path: Path::new(&*self.name).to_owned(), source }
     }
 
     fn bad(&self, rows: u64, bad: u64, faults: Vec<Fault>) -> OutcomeError {
@@ -133,8 +144,8 @@ impl Source<'_> {
     }
 
     fn outcomes(&self, mut collector: Collector<'_>, progress: &dyn Progress) -> Result<OutcomeFile, OutcomeError> {
-        let file = File::open(self.path).map_err(|error| self.unreadable(error))?;
-        let watched = Watched { source: file, hash: Sha256::new(), progress };
+        let source = self.open().map_err(|error| self.unreadable(error))?;
+        let watched = Watched { source, hash: Sha256::new(), progress };
         let Table { mut records, columns, ignored } =
             Table::open(watched, &self.place(None)).map_err(|reason| match reason {
                 NoTable::Unreadable(error) => self.unreadable(error),
@@ -163,6 +174,10 @@ impl Source<'_> {
                 }
             }
         }
+        // The program at the other end of a pipe stops by the same signal, and what it wrote until then is no whole file.
+        if progress.interrupted() {
+            return Err(OutcomeError::Interrupted);
+        }
         if rows == 0 {
             let remedy = "check that the program finished and wrote its outcomes";
             let text = "the file has a header, but no outcomes";
@@ -188,7 +203,7 @@ impl Source<'_> {
         if first.is_empty() || !self.is_file {
             return;
         }
-        let Ok(file) = File::open(self.path) else { return };
+        let Ok(file) = self.open() else { return };
         let Ok(Table { mut records, columns, .. }) = Table::open(file, &self.place(None)) else { return };
         let mut row = ByteRecord::new();
         while first.values().any(Option::is_none) && records.read(&mut row).unwrap_or(false) {

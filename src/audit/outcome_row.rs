@@ -107,8 +107,11 @@ impl Columns {
             BadRow::Cells => {
                 let written: Vec<_> = row.iter().map(String::from_utf8_lossy).collect();
                 let text = format!("the line has {}, the header {}", cells(row.len()), cells(self.count));
-                let remedy =
-                    "complete it; a last line that is cut short means that the program was stopped as it wrote";
+                let remedy = if row.len() > self.count {
+                    "give every line the cells of the header; put quotes around a cell with a comma in it"
+                } else {
+                    "complete it; a last line that is cut short means that the program was stopped as it wrote"
+                };
                 (FaultKind::Shape, written.join(","), text, remedy.to_owned())
             }
             BadRow::LineBreak => {

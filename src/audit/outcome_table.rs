@@ -4,7 +4,7 @@ use std::io::{self, BufRead, BufReader, Read};
 
 use csv::{ByteRecord, StringRecord};
 
-use crate::model::{Fault, FaultKind, Place, Records, delimiter, shortened};
+use crate::model::{Fault, FaultKind, Number, Place, Records, delimiter, shortened};
 
 use super::outcome_row::Columns;
 
@@ -81,8 +81,14 @@ fn columns(header: ByteRecord, delimiter: u8, place: Place) -> Result<(Columns, 
         let missing = at[..2].iter().filter(|(_, column, _)| column.is_none());
         let missing: Vec<String> = missing.map(|(name, ..)| format!("no column `{name}`")).collect();
         let shown = shortened(&names.join(","));
-        let text = format!("the header `{shown}` has {}", missing.join(" and "));
-        let remedy = "name the columns in the first line: `end` is where a replication finished, `time` its steps";
+        let is_row = names.iter().any(|name| Number::parse(name).is_ok());
+        let text = if is_row && missing.len() == 2 {
+            format!("the first line `{shown}` is a row, not the header")
+        } else {
+            format!("the header `{shown}` has {}", missing.join(" and "))
+        };
+        let remedy =
+            "name the columns in the first line: `end` is where a replication finished, `time` is its number of steps";
         return Err(Fault::new(FaultKind::Shape, place, text, remedy).valued(shown).into());
     };
     let used = [Some(end), Some(time), replication];

@@ -135,7 +135,7 @@ fn every_kind_of_bad_row_is_named_with_line_value_and_remedy() {
         ("shipped,2,-1", "the replication `-1` is negative", numbers),
         ("shipped,2,0.5", "the replication `0.5` is not a whole number", numbers),
         ("shipped,2", "the line has 2 cells, the header 3", "complete it"),
-        ("shipped,2,1,0", "the line has 4 cells, the header 3", "complete it"),
+        ("shipped,2,1,0", "the line has 4 cells, the header 3", "give every line the cells"),
         ("shi", "the line has 1 cell, the header 3", "complete it"),
     ];
     for (row, text, remedy) in expected {
@@ -184,7 +184,7 @@ fn a_file_without_outcomes_says_why() {
         (b"\xef\xbb\xbf\n \n", "F: the file is empty; check that the program finished"),
         (b"end,time\n\n", "F: the file has a header, but no outcomes; check that"),
         (b"end,steps\nshipped,2\n", "F:1: the header `end,steps` has no column `time`; name the columns"),
-        (b"\nshipped,2\n", "F:2: the header `shipped,2` has no column `end` and no column `time`; name the"),
+        (b"\nshipped,2\n", "F:2: the first line `shipped,2` is a row, not the header; name the columns"),
         (b"end,time,End\n", "F:1: the header names `end` twice; keep one"),
         (b"end,time,replication,replication\n", "F:1: the header names `replication` twice; keep one"),
         (b"end,time\xff\n", "F:1: the header is not UTF-8 text; save the file as UTF-8"),

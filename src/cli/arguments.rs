@@ -7,6 +7,9 @@ use clap::{ArgGroup, Args, Parser, Subcommand, ValueEnum};
 use crate::compare::MOST_LOOKS;
 use crate::model::{Quantity, Tolerance, ToleranceKey};
 
+/// More threads than any machine has cores only stand in each other's way.
+const MOST_THREADS: i64 = 1024;
+
 /// Seeds are fixed unless the user says otherwise, so that a build gate does not flap.
 pub(super) const DEFAULT_SEED: u64 = 1;
 
@@ -97,10 +100,10 @@ pub(super) struct Sample {
     pub(super) reading: Reading,
     #[command(flatten)]
     pub(super) sampling: Sampling,
-    /// Write the tally, exact sums over all replications, as text
+    /// Write the tally, exact sums over all replications, as text; "-" writes it to standard output in place of the table
     #[arg(long, value_name = "FILE")]
     pub(super) write_tally: Option<PathBuf>,
-    /// Write every outcome as CSV with the columns replication, end, time
+    /// Write every outcome as CSV with the columns replication, end, time; one thread does that
     #[arg(long, value_name = "FILE")]
     pub(super) write_outcomes: Option<PathBuf>,
     #[command(flatten)]
@@ -112,7 +115,7 @@ pub(super) struct Audit {
     /// The model file: TOML, or a table of moves (CSV)
     #[arg(value_name = "MODEL")]
     pub(super) model: PathBuf,
-    /// Outcomes of your simulator: CSV with the columns end and time, optionally replication
+    /// Outcomes of your simulator: CSV with the columns end and time, optionally replication; "-" is standard input
     #[arg(long, value_name = "FILE", required = true)]
     pub(super) outcomes: PathBuf,
     #[command(flatten)]
@@ -189,8 +192,8 @@ pub(super) struct Sampling {
     #[arg(long, value_name = "N|random", value_parser = seed)]
     pub(super) seed: Option<Seed>,
     /// Number of threads; the outcomes are the same for any [default: one a core]
-    #[arg(long, value_name = "N", value_parser = count)]
-    pub(super) threads: Option<u64>,
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=MOST_THREADS))]
+    pub(super) threads: Option<u16>,
 }
 
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

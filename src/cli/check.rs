@@ -4,11 +4,11 @@ use std::time::Instant;
 
 use super::arguments::Check;
 use super::failure::{Failure, of_verdict, refused};
-use super::{Session, demo, output, steps};
+use super::{Session, demo, output, steps, tell};
 use crate::compare::{SizePlan, Study, Verdict};
 use crate::exact::{Exact, Request};
 use crate::model::Model;
-use crate::report::{Body, rounded, thousands};
+use crate::report::{Body, duration, rounded, thousands};
 use crate::sampling::{BLOCK, Plan, Sampler, sample};
 
 /// Longest run that is started unasked.
@@ -20,19 +20,30 @@ pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
         let text = format!("--json holds one result, and {} models are given", arguments.models.len());
         return Err(Failure::Usage(refused("usage", text, "run one model at a time")));
     }
-    let mut worst = Verdict::Agree;
     if arguments.demo {
         let model = demo::model()?;
         steps::look_at(model.warnings(), &arguments.reading)?;
-        worst = one(&model, arguments, session)?;
+        return Ok(of_verdict(one(&model, arguments, session)?));
     }
+    let mut worst = Verdict::Agree;
+    // A model that cannot be checked leaves the others their turn; the first such gives the status.
+    let mut failed = None;
     for (number, path) in arguments.models.iter().enumerate() {
         if number > 0 && !arguments.output.quiet {
-            output::to_standard_output(|out| std::io::Write::write_all(out, b"\n"))?;
+            output::print(|out| out.write_all(b"\n"))?;
         }
-        worst = worst.max(one(&steps::read(path, &arguments.reading)?, arguments, session)?);
+        match steps::read(path, &arguments.reading).and_then(|model| one(&model, arguments, session)) {
+            Ok(verdict) => worst = worst.max(verdict),
+            Err(failure @ (Failure::Data(_) | Failure::Io(_) | Failure::Undecided(_)))
+                if arguments.models.len() > 1 =>
+            {
+                tell(&failure, session, None);
+                failed = failed.or(Some(failure.status(false)));
+            }
+            Err(failure) => return Err(failure),
+        }
     }
-    Ok(of_verdict(worst))
+    Ok(failed.unwrap_or_else(|| of_verdict(worst)))
 }
 
 /// Reads, solves, samples, compares, writes.
@@ -74,19 +85,19 @@ fn allow(sampler: &Sampler, plan: &Plan, exact: &Exact<'_>, size: &SizePlan, arg
     }
     let demanding = match (&size.demanding, size.without) {
         (Some(quantity), Some(without)) if arguments.sampling.replications.is_none() => format!(
-            "; `{quantity}` needs most, and without it {} replications would do, about {} s",
+            "; `{quantity}` needs most, and without it {} replications would do, about {}",
             thousands(without),
-            rounded(seconds * without as f64 / plan.replications as f64, 2)
+            duration(seconds * without as f64 / plan.replications as f64)
         ),
         (Some(quantity), _) if arguments.sampling.replications.is_none() => format!("; `{quantity}` needs most"),
         _ => String::new(),
     };
     let text = format!(
-        "the run is not started: {} replications of {} steps in the mean would take about {} s, more than the limit of {} s{demanding}",
+        "the run is not started: {} replications of {} steps in the mean would take about {}, more than the limit of {}{demanding}",
         thousands(plan.replications),
         rounded(exact.mean_time().value, 3),
-        rounded(seconds, 2),
-        rounded(limit, 3)
+        duration(seconds),
+        duration(limit)
     );
     let remedy = "allow more with --time-limit, widen a tolerance, or choose rows with --quantity";
     Err(Failure::Undecided(refused("not_started", text, remedy)))

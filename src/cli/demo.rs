@@ -1,7 +1,6 @@
 //! `demo`: the example model, and outcome files of a right and a wrong simulator.
 
 use std::fs;
-use std::io::Write;
 use std::path::Path;
 use std::sync::Arc;
 
@@ -33,11 +32,11 @@ pub(super) fn run(arguments: &Demo, session: &Session) -> Result<u8, Failure> {
     let bench = output::new_file(directory, "bench.toml")?;
     let right = output::new_file(directory, "outcomes-right.csv")?;
     let wrong = output::new_file(directory, "outcomes-wrong.csv")?;
-    output::write_file(&bench, |out| out.write_all(MODEL.as_bytes()))?;
+    output::write(&bench, |out| out.write_all(MODEL.as_bytes()))?;
     outcomes(MODEL, &right, session)?;
     outcomes(&MODEL.replace(RIGHT, WRONG), &wrong, session)?;
     let shown = |path: &Path| path.display().to_string();
-    output::to_standard_output(|out| {
+    output::print(|out| {
         writeln!(out, "{}  the model", shown(&bench))?;
         writeln!(out, "{}  outcomes of a simulator that follows it", shown(&right))?;
         writeln!(out, "{}  outcomes of one that lets too many radios pass their test", shown(&wrong))?;

@@ -50,7 +50,11 @@ pub fn main() -> ExitCode {
         Err(error) => {
             // Help and version are no errors; a terminal that is gone is no matter.
             let _printed = error.print();
-            return ExitCode::from(if error.use_stderr() { status::USAGE } else { status::WORKED });
+            if !error.use_stderr() {
+                return ExitCode::from(status::WORKED);
+            }
+            output::deliver_usage_error(&error.to_string());
+            return ExitCode::from(status::USAGE);
         }
     };
     ExitCode::from(run(&arguments.command))
@@ -86,14 +90,14 @@ fn run(command: &Command) -> u8 {
             "please report it with the model and the arguments",
         )),
     };
-    // A phase that failed has left its bar on the screen.
-    session.watch.end();
-    tell(&failure, output);
+    tell(&failure, &session, output);
     failure.status(stop.is_termination())
 }
 
 /// Says why, on standard error and, if JSON was asked for there, on standard output.
-fn tell(failure: &Failure, output: Option<&Output>) {
+fn tell(failure: &Failure, session: &Session, output: Option<&Output>) {
+    // A phase that failed has left its bar on the screen.
+    session.watch.end();
     failure.reasons().iter().for_each(|reason| output::complain("error", &failure::line(reason)));
     if let Failure::Interrupted(text) = failure {
         output::complain("stopped", text);

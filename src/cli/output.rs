@@ -16,9 +16,11 @@ const NARROWEST: usize = 40;
 /// A wider one is hard to read.
 const WIDEST: usize = 120;
 
-/// Standard output as a destination of JSON.
-fn is_standard_output(path: &Path) -> bool {
-    path.as_os_str() == "-"
+/// Standard output as a destination.
+const STANDARD_OUTPUT: &str = "-";
+
+pub(super) fn is_standard_output(path: &Path) -> bool {
+    path.as_os_str() == STANDARD_OUTPUT
 }
 
 /// The layout of a page on standard output.
@@ -42,14 +44,13 @@ pub(super) fn width() -> usize {
 /// Delivers a finished document. A file that cannot be written does not cost the table as well.
 pub(super) fn deliver(document: &Document, output: &Output) -> Result<(), Failure> {
     let filed = match &output.json {
-        Some(path) if is_standard_output(path) => return to_standard_output(|out| write_json(document, out)),
-        Some(path) => write_file(path, |out| write_json(document, out)),
+        Some(path) => write(path, |mut out| write_json(document, &mut out)),
         None => Ok(()),
     };
-    if output.quiet {
+    if output.quiet || output.json.as_deref().is_some_and(is_standard_output) {
         return filed;
     }
-    let printed = to_standard_output(|out| write_text(document, layout(output), out));
+    let printed = print(|mut out| write_text(document, layout(output), &mut out));
     filed.and(printed)
 }
 
@@ -58,9 +59,13 @@ pub(super) fn deliver(document: &Document, output: &Output) -> Result<(), Failur
 /// # Errors
 /// A file that is one of the inputs, that is named twice, or that cannot be made.
 pub(super) fn look_at_destinations(files: &[Option<&Path>], inputs: &[&Path]) -> Result<(), Failure> {
-    let files: Vec<&Path> = files.iter().flatten().copied().filter(|path| !is_standard_output(path)).collect();
+    let usage = |text: String| Failure::Usage(refused("usage", text, "give another name for the result"));
+    let (printed, files): (Vec<&Path>, Vec<&Path>) =
+        files.iter().flatten().copied().partition(|path| is_standard_output(path));
+    if printed.len() > 1 {
+        return Err(usage("standard output, `-`, is named for two results".to_owned()));
+    }
     for (number, path) in files.iter().enumerate() {
-        let usage = |text: String| Failure::Usage(refused("usage", text, "give another name for the result"));
         if inputs.iter().any(|input| is_same(path, input)) {
             return Err(usage(format!("`{}` is an input of this run and would be overwritten", path.display())));
         }
@@ -90,48 +95,63 @@ fn is_same(a: &Path, b: &Path) -> bool {
 pub(super) fn deliver_refusal(reasons: &[Refused], output: Option<&Output>) -> Result<(), Failure> {
     match output.and_then(|output| output.json.as_deref()) {
         Some(path) if is_standard_output(path) && !reasons.is_empty() => {
-            to_standard_output(|out| write_refusal(reasons, out))
+            print(|mut out| write_refusal(reasons, &mut out))
         }
         _ => Ok(()),
     }
 }
 
+/// Delivers wrong arguments as JSON, where the arguments as they stand ask for it on standard output.
+pub(super) fn deliver_usage_error(text: &str) {
+    let arguments: Vec<_> = std::env::args_os().collect();
+    let is_asked = arguments.windows(2).any(|pair| pair[0] == "--json" && pair[1] == STANDARD_OUTPUT)
+        || arguments.iter().any(|argument| argument == "--json=-");
+    if is_asked {
+        let text = text.lines().next().unwrap_or_default().trim_start_matches("error: ");
+        let reasons = refused("usage", text, "see --help");
+        // A second failure while telling of the first has nobody to tell.
+        let _delivered = print(|mut out| write_refusal(&reasons, &mut out));
+    }
+}
+
+/// Writes a file that appears whole or not at all; devices and pipes, standard output as `-` among them, are written in
+/// place.
+///
+/// # Errors
+/// A path that cannot be written.
+pub(super) fn write(path: &Path, write: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> Result<(), Failure> {
+    if is_standard_output(path) {
+        print(write)
+    } else {
+        written(path, write).map_err(|error| Failure::io(path, &error))
+    }
+}
+
 /// Writes to standard output; a reader that went away is told apart from a real failure.
-pub(super) fn to_standard_output(
-    write: impl FnOnce(&mut BufWriter<io::StdoutLock<'_>>) -> io::Result<()>,
-) -> Result<(), Failure> {
-    let mut out = BufWriter::new(io::stdout().lock());
-    let written = write(&mut out).and_then(|()| out.flush());
-    // What is left in the buffer cannot be written either.
-    let _unwritten = out.into_parts();
-    written.map_err(|error| match error.kind() {
+pub(super) fn print(write: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> Result<(), Failure> {
+    buffered(io::stdout().lock(), write).map_err(|error| match error.kind() {
         io::ErrorKind::BrokenPipe => Failure::ReaderGone,
         _ => Failure::io(Path::new("standard output"), &error),
     })
 }
 
-/// Writes a file that appears whole or not at all; devices and pipes are written in place.
-///
-/// # Errors
-/// A path that cannot be written.
-pub(super) fn write_file(
-    path: &Path,
-    write: impl FnOnce(&mut BufWriter<&mut File>) -> io::Result<()>,
-) -> Result<(), Failure> {
-    written(path, write).map_err(|error| Failure::io(path, &error))
+fn written(path: &Path, write: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> io::Result<()> {
+    if is_special(path) {
+        return buffered(File::options().write(true).open(path)?, write);
+    }
+    // A link stays, and what it leads to is replaced.
+    let path = &fs::canonicalize(path).unwrap_or_else(|_| path.to_owned());
+    let mut file = temporary(path)?;
+    buffered(file.as_file_mut(), write)?;
+    file.persist(path).map(drop).map_err(|error| error.error)
 }
 
-fn written(path: &Path, write: impl FnOnce(&mut BufWriter<&mut File>) -> io::Result<()>) -> io::Result<()> {
-    if is_special(path) {
-        let mut file = File::options().write(true).open(path)?;
-        let mut out = BufWriter::new(&mut file);
-        return write(&mut out).and_then(|()| out.flush());
-    }
-    let mut file = temporary(path)?;
-    let mut out = BufWriter::new(file.as_file_mut());
-    write(&mut out).and_then(|()| out.flush())?;
-    drop(out);
-    file.persist(path).map(drop).map_err(|error| error.error)
+fn buffered(sink: impl Write, write: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> io::Result<()> {
+    let mut out = BufWriter::with_capacity(1 << 16, sink);
+    let written = write(&mut out).and_then(|()| out.flush());
+    // What is left in the buffer after a failure cannot be written either.
+    let _unwritten = out.into_parts();
+    written
 }
 
 /// A device, a pipe or a directory: nothing that a new file could replace.

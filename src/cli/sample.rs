@@ -1,12 +1,11 @@
 //! `sample`: the sampler alone.
 
-use std::fs::File;
-use std::io::{self, BufWriter, Write};
-use std::path::Path;
+use std::io::{self, Write};
+use std::path::{Path, PathBuf};
 use std::sync::Arc;
 use std::time::Instant;
 
-use super::arguments::Sample;
+use super::arguments::{Output, Sample};
 use super::failure::{Failure, status};
 use super::{Session, output, steps};
 use crate::model::{Chain, Model, Progress};
@@ -26,16 +25,20 @@ pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> 
     let files = [&arguments.write_outcomes, &arguments.write_tally, &arguments.output.json];
     output::look_at_destinations(&files.map(Option::as_deref), &steps::files_of(&model))?;
     let started = Instant::now();
+    // A result on standard output stands there alone.
+    let is_taken = |path: &Option<PathBuf>| path.as_deref().is_some_and(output::is_standard_output);
+    let quiet = arguments.output.quiet || is_taken(&arguments.write_outcomes) || is_taken(&arguments.write_tally);
+    let destination = Output { quiet, ..arguments.output.clone() };
     let tally = match &arguments.write_outcomes {
         Some(path) => write_outcomes(path, &sampler, &plan, model.chain(), &session.watch)?,
         None => steps::on_threads(&arguments.sampling, || Ok(sample(&sampler, &plan, &session.watch)?))?,
     };
     let seconds = started.elapsed().as_secs_f64();
     if let Some(path) = &arguments.write_tally {
-        output::write_file(path, |out| write!(out, "{tally}"))?;
+        output::write(path, |out| write!(out, "{tally}"))?;
     }
     let document = document(&model, &tally, &plan, seed_source, seconds);
-    output::deliver(&steps::complete(document, &model, session), &arguments.output)?;
+    output::deliver(&steps::complete(document, &model, session), &destination)?;
     Ok(status::WORKED)
 }
 
@@ -73,21 +76,21 @@ pub(super) fn write_outcomes(
 ) -> Result<Tally, Failure> {
     let mut tally = Tally::new(sampler.ends(), Arc::clone(&plan.grid));
     let mut interrupted = None;
-    let walked = output::write_file(path, |out| {
+    let walked = output::write(path, |out| {
         progress.begin("sampling", "replications", Some(plan.replications));
         walk(out, sampler, plan, chain, &mut tally, progress).inspect_err(|_| interrupted = Some(tally.replications()))
     });
     progress.end();
     match interrupted {
         Some(done) if progress.interrupted() => {
-            Err(Failure::Interrupted(format!("interrupted after {done} replications; no file was written")))
+            Err(Failure::Interrupted(format!("interrupted after {done} replications; no whole result was written")))
         }
         _ => walked.map(|()| tally),
     }
 }
 
 fn walk(
-    out: &mut BufWriter<&mut File>,
+    out: &mut dyn Write,
     sampler: &Sampler,
     plan: &Plan,
     chain: &Chain,

@@ -73,7 +73,7 @@ pub(super) fn on_threads<T: Send>(
     sampling: &Sampling,
     work: impl FnOnce() -> Result<T, Failure> + Send,
 ) -> Result<T, Failure> {
-    let threads = sampling.threads.map_or(0, |threads| usize::try_from(threads).unwrap_or(usize::MAX).min(4096));
+    let threads = sampling.threads.map_or(0, usize::from);
     let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().map_err(|error| {
         Failure::Io(refused("io", format!("the system gives no threads: {error}"), "ask for fewer with --threads"))
     })?;

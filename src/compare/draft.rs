@@ -120,6 +120,9 @@ impl<'a> Chosen<'a> {
 const UNKNOWN_SHAPE: &str =
     "the higher moments of this time are not known well enough to say from how many replications an interval holds";
 
+const ONE_DEVIATION: &str = "this time has two values equally far from its mean, so that the estimate of its variance hardly \
+                             varies and has no interval; the mean and the law hold all there is";
+
 /// The method for a quantity with its answer; the text says why there is none.
 fn method<'a>(
     exact: &'a Exact<'a>,
@@ -152,7 +155,9 @@ fn method<'a>(
             Ok(Chosen::of(Mean { ends: Some(ends), share, exact: bounds, spread }))
         }
         Quantity::VarianceTime | Quantity::SdTime => {
-            let squares = Squares::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
+            let shape = exact.shape();
+            let reason = if shape.has_one_deviation() { ONE_DEVIATION } else { UNKNOWN_SHAPE };
+            let squares = Squares::of(shape).ok_or(reason)?;
             Ok(Chosen::of(Variance { root: *quantity == Quantity::SdTime, exact: bounds, squares }))
         }
         Quantity::TimeQuantile(p) => {

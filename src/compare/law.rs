@@ -54,8 +54,15 @@ impl Method for Band<'_> {
             interval: Some(interval),
             p_value: Some(dkw_level(distance.at_least - tolerance, n, bands)),
             premature: None,
-            note: detectable
-                .map(|fit| format!("the law differs detectably (pooled chi-square, p = {})", rounded(fit.p_value))),
+            note: detectable.map(|fit| {
+                // A p-value below every double is small, but not zero.
+                let p = if fit.p_value < 1e-300 {
+                    "p < 1e-300".to_owned()
+                } else {
+                    format!("p = {}", rounded(fit.p_value))
+                };
+                format!("the law differs detectably (pooled chi-square, {p})")
+            }),
         }
     }
 }

@@ -35,7 +35,7 @@ pub(super) fn unlisted(rows: &[NotCompared]) -> Option<Warning> {
 /// Tolerances that let much pass: widened ones, and those as wide as a probability.
 pub(super) fn wide(rows: &[Planned<'_>], power: f64) -> Vec<Warning> {
     let tested = rows.iter().filter_map(|row| Some((row, row.tested()?)));
-    let texts = tested.flat_map(|(row, tested)| [widened(row, tested), blind(row, tested, power)]);
+    let texts = tested.flat_map(|(row, tested)| [widened(row, tested), blind(row, tested, power), whole(row, tested)]);
     texts.flatten().map(|text| warning(WarningKind::WideTolerance, text)).collect()
 }
 
@@ -77,6 +77,22 @@ fn blind(row: &Planned<'_>, tested: &Tested<'_>, power: f64) -> Option<String> {
         row.quantity,
         rounded(p)
     ))
+}
+
+/// A tolerance as wide as the answer itself.
+fn whole(row: &Planned<'_>, tested: &Tested<'_>) -> Option<String> {
+    if let Quantity::AbsorptionProbability(_) | Quantity::SurvivalProbability(_) = row.quantity {
+        return None;
+    }
+    let (value, tolerance) = (row.exact?.value, tested.tolerance.value);
+    (tested.is_given && tolerance >= value).then(|| {
+        format!(
+            "the tolerance {} of `{}` is as wide as the answer {} itself",
+            rounded(tolerance),
+            row.quantity,
+            rounded(value)
+        )
+    })
 }
 
 /// Tolerances that were given for what is not compared.

@@ -15,8 +15,8 @@ pub(super) const INPUT: f64 = 18.0;
 
 /// Numbers below this could lose their low-order part to underflow.
 pub(super) const SMALLEST: f64 = 1.183_129_797_395_182_6e-271; // 2^-900
-/// Numbers above this could overflow within a product.
-pub(super) const LARGEST: f64 = 1.0 / SMALLEST;
+/// Numbers above this could overflow within a product, where their halves are split.
+pub(super) const LARGEST: f64 = 6.696_928_794_914_171e299; // 2^996
 
 /// A number of about 106 bits.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]

@@ -17,7 +17,7 @@ pub enum ExactError {
         /// Bytes that it would take at least, and those that are allowed.
         bytes: (u64, u64),
     },
-    /// Numbers below 2⁻⁹⁰⁰ or above 2⁹⁰⁰ occurred, where double-double arithmetic loses its bounds.
+    /// Numbers below 2⁻⁹⁰⁰ or above 2⁹⁹⁶ occurred, where double-double arithmetic loses its bounds.
     OutOfRange {
         /// A state of the class where they occurred.
         example: String,
@@ -44,7 +44,7 @@ impl ExactError {
                 work.0 as f64, bytes.0 as f64, work.1 as f64, bytes.1 as f64
             ),
             Self::OutOfRange { example } => format!(
-                "numbers below 1e-271 or above 1e271 occur around state `{example}`, where this version cannot keep its error \
+                "numbers below 1e-271 or above 1e299 occur around state `{example}`, where this version cannot keep its error \
                  bounds"
             ),
             Self::Contradiction { elimination, reference } => format!(

@@ -58,7 +58,7 @@
 //! the sum of squares the error Σ y_i p_ij (2 |d| δ + δ²) besides the relative one of its weights.
 //!
 //! All this is first order in quantities below 1e-12; a factor 1 + 1e-10 and outward rounding to doubles cover the rest.
-//! Numbers below 2⁻⁹⁰⁰ or above 2⁹⁰⁰ are refused where they occur, given probabilities included, since underflow and overflow
+//! Numbers below 2⁻⁹⁰⁰ or above 2⁹⁹⁶ are refused where they occur, given probabilities included, since underflow and overflow
 //! would void the relative bounds. In the sum of squares, weights below that count as error instead.
 //! `tests/exact_properties.rs` holds all of it against fractions, leave probabilities of 1e-18 included.
 //!

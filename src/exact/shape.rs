@@ -98,13 +98,18 @@ impl Shape {
         Some(self.central(4)? / (variance * variance) - 3.0)
     }
 
+    /// Whether the time deviates from its mean by one size only, as far as can be told: then (T − μ)² does not vary.
+    pub fn has_one_deviation(&self) -> bool {
+        // m₄ − m₂² cancels there.
+        self.central(2).zip(self.central(4)).is_some_and(|(m2, m4)| m2 > 0.0 && m4 - m2 * m2 <= 1e-9 * m4)
+    }
+
     /// Skewness and excess kurtosis of the squared deviation (T − μ)², on which the variance estimate rests.
     pub fn of_squared_deviation(&self) -> Option<(f64, f64)> {
         let [m2, m4, m6, m8] = [2, 4, 6, 8].map(|order| self.central(order));
         let (m2, m4, m6, m8) = (m2?, m4?, m6?, m8?);
         let variance = m4 - m2 * m2;
-        // Cancels when the deviation has one size only: then its square does not vary.
-        if variance <= 1e-9 * m4 {
+        if self.has_one_deviation() {
             return None;
         }
         let third = m6 - 3.0 * m4 * m2 + 2.0 * m2.powi(3);

@@ -5,7 +5,7 @@ use std::collections::HashMap;
 use csv::{ByteRecord, StringRecord};
 
 use super::draft::{Draft, DraftMove, Written};
-use super::fault::{Fault, FaultKind, did_you_mean, shortened};
+use super::fault::{Fault, FaultKind, did_you_mean, nearest, shortened};
 use super::number::Number;
 use super::records::{self, Records, decimal_point};
 
@@ -86,12 +86,14 @@ pub(super) fn read_moves(bytes: &[u8], draft: &mut Draft) {
 
 fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
     let file = draft.moves_file;
+    let is_column = |known: &str| COLUMNS.iter().any(|name| name.eq_ignore_ascii_case(known));
     let mut columns = [None; 3];
     for (column, name) in columns.iter_mut().zip(COLUMNS) {
         *column = header.iter().position(|known| known.eq_ignore_ascii_case(name));
         if column.is_none() {
-            let known = header.iter().map(String::as_str);
-            let remedy = did_you_mean(name, known, "the header is from,to,probability");
+            let others = header.iter().map(String::as_str).filter(|known| !is_column(known));
+            let near = nearest(name, others).map(|near| format!("rename `{near}` to `{name}`"));
+            let remedy = near.unwrap_or_else(|| "the header is from,to,probability".to_owned());
             let said = format!("the header has no column `{name}`");
             let fault = Fault::new(FaultKind::Shape, draft.place(file, header_line), said, remedy);
             draft.fault(fault.valued(header.join(",")));
@@ -139,7 +141,8 @@ fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut
         draft.fault(fault.valued(shortened(&header.join(","))));
         draft.moves_unread = true;
     };
-    if names.is_empty() || header.iter().all(|name| Number::parse(name).is_ok()) {
+    // A number among the names is a table or a list of moves without its header.
+    if names.is_empty() || header.iter().all(|name| Number::parse(name).is_ok()) || is_a_move(header) {
         let said = "the first line does not name the states";
         let remedy = "begin with from,to,probability for a list of moves, or with a blank cell and the names of all states \
                       for a square table";
@@ -193,6 +196,13 @@ fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut
         }
     }
     hint_at_transposition(draft, &column_sums);
+}
+
+/// Whether a line is one of a list of moves, such as `a,b,0.5`, which a header never is.
+fn is_a_move(line: &[String]) -> bool {
+    let [from, to, probability] = line else { return false };
+    let is_number = |text: &str| Number::parse(text).is_ok();
+    !from.is_empty() && !is_number(from) && !is_number(to) && is_number(probability)
 }
 
 /// When every column sums to one and some row does not, the table is most likely written the other way round.

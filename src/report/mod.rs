@@ -65,6 +65,6 @@ mod words;
 
 pub use document::{Answer, Body, Document, Input, ModelSummary, PlanSummary, Refused, RunSummary, SeedSource};
 pub use json::{write_json, write_refusal};
-pub use number::{proven, proven_within, rounded, thousands};
+pub use number::{duration, proven, proven_within, rounded, thousands};
 pub use text::{Layout, write_text};
 pub use words::{shown, wrapped};

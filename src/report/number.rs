@@ -99,6 +99,21 @@ pub fn proven_within(answer: Bounded, digits: usize) -> String {
     }
 }
 
+/// A length of time in the unit that suits it.
+///
+/// ```
+/// use tallystone::report::duration;
+/// assert_eq!(duration(57.0), "57 s");
+/// assert_eq!(duration(5_700.0), "95 min");
+/// assert_eq!(duration(5.7e7), "660 days");
+/// assert_eq!(duration(3.2e10), "1000 years");
+/// ```
+pub fn duration(seconds: f64) -> String {
+    const UNITS: [(f64, &str); 4] = [(31_557_600.0, "years"), (86_400.0, "days"), (3_600.0, "h"), (60.0, "min")];
+    let (length, unit) = UNITS.into_iter().find(|(length, _)| seconds >= 2.0 * length).unwrap_or((1.0, "s"));
+    format!("{} {unit}", rounded(seconds / length, 2))
+}
+
 /// A count with its thousands parted.
 ///
 /// ```

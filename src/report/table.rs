@@ -19,8 +19,16 @@ pub(super) const KEPT: u8 = u8::MAX;
 /// Names are not cut below this.
 const SHORTEST_NAME: usize = 16;
 
-/// The lines of a table, heading first. The first column holds names and is cut if nothing else helps.
-pub(super) fn lines(columns: &[Column], rows: &[Vec<String>], width: usize) -> Vec<Vec<String>> {
+/// A table that fits.
+pub(super) struct Table {
+    /// Its cells line by line, heading first.
+    pub(super) lines: Vec<Vec<String>>,
+    /// Titles of the columns that were dropped.
+    pub(super) dropped: Vec<&'static str>,
+}
+
+/// Fits a table to a width. The first column holds names and is cut if nothing else helps.
+pub(super) fn table(columns: &[Column], rows: &[Vec<String>], width: usize) -> Table {
     let widest = |at: usize| {
         let cells = rows.iter().map(|row| row[at].width());
         cells.chain([columns[at].title.width()]).max().unwrap_or(0)
@@ -43,7 +51,8 @@ pub(super) fn lines(columns: &[Column], rows: &[Vec<String>], width: usize) -> V
     };
     let heading = in_use.iter().map(|at| cell(*at, columns[*at].title)).collect();
     let body = rows.iter().map(|row| in_use.iter().map(|at| cell(*at, &row[*at])).collect());
-    std::iter::once(heading).chain(body).collect()
+    let dropped = (0..columns.len()).filter(|at| !in_use.contains(at)).map(|at| columns[at].title).collect();
+    Table { lines: std::iter::once(heading).chain(body).collect(), dropped }
 }
 
 #[cfg(test)]
@@ -60,11 +69,13 @@ mod tests {
         ];
         let rows = vec![vec!["absorption_probability:shipped".into(), "0.5".into(), "12345".into(), "agree".into()]];
         let at =
-            |width: usize| lines(&columns, &rows, width).into_iter().map(|line| line.join("  ")).collect::<Vec<_>>();
+            |width: usize| table(&columns, &rows, width).lines.iter().map(|line| line.join("  ")).collect::<Vec<_>>();
         assert_eq!(at(80)[1], "absorption_probability:shipped    0.5  12345  agree  ");
         assert_eq!(at(50)[1], "absorption_probability:shipped    0.5  agree  ");
         assert_eq!(at(40)[1], "absorption_probability:shipped  agree  ");
         assert_eq!(at(30)[1], "absorption…ty:shipped  agree  ");
+        assert!(table(&columns, &rows, 80).dropped.is_empty());
+        assert_eq!(table(&columns, &rows, 50).dropped, ["extra"]);
         for width in 26..90 {
             assert!(at(width).iter().all(|line| line.width() <= width), "{width}");
         }

@@ -4,11 +4,12 @@ use std::io::{self, Write};
 
 use crate::compare::{Comparison, Row, Verdict};
 use crate::exact::Bounded;
+use crate::model::Quantity;
 use crate::sampling::Estimate;
 
 use super::document::{Answer, Body, Document, SeedSource};
 use super::number::{proven, proven_within, rounded, thousands};
-use super::table::{Column, KEPT, lines};
+use super::table::{Column, KEPT, Table, table};
 use super::words::{shown, wrapped};
 
 /// Rows that the text shows; files hold all.
@@ -69,7 +70,8 @@ fn particulars(document: &Document) -> Vec<String> {
         let ignored: Vec<String> = input.ignored_columns.iter().map(|name| shown(name)).collect();
         let ignored =
             if ignored.is_empty() { String::new() } else { format!("; columns not read: {}", ignored.join(", ")) };
-        lines.push(format!("{rows} outcomes from {}{ignored}", shown(&input.file)));
+        let s = if input.rows == Some(1) { "" } else { "s" };
+        lines.push(format!("{rows} outcome{s} from {}{ignored}", shown(&input.file)));
     }
     let run = document.run.as_ref();
     let times = run.and_then(|run| run.times).filter(|_| matches!(document.body, Body::Sample(_)));
@@ -118,8 +120,8 @@ fn write_comparison(
     ];
     let worst_first = worst_first(comparison);
     let rows: Vec<Vec<String>> = worst_first.iter().map(|row| cells(row)).collect();
-    for (number, line) in lines(&COLUMNS, &rows, layout.width).iter().enumerate() {
-        let mut line = line.clone();
+    let Table { lines, dropped } = table(&COLUMNS, &rows, layout.width);
+    for (number, mut line) in lines.into_iter().enumerate() {
         if let (Some(at), Some(verdict)) = (number.checked_sub(1), line.last_mut()) {
             *verdict = colored(verdict.trim_end(), worst_first[at].verdict, layout);
         }
@@ -127,8 +129,11 @@ fn write_comparison(
     }
     let hidden = comparison.rows.len() - worst_first.len();
     if hidden > 0 {
-        writeln!(out, "and {hidden} more rows, none worse than these; --json holds all")?;
+        let s = if hidden == 1 { "" } else { "s" };
+        let text = format!("and {hidden} more row{s}, none worse than these; --json holds all");
+        writeln!(out, "{}", wrapped(&text, layout.width, 2))?;
     }
+    write_dropped(&dropped, layout, out)?;
     let item = |text: &str| wrapped(&format!("- {text}"), layout.width, 2);
     let notes = worst_first.iter().filter_map(|row| Some((row, note(row, comparison.replications)?)));
     let notes = grouped(notes.map(|(row, text)| (row.quantity.to_string(), text)));
@@ -151,11 +156,23 @@ fn write_comparison(
     writeln!(out, "{}", wrapped(closing(document, comparison), layout.width, 0))
 }
 
-/// The rows that are shown: disagreeing ones first, then the undecided, each in the order of the plan.
+/// Says which columns a narrow page leaves out.
+fn write_dropped(dropped: &[&str], layout: Layout, out: &mut impl Write) -> io::Result<()> {
+    if dropped.is_empty() {
+        return Ok(());
+    }
+    let text = format!("(a wider terminal also shows: {})", dropped.join(", "));
+    writeln!(out, "{}", wrapped(&text, layout.width, 2))
+}
+
+/// The rows that are shown: disagreeing ones first, then the undecided, each in the order of the plan; of many rows alike,
+/// those that are about all replications before those of single ends.
 fn worst_first(comparison: &Comparison) -> Vec<&Row> {
     let mut rows: Vec<&Row> = comparison.rows.iter().collect();
     if rows.len() > MOST_ROWS {
-        rows.sort_by_key(|row| std::cmp::Reverse(row.verdict));
+        let is_of_end =
+            |row: &Row| matches!(row.quantity, Quantity::AbsorptionProbability(_) | Quantity::MeanTimeGiven(_));
+        rows.sort_by_key(|row| (std::cmp::Reverse(row.verdict), is_of_end(row)));
         rows.truncate(MOST_ROWS);
     }
     rows
@@ -250,6 +267,12 @@ fn closing(document: &Document, comparison: &Comparison) -> &'static str {
     }
 }
 
+fn write_table(columns: &[Column], rows: &[Vec<String>], layout: Layout, out: &mut impl Write) -> io::Result<()> {
+    let Table { lines, dropped } = table(columns, rows, layout.width);
+    lines.iter().try_for_each(|line| writeln!(out, "{}", line.join("  ").trim_end()))?;
+    write_dropped(&dropped, layout, out)
+}
+
 fn write_answers(answers: &[Answer], layout: Layout, out: &mut impl Write) -> io::Result<()> {
     const COLUMNS: [Column; 3] = [
         Column { title: "quantity", right: false, worth: KEPT },
@@ -257,9 +280,7 @@ fn write_answers(answers: &[Answer], layout: Layout, out: &mut impl Write) -> io
         Column { title: "proven within", right: false, worth: 1 },
     ];
     let rows: Vec<Vec<String>> = answers.iter().map(answer_cells).collect();
-    for line in lines(&COLUMNS, &rows, layout.width) {
-        writeln!(out, "{}", line.join("  ").trim_end())?;
-    }
+    write_table(&COLUMNS, &rows, layout, out)?;
     for note in answers.iter().filter_map(|answer| Some(format!("- {}: {}", answer.quantity, answer.note.as_ref()?))) {
         writeln!(out, "{}", wrapped(&shown(&note), layout.width, 2))?;
     }
@@ -281,8 +302,5 @@ fn write_estimates(estimates: &[Estimate], layout: Layout, out: &mut impl Write)
     let row =
         |one: &Estimate| vec![shown(&one.quantity.to_string()), number(one.estimate, 6), number(one.standard_error, 2)];
     let rows: Vec<Vec<String>> = estimates.iter().map(row).collect();
-    for line in lines(&COLUMNS, &rows, layout.width) {
-        writeln!(out, "{}", line.join("  ").trim_end())?;
-    }
-    Ok(())
+    write_table(&COLUMNS, &rows, layout, out)
 }
