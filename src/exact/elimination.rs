@@ -31,16 +31,17 @@ pub(super) fn probabilities(row: Row<'_>) -> impl Iterator<Item = Move> + '_ {
     row.targets.iter().enumerate().map(move |(i, to)| Move { to: *to, probability: at(i) })
 }
 
-/// The same, held to the range of the arithmetic.
+/// Those of a state, or of the start, held to the range of the arithmetic.
 ///
 /// # Errors
 /// [`ExactError::OutOfRange`].
-pub(super) fn usable_probabilities(chain: &Chain, row: Row<'_>) -> Result<Vec<Move>, ExactError> {
+pub(super) fn usable_probabilities(chain: &Chain, from: Option<usize>) -> Result<Vec<Move>, ExactError> {
+    let row = from.map_or(chain.start(), |state| chain.row(state));
     let usable = |one: Move| {
         let is_usable = one.probability.is_in_range() && !one.probability.is_zero();
         is_usable
             .then_some(one)
-            .ok_or_else(|| ExactError::OutOfRange { example: chain.name(one.to as usize).to_owned() })
+            .ok_or_else(|| ExactError::OutOfRange { example: chain.name(from.unwrap_or(one.to as usize)).to_owned() })
     };
     probabilities(row).map(usable).collect()
 }
@@ -83,7 +84,7 @@ impl<'a> Elimination<'a> {
         }
         let mut moves: Vec<Vec<Move>> = vec![Vec::new(); n];
         for state in chain.components().iter().flatten().map(|state| *state as usize) {
-            moves[state] = usable_probabilities(chain, chain.row(state))?;
+            moves[state] = usable_probabilities(chain, Some(state))?;
             moves[state].retain(|one| one.to as usize != state);
         }
         let widest = moves.iter().map(Vec::len).max().unwrap_or(0) + 1;

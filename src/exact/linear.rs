@@ -29,7 +29,7 @@ pub(super) struct Linear {
 /// The start, over states.
 fn start(chain: &Chain) -> Result<Solution, ExactError> {
     let mut of = vec![Dd::ZERO; chain.states()];
-    usable_probabilities(chain, chain.start())?.iter().for_each(|one| of[one.to as usize] = one.probability);
+    usable_probabilities(chain, None)?.iter().for_each(|one| of[one.to as usize] = one.probability);
     Ok(Solution { of, error: U2 * INPUT })
 }
 
@@ -156,7 +156,7 @@ fn squares(
     let mut total = Squares::default();
     for state in transient {
         let own = times.of[*state];
-        for one in usable_probabilities(chain, chain.row(*state))? {
+        for one in usable_probabilities(chain, Some(*state))? {
             let after = if chain.end_of(one.to as usize).is_some() { Dd::ZERO } else { times.of[one.to as usize] };
             // A stay, and any move between states of equal mean, deviates by exactly one step.
             let (deviation, off) = if after == own {
@@ -168,7 +168,7 @@ fn squares(
             total.add(one.probability.times(visits.of[*state]), deviation, off);
         }
     }
-    for one in usable_probabilities(chain, chain.start())? {
+    for one in usable_probabilities(chain, None)? {
         let own = if chain.end_of(one.to as usize).is_some() { Dd::ZERO } else { times.of[one.to as usize] };
         if own != mean {
             let off = times.error * own.hi + mean_error * mean.hi + 8.0 * U2 * (own.hi + mean.hi);
