@@ -36,7 +36,7 @@ fn simulate(rng: &mut impl Rng) -> (&'static str, u64) {
 fn main() -> Result<(), Box<dyn std::error::Error>> {
     let model = Model::from_toml(MODEL)?;
     let settings = Settings::default();
-    let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, &settings)), &Silent)?;
+    let exact = Exact::solve(&model, &Request::of(&model, &Study::quantities(&model, &settings)), &Silent)?;
     let study = Study::new(&exact, &settings)?;
 
     let mut collector = Collector::new(&study);

@@ -22,7 +22,7 @@ fn main() -> Result<(), Box<dyn std::error::Error>> {
 
     let settings = Settings::default();
     let quantities = Study::quantities(&model, &settings);
-    let exact = Exact::solve(&model, &Request::of(&quantities), &Silent)?;
+    let exact = Exact::solve(&model, &Request::of(&model, &quantities), &Silent)?;
     let given_up = exact.absorption(&model.ends_named("given-up").ok_or("no such end")?);
     println!("given up with probability {} (proven: {} to {})", given_up.value, given_up.low, given_up.high);
 

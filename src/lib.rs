@@ -35,7 +35,7 @@
 //!
 //! let settings = Settings::default();
 //! let quantities = Study::quantities(&model, &settings);
-//! let exact = Exact::solve(&model, &Request::of(&quantities), &Silent)?;
+//! let exact = Exact::solve(&model, &Request::of(&model, &quantities), &Silent)?;
 //! let study = Study::new(&exact, &settings)?;
 //! let replications = study.plan().replications.expect("every default row can be decided");
 //! let plan = Plan { replications, seed: 1, grid: study.grid() };

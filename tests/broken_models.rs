@@ -7,8 +7,8 @@ use std::fs;
 use faults::{AS_NUMBER, Expected, GIVE_MOVES, IN_RANGE, hold, options};
 use tallystone::model::FaultKind::{
     AboveOne, AbsorbingWithMoves, BadName, DuplicateName, MissingStart, Negative, NoEndReachable, NoMoves, NonFinite,
-    NotAClosedClass, NotANumber, Rest, RowSum, Shape, Syntax, UnknownKey, UnknownName, UnknownState, Unsupported,
-    WrongType,
+    NotAClosedClass, NotANumber, OutOfRange, Rest, RowSum, Shape, Syntax, UnknownKey, UnknownName, UnknownState,
+    Unsupported, WrongType,
 };
 use tallystone::model::{Model, ModelError, ReadOptions};
 
@@ -136,7 +136,38 @@ fn keys_that_mean_nothing_or_hold_the_wrong_thing() {
     let cases: &[(&str, Expected<'_>)] = &[
         ("clok = \"steps\"", (UnknownKey, 3, "", "clok", "the key `clok` means nothing here", "did you mean `clock`?")),
         ("qqq = 1", (UnknownKey, 3, "", "qqq", "the key `qqq`", "the keys are title, clock")),
-        ("costs = 1", (Unsupported, 3, "", "costs", "`costs` is not read by this version", "take it out")),
+        ("costs = 1", (WrongType, 3, "costs", "1", "`costs` holds a value of type integer", "[costs.NAME]")),
+        ("[costs.c]\nvist = 1", (UnknownKey, 4, "", "vist", "means nothing in `c`", "did you mean `visit`?")),
+        ("[costs.c]\nvisit = { b = 1 }", (UnknownState, 4, "b", "", "the cost `c` lists `b`", "a state of the model")),
+        (
+            "[costs.c]\nvisit = { x = 1 }",
+            (UnknownState, 4, "x", "", "replications finish there", "the move that leads"),
+        ),
+        ("[costs.c]\nvisit = { a = \"much\" }", (NotANumber, 4, "c", "much", "`much` among the amounts", "-0.25")),
+        ("[costs.c]\nvisit = { a = inf }", (NonFinite, 4, "c", "inf", "`inf` among the amounts", "-0.25")),
+        (
+            "[costs.c]\nvisit = { a = 1e30 }",
+            (OutOfRange, 3, "c", "", "no common denominator and sizes", "fewer digits"),
+        ),
+        (
+            "[costs.c]\nmove = [{ from = \"a\", to = \"a\", cost = 1 }]",
+            (UnknownState, 4, "a", "a", "a move from `a` to `a`, which the model lacks", "a move of the model"),
+        ),
+        (
+            "[costs.c]\nmove = [{ from = \"a\", cost = 1 }]",
+            (Shape, 4, "", "", "a move of the cost `c` has no `to`", "write move = ["),
+        ),
+        ("hits = 1", (WrongType, 3, "hits", "1", "`hits` holds a value of type integer", "[hits.NAME]")),
+        ("[hits.h]\nstates = []", (Shape, 3, "h", "", "the hit `h` lists no states", "[hits.NAME]")),
+        ("[hits.h]\nstates = [\"b\"]", (UnknownState, 3, "b", "", "the hit `h` lists `b`", "a state of the model")),
+        (
+            "compare = [\"mean_cost:x\"]",
+            (UnknownName, 3, "", "mean_cost:x", "`x`, which is no cost", "name a cost below [costs]"),
+        ),
+        (
+            "compare = [\"mean_visits:x\"]",
+            (UnknownName, 3, "", "mean_visits:x", "`x`, where replications finish", "absorption_probability"),
+        ),
         ("clock = \"rates\"", (Unsupported, 3, "", "rates", "is not supported by this version", "clock = \"steps\"")),
         ("clock = \"hours\"", (WrongType, 3, "", "hours", "`hours` is no clock", "clock = \"steps\"")),
         ("title = 5", (WrongType, 3, "title", "5", "`title` holds a value of type integer", "in quotes")),
@@ -148,8 +179,8 @@ fn keys_that_mean_nothing_or_hold_the_wrong_thing() {
             (UnknownName, 3, "", "mean_tim", "`mean_tim` is no quantity", "mean `mean_time`?"),
         ),
         (
-            "compare = [\"mean_cost:x\"]",
-            (UnknownName, 3, "", "mean_cost:x", "not computed by this version", "mean_time"),
+            "compare = [\"skewness_time\"]",
+            (UnknownName, 3, "", "skewness_time", "not computed by this version", "mean_time"),
         ),
         ("compare = [\"time_quantile:2\"]", (UnknownName, 3, "", "time_quantile:2", "`2` is not a probability", "0.9")),
         (

@@ -31,7 +31,7 @@ fn compare(
     settings: &Settings,
     seeds: std::ops::Range<u64>,
 ) -> Vec<Comparison> {
-    let exact = Exact::solve(model, &Request::of(&Study::quantities(model, settings)), &Silent).unwrap();
+    let exact = Exact::solve(model, &Request::of(model, &Study::quantities(model, settings)), &Silent).unwrap();
     let study = Study::new(&exact, settings).unwrap();
     let replications = study.plan().replications.expect("default rows can all be decided");
     seeds
@@ -108,7 +108,7 @@ fn without_tolerance_the_error_rate_is_kept() {
     for name in ["absorption_probability", "mean_time", "variance_time", "mean_time_given", "time_quantile"] {
         settings.tolerances.set(ToleranceKey::All(name.into()), Tolerance::Absolute(0.0));
     }
-    let exact = Exact::solve(&right, &Request::of(&Study::quantities(&right, &settings)), &Silent).unwrap();
+    let exact = Exact::solve(&right, &Request::of(&right, &Study::quantities(&right, &settings)), &Silent).unwrap();
     let study = Study::new(&exact, &settings).unwrap();
     let sampler = Sampler::new(right.chain());
     let alarms = (0..400)

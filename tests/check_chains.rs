@@ -12,7 +12,7 @@ use tallystone::sampling::{Plan, Sampler, sample};
 
 fn check(model: &Model) -> Comparison {
     let settings = Settings { power: 0.9999, ..Settings::default() };
-    let exact = Exact::solve(model, &Request::of(&Study::quantities(model, &settings)), &Silent).unwrap();
+    let exact = Exact::solve(model, &Request::of(model, &Study::quantities(model, &settings)), &Silent).unwrap();
     let study = Study::new(&exact, &settings).unwrap();
     let replications = study.plan().replications.expect("default rows can all be decided");
     let plan = Plan { replications, seed: 20_261_201, grid: study.grid() };

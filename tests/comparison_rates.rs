@@ -16,7 +16,7 @@ fn tables(
     replications: Option<u64>,
     seeds: std::ops::Range<u64>,
 ) -> Vec<Comparison> {
-    let exact = Exact::solve(model, &Request::of(&Study::quantities(model, settings)), &Silent).unwrap();
+    let exact = Exact::solve(model, &Request::of(model, &Study::quantities(model, settings)), &Silent).unwrap();
     let study = Study::new(&exact, settings).unwrap();
     let replications = replications.unwrap_or_else(|| study.plan().replications.unwrap());
     let sampler = Sampler::new(program.chain());

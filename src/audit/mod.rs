@@ -28,7 +28,7 @@
 //!     repair = { shipped = 0.75, scrapped = "rest" }
 //! "#)?;
 //! let settings = Settings::default();
-//! let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, &settings)), &Silent)?;
+//! let exact = Exact::solve(&model, &Request::of(&model, &Study::quantities(&model, &settings)), &Silent)?;
 //! let study = Study::new(&exact, &settings)?;
 //!
 //! let mut collector = Collector::new(&study);

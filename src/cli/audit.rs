@@ -6,7 +6,7 @@ use super::arguments::Audit;
 use super::failure::{Failure, of_verdict};
 use super::{Session, output, steps};
 use crate::audit::read_outcomes;
-use crate::compare::Study;
+use crate::compare::{Settings, Study};
 use crate::exact::{Exact, Request};
 use crate::report::{Body, Input};
 
@@ -16,9 +16,9 @@ pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
     let mut inputs = steps::files_of(&model);
     inputs.push(&arguments.outcomes);
     output::look_at_destinations(&[arguments.output.json.as_deref()], &inputs)?;
-    let settings = steps::settings(&arguments.comparing);
+    let settings = Settings { outcomes_only: true, ..steps::settings(&arguments.comparing) };
     let started = Instant::now();
-    let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, &settings)), &session.watch)?;
+    let exact = Exact::solve(&model, &Request::of(&model, &Study::quantities(&model, &settings)), &session.watch)?;
     let study = Study::new(&exact, &settings)?;
     steps::look_at(&study.warnings(), &arguments.reading)?;
     let outcomes = read_outcomes(&arguments.outcomes, &study, &session.watch)?;

@@ -9,7 +9,7 @@ use crate::compare::{SizePlan, Study, Verdict};
 use crate::exact::{Exact, Request};
 use crate::model::Model;
 use crate::report::{Body, duration, rounded, thousands};
-use crate::sampling::{BLOCK, Plan, Sampler, sample};
+use crate::sampling::{BLOCK, ObservedSampler, OutcomeSource, Plan, Sampler, sample_with};
 
 /// Longest run that is started unasked.
 const UNASKED_SECONDS: f64 = 600.0;
@@ -52,19 +52,20 @@ fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, F
     let settings = steps::settings(&arguments.comparing);
     let (seed, seed_source) = steps::seed(&arguments.sampling)?;
     let started = Instant::now();
-    let exact = Exact::solve(model, &Request::of(&Study::quantities(model, &settings)), &session.watch)?;
+    let exact = Exact::solve(model, &Request::of(model, &Study::quantities(model, &settings)), &session.watch)?;
     let study = Study::new(&exact, &settings)?;
     steps::look_at(&study.warnings(), &arguments.reading)?;
 
     let size = study.plan();
     let sampler = Sampler::new(model.chain());
+    let watching = ObservedSampler::new(&sampler, model, study.observed());
     let replications = arguments.sampling.replications.or(size.replications).unwrap_or(BLOCK);
     let plan = Plan { replications, seed, grid: study.grid() };
     let tally = steps::on_threads(&arguments.sampling, || {
-        allow(&sampler, &plan, &exact, &size, arguments)?;
+        allow(&watching, &plan, &exact, &size, arguments)?;
         let steps = exact.mean_time().value * replications as f64;
         session.watch.expect(format!(", some {} steps", thousands(steps as u64)));
-        Ok(sample(&sampler, &plan, &session.watch)?)
+        Ok(sample_with(&watching, &plan, &session.watch)?)
     })?;
     let comparison = study.compare(&tally, Vec::new());
     let verdict = comparison.verdict;
@@ -76,7 +77,13 @@ fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, F
 }
 
 /// Refuses a run that is predicted to take longer than allowed.
-fn allow(sampler: &Sampler, plan: &Plan, exact: &Exact<'_>, size: &SizePlan, arguments: &Check) -> Result<(), Failure> {
+fn allow(
+    sampler: &dyn OutcomeSource,
+    plan: &Plan,
+    exact: &Exact<'_>,
+    size: &SizePlan,
+    arguments: &Check,
+) -> Result<(), Failure> {
     let unasked = arguments.sampling.replications.is_none().then_some(UNASKED_SECONDS);
     let Some(limit) = arguments.time_limit.or(unasked) else { return Ok(()) };
     let seconds = steps::predicted_seconds(sampler, plan, exact.mean_time().value);

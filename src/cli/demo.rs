@@ -9,7 +9,7 @@ use super::failure::{Failure, status};
 use super::sample::write_outcomes;
 use super::{Session, output};
 use crate::model::Model;
-use crate::sampling::{Grid, Plan, Sampler};
+use crate::sampling::{Grid, ObservedSampler, Plan, Sampler};
 
 /// The field-radio refurbishing bench.
 const MODEL: &str = include_str!("demo/bench.toml");
@@ -48,7 +48,9 @@ pub(super) fn run(arguments: &Demo, session: &Session) -> Result<u8, Failure> {
 fn outcomes(text: &str, path: &Path, session: &Session) -> Result<(), Failure> {
     let model = Model::from_toml(text)?;
     let plan = Plan { replications: REPLICATIONS, seed: SEED, grid: Arc::new(Grid::new(Vec::new())) };
-    write_outcomes(path, &Sampler::new(model.chain()), &plan, model.chain(), &session.watch).map(drop)
+    let sampler = Sampler::new(model.chain());
+    let watching = ObservedSampler::new(&sampler, &model, [].into());
+    write_outcomes(path, &watching, &plan, model.chain(), &session.watch).map(drop)
 }
 
 #[cfg(test)]

@@ -16,7 +16,7 @@ pub(super) fn run(arguments: &Arguments, session: &Session) -> Result<u8, Failur
     let quantities = quantities(arguments, &model)?;
     output::look_at_destinations(&[arguments.output.json.as_deref()], &steps::files_of(&model))?;
     let started = Instant::now();
-    let exact = Exact::solve(&model, &Request::of(&quantities), &session.watch)?;
+    let exact = Exact::solve(&model, &Request::of(&model, &quantities), &session.watch)?;
     let answers = quantities.into_iter().map(|quantity| answer(&exact, quantity)).collect();
     let mut document = Document::new(ModelSummary::of(&model), Body::Exact(answers));
     let seconds = started.elapsed().as_secs_f64();

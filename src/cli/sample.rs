@@ -10,7 +10,9 @@ use super::failure::{Failure, status};
 use super::{Session, output, steps};
 use crate::model::{Chain, Model, Progress};
 use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary};
-use crate::sampling::{Grid, Plan, Sampler, Streams, Tally, estimates, sample};
+use crate::sampling::{
+    Grid, Observable, ObservedSampler, OutcomeSource, Plan, Sampler, Streams, Tally, estimates, sample_with,
+};
 
 /// Replications where none are asked for.
 const REPLICATIONS: u64 = 100_000;
@@ -22,6 +24,9 @@ pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> 
     let replications = arguments.sampling.replications.unwrap_or(REPLICATIONS);
     let plan = Plan { replications, seed, grid: Arc::new(Grid::logarithmic()) };
     let sampler = Sampler::new(model.chain());
+    let costs = (0..model.costs().len()).map(Observable::Cost);
+    let observed = costs.chain((0..model.hits().len()).map(Observable::Hit)).collect();
+    let watching = ObservedSampler::new(&sampler, &model, observed);
     let files = [&arguments.write_outcomes, &arguments.write_tally, &arguments.output.json];
     output::look_at_destinations(&files.map(Option::as_deref), &steps::files_of(&model))?;
     let started = Instant::now();
@@ -30,8 +35,8 @@ pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> 
     let quiet = arguments.output.quiet || is_taken(&arguments.write_outcomes) || is_taken(&arguments.write_tally);
     let destination = Output { quiet, ..arguments.output.clone() };
     let tally = match &arguments.write_outcomes {
-        Some(path) => write_outcomes(path, &sampler, &plan, model.chain(), &session.watch)?,
-        None => steps::on_threads(&arguments.sampling, || Ok(sample(&sampler, &plan, &session.watch)?))?,
+        Some(path) => write_outcomes(path, &watching, &plan, model.chain(), &session.watch)?,
+        None => steps::on_threads(&arguments.sampling, || Ok(sample_with(&watching, &plan, &session.watch)?))?,
     };
     let seconds = started.elapsed().as_secs_f64();
     if let Some(path) = &arguments.write_tally {
@@ -69,12 +74,12 @@ fn document(
 /// Samples one replication after another, which are the same as those of any number of threads, and writes each.
 pub(super) fn write_outcomes(
     path: &Path,
-    sampler: &Sampler,
+    sampler: &ObservedSampler<'_>,
     plan: &Plan,
     chain: &Chain,
     progress: &dyn Progress,
 ) -> Result<Tally, Failure> {
-    let mut tally = Tally::new(sampler.ends(), Arc::clone(&plan.grid));
+    let mut tally = Tally::observing(sampler.ends(), Arc::clone(&plan.grid), sampler.observed());
     let mut interrupted = None;
     let walked = output::write(path, |out| {
         progress.begin("sampling", "replications", Some(plan.replications));
@@ -91,7 +96,7 @@ pub(super) fn write_outcomes(
 
 fn walk(
     out: &mut dyn Write,
-    sampler: &Sampler,
+    sampler: &ObservedSampler<'_>,
     plan: &Plan,
     chain: &Chain,
     tally: &mut Tally,
@@ -100,12 +105,14 @@ fn walk(
     let names: Vec<String> = chain.ends().iter().map(|end| quoted(&end.name)).collect();
     writeln!(out, "replication,end,time")?;
     let streams = Streams::new(plan.seed);
+    let mut values = vec![None; sampler.observed().len()];
     for block in 0..plan.blocks() {
         let mut rng = streams.block(block);
         for _ in 0..plan.replications_in(block) {
-            let outcome = sampler.walk(&mut rng, progress).map_err(|stopped| io::Error::other(stopped.to_string()))?;
+            let walked = sampler.walk(&mut rng, &mut values, progress);
+            let outcome = walked.map_err(|stopped| io::Error::other(stopped.to_string()))?;
             writeln!(out, "{},{},{}", tally.replications(), names[outcome.end as usize], outcome.time)?;
-            tally.add(outcome.end as usize, outcome.time);
+            tally.add_observed(outcome.end as usize, outcome.time, &values);
         }
         progress.advance(plan.replications_in(block));
         if progress.interrupted() {

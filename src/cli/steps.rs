@@ -12,7 +12,7 @@ use super::{Session, output};
 use crate::compare::{Settings, Study};
 use crate::model::{Model, ReadOptions, Silent, Tolerance, ToleranceKey, Tolerances, Warning};
 use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary, SeedSource};
-use crate::sampling::{Plan, Sampler, Tally, sample};
+use crate::sampling::{OutcomeSource, Plan, Tally, sample_with};
 
 /// Reads a model and says what deserves a look.
 pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
@@ -51,6 +51,7 @@ pub(super) fn settings(comparing: &Comparing) -> Settings {
         tolerances: collected(&comparing.tolerances),
         detectable: collected(&comparing.detectable),
         look: comparing.look,
+        outcomes_only: false,
     }
 }
 
@@ -87,7 +88,7 @@ const FASTEST_STEP_SECONDS: f64 = 5e-10;
 
 /// Seconds that sampling will take, by a short pilot on one thread; from the number of steps alone where even the pilot
 /// would be long.
-pub(super) fn predicted_seconds(sampler: &Sampler, plan: &Plan, mean_steps: f64) -> f64 {
+pub(super) fn predicted_seconds(sampler: &dyn OutcomeSource, plan: &Plan, mean_steps: f64) -> f64 {
     let threads = rayon::current_num_threads() as f64;
     let steps = mean_steps * plan.replications as f64;
     let replications = (PILOT_STEPS / mean_steps.max(1.0)).clamp(1.0, 4096.0) as u64;
@@ -96,7 +97,7 @@ pub(super) fn predicted_seconds(sampler: &Sampler, plan: &Plan, mean_steps: f64)
     }
     let pilot = Plan { replications: replications.min(plan.replications), ..plan.clone() };
     let started = Instant::now();
-    let piloted = sample(sampler, &pilot, &Silent);
+    let piloted = sample_with(sampler, &pilot, &Silent);
     debug_assert!(piloted.is_ok(), "nobody interrupts a silent run");
     started.elapsed().as_secs_f64() / pilot.replications as f64 * plan.replications as f64 / threads
 }

@@ -1,8 +1,9 @@
 //! Rows about which nothing is random: probabilities of 0 and 1, times that the moves fix.
 
 use crate::model::Quantity;
-use crate::sampling::Tally;
+use crate::sampling::{Observable, Tally};
 
+use super::sample::recorded;
 use super::share::Event;
 
 /// The only thing that the model allows.
@@ -21,6 +22,15 @@ pub(super) enum Certain {
         ends: Vec<usize>,
         /// The time.
         time: u64,
+    },
+    /// What is recorded of every replication that has a value is one number, over a denominator.
+    Amount {
+        /// What is recorded.
+        observable: Observable,
+        /// The number.
+        amount: i128,
+        /// What it is divided by.
+        denominator: u64,
     },
     /// Every replication finishes in one end at one time.
     Outcome {
@@ -47,7 +57,16 @@ impl Certain {
     pub(super) fn cuts(&self) -> Vec<u64> {
         match self {
             Self::Event { event, .. } => event.cuts(),
-            Self::Time { .. } | Self::Outcome { .. } => Vec::new(),
+            Self::Time { .. } | Self::Amount { .. } | Self::Outcome { .. } => Vec::new(),
+        }
+    }
+
+    /// What the tally must record.
+    pub(super) fn observes(&self) -> Option<Observable> {
+        match self {
+            Self::Event { event, .. } => event.observes(),
+            Self::Amount { observable, .. } => Some(*observable),
+            Self::Time { .. } | Self::Outcome { .. } => None,
         }
     }
 
@@ -66,9 +85,23 @@ impl Certain {
                 let estimate = match quantity {
                     Quantity::VarianceTime => sums.variance(),
                     Quantity::SdTime => sums.variance().map(f64::sqrt),
+                    Quantity::CovarianceTimeCost(_) => (!otherwise).then_some(0.0),
                     // A quantile of several times would need all of them.
                     Quantity::TimeQuantile(_) if otherwise => None,
                     _ => sums.mean(),
+                };
+                Seen { replications: sums.count(), otherwise, estimate }
+            }
+            Self::Amount { observable, amount, denominator } => {
+                let column = recorded(tally, *observable);
+                let (sums, unit) = (column.sums(), *denominator as f64);
+                let otherwise = column.range().is_some_and(|range| range != (*amount, *amount));
+                let estimate = match quantity {
+                    Quantity::VarianceCost(_) | Quantity::VarianceVisits(_) => {
+                        sums.values().variance().map(|variance| variance / unit / unit)
+                    }
+                    Quantity::CovarianceTimeCost(_) => sums.covariance().map(|covariance| covariance / unit),
+                    _ => sums.values().mean().map(|mean| mean / unit),
                 };
                 Seen { replications: sums.count(), otherwise, estimate }
             }

@@ -201,7 +201,7 @@ pub(super) mod tests {
 
     pub(in super::super) fn with_curves(test: impl FnOnce(Curves<'_>)) {
         let model = Model::from_toml(WALK).unwrap();
-        let exact = Exact::solve(&model, &Request::of(&[Quantity::Law]), &Silent).unwrap();
+        let exact = Exact::solve(&model, &Request::of(&model, &[Quantity::Law]), &Silent).unwrap();
         test(Curves::new(&exact, exact.law().unwrap()));
     }
 

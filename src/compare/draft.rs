@@ -1,15 +1,18 @@
 //! From a quantity to a row: its exact answer, and the method that fits it.
 
-use crate::exact::{Bounded, Exact};
+use crate::exact::{Bounded, Exact, Shape};
 use crate::model::{Quantity, Tolerance};
+use crate::sampling::Observable;
 
 use super::certain::Certain;
+use super::covariance::Covariance;
 use super::curves::Curves;
 use super::law::{Band, ChiSquare};
 use super::mean::{Mean, Spread};
 use super::method::Method;
 use super::planned::{Basis, Outcomes, Planned, Tested};
 use super::quantile::Quantile;
+use super::sample::Sample;
 use super::share::{Event, Share};
 use super::variance::{Squares, Variance};
 use super::{NotCompared, tolerance};
@@ -61,6 +64,24 @@ fn named(exact: &Exact<'_>, name: &str) -> Vec<usize> {
     exact.model().ends_named(name).unwrap_or_default()
 }
 
+/// What must be recorded for a quantity about visits, costs or hits, and its denominator.
+fn observable(exact: &Exact<'_>, quantity: &Quantity) -> Option<(Observable, u64)> {
+    let model = exact.model();
+    match quantity {
+        Quantity::MeanVisits(of) | Quantity::VarianceVisits(of) | Quantity::VisitProbability(of) => {
+            Some((Observable::Visits(model.transient_named(of)?), 1))
+        }
+        Quantity::HitProbability(of) | Quantity::MeanTimeGivenHit(of) => {
+            Some((Observable::Hit(model.hit_named(of)?), 1))
+        }
+        Quantity::MeanCost(of) | Quantity::VarianceCost(of) | Quantity::CovarianceTimeCost(of) => {
+            let number = model.cost_named(of)?;
+            Some((Observable::Cost(number), model.costs()[number].denominator))
+        }
+        _ => None,
+    }
+}
+
 /// The ends that can be reached, of those whose probability a quantity is.
 fn outcomes(exact: &Exact<'_>, quantity: &Quantity) -> Option<Outcomes> {
     let Quantity::AbsorptionProbability(name) = quantity else { return None };
@@ -96,6 +117,25 @@ fn certainty(exact: &Exact<'_>, quantity: &Quantity) -> Option<(Option<Bounded>,
             let time = exact.only_time(&ends)?;
             Some((Some(Bounded::exactly(time as f64)), Certain::Time { ends, time }))
         }
+        Quantity::VisitProbability(_) | Quantity::HitProbability(_) => {
+            let probability = exact.answer(quantity).ok().flatten()?;
+            let always = probability == Bounded::exactly(1.0);
+            let never = probability == Bounded::exactly(0.0);
+            let event = Event::Met(observable(exact, quantity)?.0);
+            (always || never).then_some((Some(probability), Certain::Event { event, always }))
+        }
+        Quantity::CovarianceTimeCost(_) if exact.only_time(&all).is_some() => fixed(0.0),
+        Quantity::MeanVisits(_)
+        | Quantity::VarianceVisits(_)
+        | Quantity::MeanCost(_)
+        | Quantity::VarianceCost(_)
+        | Quantity::CovarianceTimeCost(_)
+        | Quantity::MeanTimeGivenHit(_) => {
+            let amount = exact.only_amount(quantity)?;
+            let (observable, denominator) = observable(exact, quantity)?;
+            let answer = exact.answer(quantity).ok().flatten();
+            Some((answer, Certain::Amount { observable, amount, denominator }))
+        }
         Quantity::Law => {
             let time = exact.only_time(&all)?;
             let mut possible = all.into_iter().filter(|end| exact.absorption(&[*end]).high > 0.0);
@@ -115,12 +155,17 @@ impl<'a> Chosen<'a> {
     fn of(method: impl Method + 'a) -> Self {
         Self { method: Box::new(method), default: None }
     }
+
+    /// The same with a default tolerance.
+    fn with(method: impl Method + 'a, default: Tolerance) -> Self {
+        Self { method: Box::new(method), default: Some(default) }
+    }
 }
 
 const UNKNOWN_SHAPE: &str =
-    "the higher moments of this time are not known well enough to say from how many replications an interval holds";
+    "its higher moments are not known well enough to say from how many replications an interval holds";
 
-const ONE_DEVIATION: &str = "this time has two values equally far from its mean, so that the estimate of its variance hardly \
+const ONE_DEVIATION: &str = "it has two values equally far from its mean, so that the estimate of its variance hardly \
                              varies and has no interval; the mean and the law hold all there is";
 
 /// The method for a quantity with its answer; the text says why there is none.
@@ -145,27 +190,79 @@ fn method<'a>(
         Quantity::SurvivalProbability(time) => Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds })),
         Quantity::MeanTime => {
             let spread = Spread::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
-            Ok(Chosen::of(Mean { ends: None, share: 1.0, exact: bounds, spread }))
+            Ok(Chosen::of(Mean { of: Sample::Times, share: 1.0, exact: bounds, spread }))
         }
         Quantity::MeanTimeGiven(name) => {
             let ends = named(exact, name);
             let shape = exact.shape_given(&ends).ok_or_else(undefined)?;
             let spread = Spread::of(&shape).ok_or(UNKNOWN_SHAPE)?;
             let share = exact.absorption(&ends).value;
-            Ok(Chosen::of(Mean { ends: Some(ends), share, exact: bounds, spread }))
+            Ok(Chosen::of(Mean { of: Sample::TimesIn(ends), share, exact: bounds, spread }))
         }
         Quantity::VarianceTime | Quantity::SdTime => {
-            let shape = exact.shape();
-            let reason = if shape.has_one_deviation() { ONE_DEVIATION } else { UNKNOWN_SHAPE };
-            let squares = Squares::of(shape).ok_or(reason)?;
-            Ok(Chosen::of(Variance { root: *quantity == Quantity::SdTime, exact: bounds, squares }))
+            let squares = squares(exact.shape())?;
+            let root = *quantity == Quantity::SdTime;
+            Ok(Chosen::of(Variance { sample: Sample::Times, root, exact: bounds, squares }))
         }
+        Quantity::VisitProbability(_) | Quantity::HitProbability(_) => {
+            let (observable, _) = observable(exact, quantity).ok_or_else(undefined)?;
+            Ok(Chosen::of(Share { event: Event::Met(observable), exact: bounds }))
+        }
+        Quantity::MeanVisits(_)
+        | Quantity::VarianceVisits(_)
+        | Quantity::MeanCost(_)
+        | Quantity::VarianceCost(_)
+        | Quantity::CovarianceTimeCost(_)
+        | Quantity::MeanTimeGivenHit(_) => of_observable(exact, quantity, bounds),
         Quantity::TimeQuantile(p) => {
             let law = exact.law().map_err(ToString::to_string)?;
             let quantile = Quantile { p: *p, exact: bounds, law };
             let default = tolerance::of_quantile(&quantile);
-            Ok(Chosen { method: Box::new(quantile), default: Some(default) })
+            Ok(Chosen::with(quantile, default))
         }
+        Quantity::Law => Err(UNKNOWN_SHAPE.to_owned()),
+        // The list of quantities may grow before their methods do.
+        #[expect(unreachable_patterns, reason = "see above")]
         _ => Err("this version has no method for it".to_owned()),
+    }
+}
+
+fn squares(shape: &Shape) -> Result<Squares, &'static str> {
+    let reason = if shape.has_one_deviation() { ONE_DEVIATION } else { UNKNOWN_SHAPE };
+    Squares::of(shape).ok_or(reason)
+}
+
+/// The method for what is recorded besides end and time.
+fn of_observable<'a>(exact: &'a Exact<'a>, quantity: &Quantity, bounds: Bounded) -> Result<Chosen<'a>, String> {
+    let shape = exact.shape_of(quantity).ok_or(UNKNOWN_SHAPE)?;
+    let (observable, denominator) = observable(exact, quantity).ok_or(UNKNOWN_SHAPE)?;
+    let sample = Sample::Recorded(observable, denominator);
+    match quantity {
+        Quantity::VarianceVisits(_) | Quantity::VarianceCost(_) => {
+            Ok(Chosen::of(Variance { sample, root: false, exact: bounds, squares: squares(&shape)? }))
+        }
+        Quantity::CovarianceTimeCost(of) => {
+            let spread = Spread::of(&shape).ok_or(UNKNOWN_SHAPE)?;
+            let deviation = |quantity: &Quantity| {
+                let variance = exact.answer(quantity).ok().flatten();
+                variance.map_or(0.0, |variance| variance.value.sqrt())
+            };
+            let product = deviation(&Quantity::VarianceCost(of.clone())) * deviation(&Quantity::VarianceTime);
+            let covariance = Covariance { cost: (observable, denominator), exact: bounds, spread };
+            Ok(Chosen::with(covariance, tolerance::of_covariance(product)))
+        }
+        _ => {
+            let spread = Spread::of(&shape).ok_or(UNKNOWN_SHAPE)?;
+            let hit = match quantity {
+                Quantity::MeanTimeGivenHit(of) => exact.answer(&Quantity::HitProbability(of.clone())).ok().flatten(),
+                _ => None,
+            };
+            let share = hit.map_or(1.0, |hit| hit.value);
+            let default = match quantity {
+                Quantity::MeanCost(_) => Some(tolerance::of_signed_mean(bounds, spread.standard_deviation)),
+                _ => None,
+            };
+            Ok(Chosen { method: Box::new(Mean { of: sample, share, exact: bounds, spread }), default })
+        }
     }
 }

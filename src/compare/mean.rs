@@ -1,23 +1,23 @@
-//! The mean time, of all replications or of those that finish in certain ends, by Student's t.
+//! The mean of a time, a cost or a number of visits, of all replications or of those that have one, by Student's t.
 
 use crate::exact::{Bounded, Shape};
-use crate::sampling::Tally;
+use crate::sampling::{Observable, Tally};
 use crate::statistics::{agree_miss_probability, lower_tail, mean_interval, mean_least_size, student_survival};
 
 use super::Guarantee;
 use super::method::{Evidence, Method, premature};
+use super::sample::Sample;
 
 /// No normal limit is trusted with fewer observations. Its expansion in the moments does not see that times are whole:
 /// where they take two values equally often, the steps between the means that can occur shift the level by a tenth at
 /// this size, and by all of it at a few observations, which are often all equal.
 pub(super) const FEWEST: u64 = 1000;
 
-/// The mean time of replications that finish in certain ends.
+/// The mean of a value.
 #[derive(Debug)]
 pub(super) struct Mean {
-    /// Their ends; `None` for all.
-    pub(super) ends: Option<Vec<usize>>,
-    /// The probability of finishing there.
+    pub(super) of: Sample,
+    /// The probability that a replication has a value.
     pub(super) share: f64,
     pub(super) exact: Bounded,
     pub(super) spread: Spread,
@@ -32,7 +32,7 @@ pub(super) struct Spread {
 }
 
 impl Spread {
-    /// That of a time; `None` when its moments are not known well.
+    /// That of a value; `None` when its moments are not known well.
     pub(super) fn of(shape: &Shape) -> Option<Self> {
         Some(Self {
             standard_deviation: shape.variance()?.sqrt(),
@@ -56,24 +56,28 @@ impl Method for Mean {
         Guarantee::Approximate
     }
 
+    fn observes(&self) -> Option<Observable> {
+        self.of.observes()
+    }
+
     fn miss_probability(&self, tolerance: f64, n: u64, alpha: f64) -> f64 {
         let margin = tolerance - 0.5 * (self.exact.high - self.exact.low);
         let least = self.spread.least_size(alpha);
         let expected = (n as f64 * self.share) as u64;
-        let too_few = if self.ends.is_none() {
+        let too_few = if self.of.which().is_none() {
             f64::from(u8::from(n < least))
         } else {
-            // How many finish there is random too.
+            // How many have a value is random too.
             lower_tail(n, self.share, least - 1)
         };
         (too_few + agree_miss_probability(margin, self.spread.standard_deviation, expected, alpha)).min(1.0)
     }
 
     fn evaluate(&self, tally: &Tally, tolerance: f64, alpha: f64) -> Evidence {
-        let sums = self.ends.as_ref().map_or_else(|| tally.all(), |ends| tally.power_sums_of(ends));
-        let n = sums.count();
-        let estimate = sums.mean();
-        let (Some(mean), Some(variance)) = (estimate, sums.variance()) else {
+        let sums = self.of.sums(tally);
+        let (n, unit) = (sums.count(), self.of.denominator());
+        let estimate = sums.mean().map(|mean| mean / unit);
+        let (Some(mean), Some(variance)) = (estimate, sums.variance().map(|variance| variance / unit / unit)) else {
             return Evidence { estimate, premature: self.premature(n, alpha), ..Evidence::default() };
         };
         let standard_error = (variance / n as f64).sqrt();
@@ -92,8 +96,7 @@ impl Method for Mean {
 
 impl Mean {
     fn premature(&self, n: u64, alpha: f64) -> Option<String> {
-        let there = if self.ends.is_some() { " that finish there" } else { "" };
-        premature(n, self.spread.least_size(alpha), there)
+        premature(n, self.spread.least_size(alpha), self.of.which().unwrap_or_default())
     }
 }
 
@@ -143,7 +146,7 @@ pub(super) mod tests {
     fn the_p_value_is_below_the_level_exactly_when_the_interval_disagrees() {
         let spread = Spread { standard_deviation: 0.5, skewness: 0.0, excess_kurtosis: -2.0 };
         let exact = Bounded { value: 1.5, low: 1.499, high: 1.502 };
-        let mean = Mean { ends: None, share: 1.0, exact, spread };
+        let mean = Mean { of: Sample::Times, share: 1.0, exact, spread };
         let mut decided = [0; 2];
         for (i, tally) in odd_tallies(1).enumerate() {
             let tolerance = [0.0, 0.01, 0.1, 0.3][i % 4];
@@ -185,7 +188,7 @@ pub(super) mod tests {
     fn few_replications_are_premature_and_the_size_there_is_random() {
         let spread = Spread { standard_deviation: 1.0, skewness: 2.0, excess_kurtosis: 6.0 };
         let least = spread.least_size(ALPHA);
-        let mean = Mean { ends: Some(vec![1]), share: 0.1, exact: Bounded::exactly(1.5), spread };
+        let mean = Mean { of: Sample::TimesIn(vec![1]), share: 0.1, exact: Bounded::exactly(1.5), spread };
         let evidence =
             |there: u64| mean.evaluate(&tally(&[(0, 1, 10 * there), (1, 1, there - 1), (1, 2, 1)]), 0.1, ALPHA);
         assert_eq!(evidence(least).premature, None);
@@ -200,7 +203,7 @@ pub(super) mod tests {
     #[test]
     fn nothing_and_one_observation_have_no_interval() {
         let spread = Spread { standard_deviation: 0.5, skewness: 0.0, excess_kurtosis: -2.0 };
-        let mean = Mean { ends: None, share: 1.0, exact: Bounded::exactly(1.5), spread };
+        let mean = Mean { of: Sample::Times, share: 1.0, exact: Bounded::exactly(1.5), spread };
         for (tally, estimate) in [(tally(&[]), None), (tally(&[(0, 4, 1)]), Some(4.0))] {
             let evidence = mean.evaluate(&tally, 0.1, ALPHA);
             assert_eq!((evidence.estimate, evidence.interval, evidence.p_value), (estimate, None, None));

@@ -2,7 +2,7 @@
 
 use std::fmt::Debug;
 
-use crate::sampling::Tally;
+use crate::sampling::{Observable, Tally};
 use crate::statistics::Interval;
 
 use super::Guarantee;
@@ -15,6 +15,11 @@ pub(super) trait Method: Debug {
 
     /// What stands behind its interval.
     fn guarantee(&self) -> Guarantee;
+
+    /// What the tally must record besides end and time.
+    fn observes(&self) -> Option<Observable> {
+        None
+    }
 
     /// Times at which the tally must cut so that the verdict, the ends of the interval and the estimate can be told.
     fn cuts(&self, tolerance: f64) -> Vec<u64> {

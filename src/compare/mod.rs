@@ -20,7 +20,7 @@
 //!     bench = { shipped = "5/6", bench = 0.1, scrapped = "rest" }
 //! "#)?;
 //! let settings = Settings::default();
-//! let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, &settings)), &Silent)?;
+//! let exact = Exact::solve(&model, &Request::of(&model, &Study::quantities(&model, &settings)), &Silent)?;
 //! let study = Study::new(&exact, &settings)?;
 //! let replications = study.plan().replications.expect("every default row can be decided");
 //! let tally = sample(&Sampler::new(model.chain()), &Plan { replications, seed: 1, grid: study.grid() }, &Silent)?;
@@ -67,6 +67,7 @@
 
 mod certain;
 mod comparison;
+mod covariance;
 mod curves;
 mod distance;
 mod draft;
@@ -78,6 +79,7 @@ mod method;
 mod planned;
 mod quantile;
 mod quantities;
+mod sample;
 mod settings;
 mod settle;
 mod share;

@@ -2,6 +2,7 @@
 
 use crate::exact::Bounded;
 use crate::model::{Quantity, Tolerance};
+use crate::sampling::Observable;
 
 use super::certain::Certain;
 use super::method::Method;
@@ -80,6 +81,14 @@ impl<'a> Planned<'a> {
     /// Whether the row takes a part of the error rate.
     pub(super) fn spends(&self) -> bool {
         self.tested().is_some_and(|tested| tested.shares.is_none())
+    }
+
+    /// What the tally must record.
+    pub(super) fn observes(&self) -> Option<Observable> {
+        match &self.basis {
+            Basis::Certain(certain) => certain.observes(),
+            Basis::Tested(tested) => tested.method.observes(),
+        }
     }
 
     /// Where the tally must cut.

@@ -208,7 +208,7 @@ mod tests {
 
     fn with_law(test: impl FnOnce(&Law)) {
         let model = geometric();
-        let exact = Exact::solve(&model, &Request::of(&[Quantity::Law]), &Silent).unwrap();
+        let exact = Exact::solve(&model, &Request::of(&model, &[Quantity::Law]), &Silent).unwrap();
         test(exact.law().unwrap());
     }
 

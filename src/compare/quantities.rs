@@ -24,6 +24,8 @@ pub(super) fn candidates(model: &Model, settings: &Settings) -> Vec<Quantity> {
     quantities.extend([Quantity::MeanTime, Quantity::VarianceTime]);
     quantities.extend(LEVELS.map(Quantity::TimeQuantile));
     quantities.extend(ends().map(Quantity::MeanTimeGiven));
+    quantities.extend(model.costs().iter().map(|cost| Quantity::MeanCost(cost.name.clone())));
+    quantities.extend(model.hits().iter().map(|hit| Quantity::HitProbability(hit.name.clone())));
     quantities.push(Quantity::Law);
     quantities
 }

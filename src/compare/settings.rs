@@ -20,6 +20,9 @@ pub struct Settings {
     /// The number, from 1, of this look at a series of ever larger runs; look j spends 1/2^j of the error rate, so that all
     /// looks together spend it once. `None` for a run that stands alone.
     pub look: Option<u32>,
+    /// Whether only end and time are known of each replication, as from a file of outcomes: rows about visits, costs and
+    /// hits are left out then.
+    pub outcomes_only: bool,
 }
 
 /// More looks than this leave next to nothing to spend.
@@ -34,6 +37,7 @@ impl Default for Settings {
             tolerances: Tolerances::default(),
             detectable: Tolerances::default(),
             look: None,
+            outcomes_only: false,
         }
     }
 }

@@ -1,11 +1,13 @@
-//! The share of replications to which something happens: an end, a group, a time that is passed.
+//! The share of replications to which something happens: an end, a group, a time that is passed, a state or set that is
+//! met.
 
 use crate::exact::Bounded;
-use crate::sampling::Tally;
+use crate::sampling::{Observable, Tally};
 use crate::statistics::{agree_miss_probability, binomial_agree_miss_probability, binomial_p_value, clopper_pearson};
 
 use super::Guarantee;
 use super::method::{Evidence, Method};
+use super::sample::recorded;
 
 /// From this variance of the count on, the normal approximation serves for sizes.
 const NORMAL_FROM: f64 = 5000.0;
@@ -17,13 +19,15 @@ pub(super) enum Event {
     Ends(Vec<usize>),
     /// It takes longer than this.
     LongerThan(u64),
+    /// It meets the state or the set of an observable.
+    Met(Observable),
 }
 
 impl Event {
     /// How often it happened.
     ///
     /// # Panics
-    /// When the tally has no such end or does not cut at the time.
+    /// When the tally has no such end, does not cut at the time, or does not record the observable.
     pub(super) fn count(&self, tally: &Tally) -> u64 {
         match self {
             Self::Ends(ends) => tally.count_of(ends),
@@ -31,13 +35,23 @@ impl Event {
                 let Some(within) = tally.at_or_below(*time) else { panic!("the tally does not cut at time {time}") };
                 tally.replications() - within
             }
+            Self::Met(observable @ Observable::Hit(_)) => recorded(tally, *observable).sums().count(),
+            Self::Met(observable) => recorded(tally, *observable).above_zero(),
+        }
+    }
+
+    /// What must be recorded to count it.
+    pub(super) fn observes(&self) -> Option<Observable> {
+        match self {
+            Self::Met(observable) => Some(*observable),
+            _ => None,
         }
     }
 
     /// Where the tally must cut to count it.
     pub(super) fn cuts(&self) -> Vec<u64> {
         match self {
-            Self::Ends(_) => Vec::new(),
+            Self::Ends(_) | Self::Met(_) => Vec::new(),
             Self::LongerThan(time) => vec![*time],
         }
     }
@@ -57,6 +71,10 @@ impl Method for Share {
 
     fn guarantee(&self) -> Guarantee {
         Guarantee::Exact
+    }
+
+    fn observes(&self) -> Option<Observable> {
+        self.event.observes()
     }
 
     fn cuts(&self, _tolerance: f64) -> Vec<u64> {

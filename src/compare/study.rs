@@ -4,7 +4,7 @@ use std::sync::Arc;
 
 use crate::exact::Exact;
 use crate::model::{Model, Quantity, Warning};
-use crate::sampling::{Grid, Tally};
+use crate::sampling::{Grid, Observable, Tally};
 
 use super::draft::draft;
 use super::evaluate::{Terms, evaluate};
@@ -22,6 +22,7 @@ pub struct Study<'a> {
     not_compared: Vec<NotCompared>,
     warnings: Vec<Warning>,
     grid: Arc<Grid>,
+    observed: Arc<[Observable]>,
     terms: Terms,
 }
 
@@ -48,7 +49,15 @@ impl<'a> Study<'a> {
         for quantity in selection.rows {
             let given = settings.tolerance(model, &quantity);
             let detectable = settings.detectable.of(&quantity);
-            match draft(exact, quantity, given, detectable) {
+            let drafted_row = match draft(exact, quantity, given, detectable) {
+                // What a file of outcomes does not say cannot be compared.
+                Ok(row) if settings.outcomes_only && row.observes().is_some() => {
+                    let text = "the outcomes hold end and time alone".to_owned();
+                    Err(NotCompared { quantity: row.quantity, exact: row.exact, text })
+                }
+                result => result,
+            };
+            match drafted_row {
                 Ok(row) => drafted.push(row),
                 Err(not_compared) => refused.push(not_compared),
             }
@@ -61,10 +70,13 @@ impl<'a> Study<'a> {
         warnings.extend(warnings::wide(&rows, settings.power));
         warnings.extend(warnings::unused(model, settings, &rows, &refused));
         let grid = Arc::new(Grid::new(rows.iter().flat_map(Planned::cuts).collect()));
+        let mut observed: Vec<Observable> = rows.iter().filter_map(Planned::observes).collect();
+        observed.sort_unstable();
+        observed.dedup();
         let alpha = level(&rows, settings.spent());
         warnings.extend(warnings::never(&rows, alpha, settings.power));
         let terms = Terms { error_rate: settings.spent(), power: settings.power, alpha };
-        Ok(Self { exact, rows, not_compared: refused, warnings, grid, terms })
+        Ok(Self { exact, rows, not_compared: refused, warnings, grid, observed: observed.into(), terms })
     }
 
     /// The exact answers that the study compares with.
@@ -82,6 +94,11 @@ impl<'a> Study<'a> {
         Arc::clone(&self.grid)
     }
 
+    /// What the tally must record besides end and time.
+    pub fn observed(&self) -> Arc<[Observable]> {
+        Arc::clone(&self.observed)
+    }
+
     /// How many replications the table needs.
     pub fn plan(&self) -> SizePlan {
         size::plan(&self.rows, self.terms.error_rate, self.terms.power)
@@ -96,7 +113,7 @@ impl<'a> Study<'a> {
     /// Impossible outcomes that the tally shows by itself join them.
     ///
     /// # Panics
-    /// When the tally is over another grid or other ends.
+    /// When the tally is over another grid or other ends, or lacks what [`Study::observed`] asks for.
     pub fn compare(&self, tally: &Tally, mut findings: Vec<Finding>) -> Comparison {
         assert_eq!(
             tally.ends(),

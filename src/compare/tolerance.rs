@@ -31,16 +31,40 @@ fn small_for(p: f64) -> f64 {
 /// The default tolerance of a quantity with a known answer; that of a quantile comes from [`of_quantile`].
 pub(super) fn default_of(quantity: &Quantity, exact: Bounded) -> Tolerance {
     match quantity {
-        Quantity::MeanTime => Tolerance::Relative(MEAN),
-        Quantity::MeanTimeGiven(_) => Tolerance::Relative(MEAN_GIVEN),
-        Quantity::VarianceTime => Tolerance::Relative(VARIANCE),
+        Quantity::MeanTime | Quantity::MeanVisits(_) | Quantity::MeanCost(_) => Tolerance::Relative(MEAN),
+        Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_) => Tolerance::Relative(MEAN_GIVEN),
+        Quantity::VarianceTime
+        | Quantity::VarianceVisits(_)
+        | Quantity::VarianceCost(_)
+        | Quantity::CovarianceTimeCost(_) => Tolerance::Relative(VARIANCE),
         Quantity::SdTime => Tolerance::Relative(STANDARD_DEVIATION),
         Quantity::Law => Tolerance::Absolute(LAW),
-        Quantity::AbsorptionProbability(_) | Quantity::SurvivalProbability(_) => {
-            Tolerance::Absolute(small_for(exact.value).max(LEAST_PROBABILITY))
-        }
+        Quantity::AbsorptionProbability(_)
+        | Quantity::SurvivalProbability(_)
+        | Quantity::VisitProbability(_)
+        | Quantity::HitProbability(_) => Tolerance::Absolute(small_for(exact.value).max(LEAST_PROBABILITY)),
         Quantity::TimeQuantile(_) => Tolerance::Relative(QUANTILE),
     }
+}
+
+/// The default tolerance of the mean of a value of any sign: a hundredth of it, or a fiftieth of its standard deviation
+/// where that is the larger by far, as it is where the mean is zero.
+pub(super) fn of_signed_mean(exact: Bounded, standard_deviation: f64) -> Tolerance {
+    let share = value_of(Tolerance::Relative(MEAN), exact);
+    if share >= 0.002 * standard_deviation {
+        return Tolerance::Relative(MEAN);
+    }
+    Tolerance::Absolute(one_digit(0.02 * standard_deviation))
+}
+
+/// The default tolerance of a covariance: a twentieth of the product of the two standard deviations, its largest value.
+pub(super) fn of_covariance(product: f64) -> Tolerance {
+    Tolerance::Absolute(one_digit(VARIANCE * product))
+}
+
+/// A number as people write one that need not be exact.
+fn one_digit(value: f64) -> f64 {
+    format!("{value:.0e}").parse().unwrap_or(value)
 }
 
 /// The default tolerance of a quantile: the smallest whole number of steps, at least one and at least a hundredth of the
@@ -74,7 +98,7 @@ pub(super) fn of_quantile(quantile: &Quantile<'_>) -> Tolerance {
 pub(super) fn value_of(tolerance: Tolerance, exact: Bounded) -> f64 {
     match tolerance {
         Tolerance::Absolute(value) => value,
-        Tolerance::Relative(share) => share * exact.low.max(0.0),
+        Tolerance::Relative(share) => share * exact.low.max(-exact.high).max(0.0),
     }
 }
 
@@ -194,7 +218,7 @@ mod tests {
         let text = "start = \"a\"\nabsorbing = [\"x\"]\n[moves]\na = { x = 0.01, a = \"rest\" }\n";
         let model = Model::from_toml(text).unwrap();
         let levels = [0.5, 0.99];
-        let exact = Exact::solve(&model, &Request::of(&levels.map(Quantity::TimeQuantile)), &Silent).unwrap();
+        let exact = Exact::solve(&model, &Request::of(&model, &levels.map(Quantity::TimeQuantile)), &Silent).unwrap();
         let law = exact.law().unwrap();
         let quantile = |p| Quantile { p, exact: law.quantile(p).unwrap(), law };
         assert_eq!(quantile(0.5).exact, Bounded::exactly(69.0));

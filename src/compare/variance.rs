@@ -1,16 +1,18 @@
-//! The variance of the time and its square root, on the logarithmic scale.
+//! The variance of a time, a cost or a number of visits, and its square root, on the logarithmic scale.
 
 use crate::exact::{Bounded, Shape};
-use crate::sampling::Tally;
+use crate::sampling::{Observable, Tally};
 use crate::statistics::{Interval, mean_least_size, normal_survival, normal_upper_quantile, variance_interval};
 
 use super::Guarantee;
 use super::mean::FEWEST;
 use super::method::{Evidence, Method, premature};
+use super::sample::Sample;
 
-/// The variance of the time, or its square root.
+/// The variance of a value, or its square root.
 #[derive(Debug)]
 pub(super) struct Variance {
+    pub(super) sample: Sample,
     /// Whether the standard deviation is meant.
     pub(super) root: bool,
     /// Bounds of what is meant.
@@ -76,6 +78,10 @@ impl Method for Variance {
         Guarantee::Approximate
     }
 
+    fn observes(&self) -> Option<Observable> {
+        self.sample.observes()
+    }
+
     fn miss_probability(&self, tolerance: f64, n: u64, alpha: f64) -> f64 {
         let Bounded { value, low, high } = self.exact;
         let lowest = high - tolerance;
@@ -92,13 +98,15 @@ impl Method for Variance {
     }
 
     fn evaluate(&self, tally: &Tally, tolerance: f64, alpha: f64) -> Evidence {
-        let sums = tally.all();
+        let sums = self.sample.sums(tally);
         let n = sums.count();
         let premature = premature(n, self.squares.least_size(alpha), "");
         let moments = sums.variance().zip(sums.central_moment(2)).zip(sums.central_moment(4));
         let Some(((variance, second), fourth)) = moments else {
             return Evidence { premature, ..Evidence::default() };
         };
+        let unit = self.sample.denominator().powi(2);
+        let (variance, second, fourth) = (variance / unit, second / unit, fourth / unit / unit);
         // Where nothing varies the limit is a point. From the least size on that does not happen to a law that varies.
         let of_variance = variance_interval(variance, fourth, n, alpha)
             .or_else(|| (variance == 0.0).then_some(Interval { low: 0.0, high: 0.0 }));
@@ -157,7 +165,7 @@ mod tests {
         for root in [false, true] {
             let value = if root { variance.sqrt() } else { variance };
             let exact = Bounded { value, low: value - 1e-3, high: value + 2e-3 };
-            let method = Variance { root, exact, squares };
+            let method = Variance { sample: Sample::Times, root, exact, squares };
             let mut decided = [0; 2];
             for (i, tally) in odd_tallies(2).enumerate() {
                 let tolerance = [0.0, 0.01, 0.05, 0.3][i % 4];
@@ -194,8 +202,8 @@ mod tests {
     #[test]
     fn the_standard_deviation_is_the_square_root_of_all() {
         let (variance, squares) = two_valued(0.25);
-        let of_variance = Variance { root: false, exact: Bounded::exactly(variance), squares };
-        let of_root = Variance { root: true, exact: Bounded::exactly(variance.sqrt()), squares };
+        let of_variance = Variance { sample: Sample::Times, root: false, exact: Bounded::exactly(variance), squares };
+        let of_root = Variance { sample: Sample::Times, root: true, exact: Bounded::exactly(variance.sqrt()), squares };
         let tally = tally(&[(0, 1, 40_000), (0, 2, 14_000)]);
         let (square, root) = (of_variance.evaluate(&tally, 0.0, ALPHA), of_root.evaluate(&tally, 0.0, ALPHA));
         assert!((root.estimate.unwrap().powi(2) - square.estimate.unwrap()).abs() < 1e-15);
@@ -213,7 +221,7 @@ mod tests {
     #[test]
     fn a_sample_that_does_not_vary_is_far_from_any_variance() {
         let (variance, squares) = two_valued(0.25);
-        let method = Variance { root: false, exact: Bounded::exactly(variance), squares };
+        let method = Variance { sample: Sample::Times, root: false, exact: Bounded::exactly(variance), squares };
         let evidence = method.evaluate(&tally(&[(0, 1, 100_000)]), 0.01, ALPHA);
         assert_eq!((evidence.estimate, evidence.p_value), (Some(0.0), Some(0.0)));
         assert_eq!(evidence.interval, Some(Interval { low: 0.0, high: 0.0 }));

@@ -62,7 +62,9 @@ pub(super) fn never(rows: &[Planned<'_>], alpha: f64, power: f64) -> Vec<Warning
 
 /// A tolerance that lets an end pass that never occurs.
 fn blind(row: &Planned<'_>, tested: &Tested<'_>, power: f64) -> Option<String> {
-    let (Quantity::AbsorptionProbability(_) | Quantity::SurvivalProbability(_)) = row.quantity else { return None };
+    if !row.quantity.is_probability() {
+        return None;
+    }
     let p = row.exact?.value;
     if p <= 0.0 || tested.tolerance.value < p {
         return None;
@@ -81,11 +83,11 @@ fn blind(row: &Planned<'_>, tested: &Tested<'_>, power: f64) -> Option<String> {
 
 /// A tolerance as wide as the answer itself.
 fn whole(row: &Planned<'_>, tested: &Tested<'_>) -> Option<String> {
-    if let Quantity::AbsorptionProbability(_) | Quantity::SurvivalProbability(_) = row.quantity {
+    if row.quantity.is_probability() {
         return None;
     }
-    let (value, tolerance) = (row.exact?.value, tested.tolerance.value);
-    (tested.is_given && tolerance >= value).then(|| {
+    let (value, tolerance) = (row.exact?.value.abs(), tested.tolerance.value);
+    (tested.is_given && value > 0.0 && tolerance >= value).then(|| {
         format!(
             "the tolerance {} of `{}` is as wide as the answer {} itself",
             rounded(tolerance),

@@ -4,8 +4,10 @@ use std::sync::OnceLock;
 
 use crate::model::{Model, Progress, Quantity};
 
+use super::costs::CostAnswer;
 use super::dd::{Dd, U2};
 use super::linear::Linear;
+use super::passages::{self, HitAnswer, VisitAnswer};
 use super::support::{Support, only_time};
 use super::{Bounded, ExactError, Law, LawRefusal, Shape};
 
@@ -18,18 +20,40 @@ pub struct Request {
     pub levels: Vec<f64>,
     /// Times whose survival probabilities are wanted, likewise.
     pub times: Vec<u64>,
+    /// Costs whose answers are wanted, as numbers into [`Model::costs`].
+    pub costs: Vec<usize>,
+    /// Hits, as numbers into [`Model::hits`].
+    pub hits: Vec<usize>,
+    /// States whose visits are wanted, as numbers in the chain.
+    pub visits: Vec<usize>,
 }
 
 impl Request {
-    /// What a list of quantities needs.
-    pub fn of<'a>(quantities: impl IntoIterator<Item = &'a Quantity>) -> Self {
+    /// What a list of quantities of a model needs.
+    pub fn of<'a>(model: &Model, quantities: impl IntoIterator<Item = &'a Quantity>) -> Self {
+        fn once(list: &mut Vec<usize>, number: Option<usize>) {
+            list.extend(number.filter(|number| !list.contains(number)));
+        }
         let mut request = Self::default();
         for quantity in quantities {
             match quantity {
                 Quantity::TimeQuantile(p) => request.levels.push(*p),
                 Quantity::SurvivalProbability(time) => request.times.push(*time),
                 Quantity::Law => request.law = true,
-                _ => {}
+                Quantity::MeanCost(name) | Quantity::VarianceCost(name) | Quantity::CovarianceTimeCost(name) => {
+                    once(&mut request.costs, model.cost_named(name));
+                }
+                Quantity::HitProbability(name) | Quantity::MeanTimeGivenHit(name) => {
+                    once(&mut request.hits, model.hit_named(name));
+                }
+                Quantity::MeanVisits(name) | Quantity::VarianceVisits(name) | Quantity::VisitProbability(name) => {
+                    once(&mut request.visits, model.transient_named(name));
+                }
+                Quantity::AbsorptionProbability(_)
+                | Quantity::MeanTime
+                | Quantity::SdTime
+                | Quantity::VarianceTime
+                | Quantity::MeanTimeGiven(_) => {}
             }
         }
         request
@@ -48,7 +72,11 @@ pub struct Exact<'a> {
     /// Only audits ask for it.
     support: OnceLock<Support>,
     law: Result<Law, LawRefusal>,
+    /// Why a quantile is not there, once one was asked for in vain.
+    undecided: OnceLock<LawRefusal>,
     shape: Shape,
+    hits: Vec<(usize, HitAnswer)>,
+    visits: Vec<(usize, VisitAnswer)>,
 }
 
 impl<'a> Exact<'a> {
@@ -65,7 +93,7 @@ impl<'a> Exact<'a> {
     /// Each answer lies within its bounds; see [`crate::exact`].
     pub fn solve(model: &'a Model, request: &Request, progress: &dyn Progress) -> Result<Self, ExactError> {
         let chain = model.chain();
-        let mut linear = Linear::solve(chain, progress)?;
+        let mut linear = Linear::solve(model, request, progress)?;
         let law = Law::of(chain, linear.mean.value, request, progress)?;
         let reachable =
             chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
@@ -76,7 +104,15 @@ impl<'a> Exact<'a> {
             linear.variance = Bounded::exactly(0.0);
         }
         let shape = Shape::constant(0.0);
-        let mut exact = Self { model, linear, reachable, only, support: OnceLock::new(), law, shape };
+        let hits = request.hits.iter().map(|number| {
+            let answer = passages::hit(chain, &model.hits()[*number], progress)?;
+            Ok((*number, answer))
+        });
+        let hits = hits.collect::<Result<_, ExactError>>()?;
+        let visits = request.visits.iter().map(|state| Ok((*state, passages::visits(chain, *state, progress)?)));
+        let visits = visits.collect::<Result<_, ExactError>>()?;
+        let (support, undecided) = (OnceLock::new(), OnceLock::new());
+        let mut exact = Self { model, linear, reachable, only, support, law, undecided, shape, hits, visits };
         if let Some(shape) = exact.shape_given(&all) {
             exact.shape = shape;
         }
@@ -111,7 +147,9 @@ impl<'a> Exact<'a> {
         if !ends.iter().any(|end| self.reachable[*end]) {
             return Bounded::exactly(0.0);
         }
-        if (0..self.reachable.len()).all(|end| !self.reachable[end] || ends.contains(&end)) {
+        let mut others = self.reachable.clone();
+        ends.iter().for_each(|end| others[*end] = false);
+        if !others.contains(&true) {
             return Bounded::exactly(1.0);
         }
         Bounded::probability(Bounded::relative(self.summed(ends, 0), self.sum_error(ends, 0)))
@@ -180,6 +218,44 @@ impl<'a> Exact<'a> {
         Some(Shape::of_rising(&sums, &self.linear.errors))
     }
 
+    fn visits_of(&self, state: &str) -> Option<&VisitAnswer> {
+        found(&self.visits, self.model.transient_named(state)?)
+    }
+
+    fn hit_of(&self, hit: &str) -> Option<&HitAnswer> {
+        found(&self.hits, self.model.hit_named(hit)?)
+    }
+
+    fn cost_of(&self, cost: &str) -> Option<&CostAnswer> {
+        found(&self.linear.costs, self.model.cost_named(cost)?)
+    }
+
+    /// Moments, for planning, of what a quantity about visits, costs or a first passage averages: the visits, the cost, the
+    /// time of the passage, or for a covariance the product of the two deviations. `None` for other quantities, for those
+    /// that were not asked for, and where the moments are not known well.
+    pub fn shape_of(&self, quantity: &Quantity) -> Option<Shape> {
+        match quantity {
+            Quantity::MeanVisits(of) | Quantity::VarianceVisits(of) => Some(self.visits_of(of)?.shape.clone()),
+            Quantity::MeanTimeGivenHit(of) => Some(self.hit_of(of)?.given.as_ref()?.1.clone()),
+            Quantity::MeanCost(of) | Quantity::VarianceCost(of) => Some(self.cost_of(of)?.shape.clone()),
+            Quantity::CovarianceTimeCost(of) => self.cost_of(of)?.product.clone(),
+            _ => None,
+        }
+    }
+
+    /// The only value that the moves leave to what such a quantity averages: visits, steps to the passage, or the cost
+    /// times its denominator. `None` when there are several.
+    pub fn only_amount(&self, quantity: &Quantity) -> Option<i128> {
+        match quantity {
+            Quantity::MeanVisits(of) | Quantity::VarianceVisits(of) => self.visits_of(of)?.only.map(i128::from),
+            Quantity::MeanTimeGivenHit(of) => self.hit_of(of)?.only.map(i128::from),
+            Quantity::MeanCost(of) | Quantity::VarianceCost(of) | Quantity::CovarianceTimeCost(of) => {
+                self.cost_of(of)?.only
+            }
+            _ => None,
+        }
+    }
+
     /// The law of end and time.
     ///
     /// # Errors
@@ -188,8 +264,8 @@ impl<'a> Exact<'a> {
         self.law.as_ref()
     }
 
-    /// The answer to a quantity that names ends of this model: `Ok(None)` where it is undefined (a mean given an
-    /// impossible end, an unknown end) or no single number (the law).
+    /// The answer to a quantity of this model: `Ok(None)` where it is undefined (a mean given what is impossible, an unknown
+    /// name), no single number (the law), or was not asked for (visits, costs and hits).
     ///
     /// # Errors
     /// Why the law, on which it rests, was not computed.
@@ -203,13 +279,33 @@ impl<'a> Exact<'a> {
             Quantity::MeanTimeGiven(name) => named(name).and_then(|ends| self.mean_time_given(&ends)),
             Quantity::TimeQuantile(p) => match self.only {
                 Some(time) => Some(Bounded::exactly(time as f64)),
-                None => self.law()?.quantile(*p),
+                None => {
+                    let law = self.law()?;
+                    let undecided = || self.undecided.get_or_init(|| LawRefusal::Undecided { horizon: law.horizon() });
+                    Some(law.quantile(*p).ok_or_else(undecided)?)
+                }
             },
             Quantity::SurvivalProbability(time) => Some(match self.only {
                 Some(only) => Bounded::exactly(if *time < only { 1.0 } else { 0.0 }),
                 None => self.law()?.survival(*time),
             }),
             Quantity::Law => None,
+            Quantity::MeanVisits(of) => self.visits_of(of).map(|answer| answer.mean),
+            Quantity::VarianceVisits(of) => self.visits_of(of).map(|answer| answer.variance),
+            Quantity::VisitProbability(of) => self.visits_of(of).map(|answer| answer.probability),
+            Quantity::MeanCost(of) => self.cost_of(of).map(|answer| answer.mean),
+            Quantity::VarianceCost(of) => self.cost_of(of).map(|answer| answer.variance),
+            Quantity::CovarianceTimeCost(of) => self.cost_of(of).map(|answer| match self.only {
+                Some(_) => Bounded::exactly(0.0),
+                None => answer.covariance,
+            }),
+            Quantity::HitProbability(of) => self.hit_of(of).map(|answer| answer.probability),
+            Quantity::MeanTimeGivenHit(of) => self.hit_of(of).and_then(|answer| Some(answer.given.as_ref()?.0)),
         })
     }
+}
+
+/// The answer of a number.
+fn found<T>(answers: &[(usize, T)], number: usize) -> Option<&T> {
+    answers.iter().find(|(known, _)| *known == number).map(|(_, answer)| answer)
 }

@@ -22,6 +22,12 @@ impl Bounded {
     /// A double-double within `error` of a truth that is not negative; `None` when either is no finite number, which is
     /// all that an overflow leaves.
     pub(super) fn within(value: Dd, error: f64) -> Option<Self> {
+        let Self { value, low, high } = Self::signed(value, error)?;
+        Some(Self { value: value.max(0.0), low: low.max(0.0), high: high.max(0.0) })
+    }
+
+    /// The same for a truth of any sign.
+    pub(super) fn signed(value: Dd, error: f64) -> Option<Self> {
         if !(value.hi.is_finite() && value.lo.is_finite() && error.is_finite()) {
             return None;
         }
@@ -32,10 +38,10 @@ impl Bounded {
         let slack = error * (1.0 + 1e-10) + f64::MIN_POSITIVE;
         let low = if value.lo >= slack { value.hi } else { outwards(value.hi, value.lo - slack) };
         let high = if value.lo <= -slack { value.hi } else { outwards(value.hi, value.lo + slack) };
-        Some(Self { value: value.hi.max(0.0), low: low.max(0.0), high: high.max(0.0) })
+        Some(Self { value: value.hi, low, high })
     }
 
-    /// The same within the share `relative` of the truth.
+    /// A truth that is not negative, within the share `relative` of it.
     pub(super) fn relative(value: Dd, relative: f64) -> Option<Self> {
         Self::within(value, value.hi * relative * (1.0 + 1e-10))
     }

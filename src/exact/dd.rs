@@ -71,6 +71,12 @@ impl Dd {
         Self { hi, lo }
     }
 
+    /// Exact.
+    pub(super) fn of_i64(value: i64) -> Self {
+        let size = Self::of_u64(value.unsigned_abs());
+        if value < 0 { Self::ZERO.minus(size) } else { size }
+    }
+
     /// The top 106 bits or so of a large integer, scaled by a power of two that is returned: `value ≈ result · 2^shift`,
     /// within u² relatively.
     pub(super) fn of_big(value: &UBig) -> (Self, i64) {

@@ -4,8 +4,9 @@ use crate::model::{Chain, Progress, Row, Weights};
 
 use super::ExactError;
 use super::dd::{Dd, INPUT, U2, power_of_two};
-use super::envelope::{Class, ENTRIES_LIMIT, Factor, Refusal, WORK_LIMIT, product};
+use super::envelope::{Class, Cost, ENTRIES_LIMIT, Factor, Refusal, WORK_LIMIT, product};
 use super::kernel::Kernel;
+use super::stopped::Stopped;
 
 /// Bytes of a double-double.
 const BYTES: u64 = 16;
@@ -46,12 +47,12 @@ pub(super) fn usable_probabilities(chain: &Chain, from: Option<usize>) -> Result
     probabilities(row).map(usable).collect()
 }
 
-/// The factored chain: everything that is reachable and transient.
+/// The factored chain: every reachable state where paths go on.
 pub(super) struct Elimination<'a> {
-    chain: &'a Chain,
+    stopped: &'a Stopped<'a>,
     progress: &'a dyn Progress,
     factors: Vec<Factor>,
-    /// Class and place in it of each state; `u32::MAX` for ends and unreachable states.
+    /// Class and place in it of each state; `u32::MAX` where paths stop and for unreachable states.
     class_of: Vec<u32>,
     place_of: Vec<u32>,
     /// Moves of each state, stays left out.
@@ -72,32 +73,62 @@ impl<'a> Elimination<'a> {
     /// # Errors
     /// A class that would cost too much is refused before its work; numbers too small for the arithmetic are refused, and
     /// so is all when the user asks to stop.
-    pub(super) fn of(chain: &'a Chain, progress: &'a dyn Progress) -> Result<Self, ExactError> {
+    pub(super) fn of(stopped: &'a Stopped<'a>, progress: &'a dyn Progress) -> Result<Self, ExactError> {
+        let chain = stopped.chain();
         let n = chain.states();
         let mut class_of = vec![u32::MAX; n];
         let mut place_of = vec![u32::MAX; n];
-        for (class, states) in chain.components().iter().enumerate() {
+        for (class, states) in stopped.classes().iter().enumerate() {
             for (place, state) in states.iter().enumerate() {
                 class_of[*state as usize] = class as u32;
                 place_of[*state as usize] = place as u32;
             }
         }
         let mut moves: Vec<Vec<Move>> = vec![Vec::new(); n];
-        for state in chain.components().iter().flatten().map(|state| *state as usize) {
+        for state in stopped.classes().iter().flatten().map(|state| *state as usize) {
             moves[state] = usable_probabilities(chain, Some(state))?;
             moves[state].retain(|one| one.to as usize != state);
         }
         let widest = moves.iter().map(Vec::len).max().unwrap_or(0) + 1;
-        let mut all = Self { chain, progress, factors: Vec::new(), class_of, place_of, moves, widest };
-        progress.begin("elimination", "states", Some(chain.components().iter().map(|class| class.len() as u64).sum()));
+        let mut all = Self { stopped, progress, factors: Vec::new(), class_of, place_of, moves, widest };
+        all.are_small_together()?;
+        progress.begin("elimination", "states", Some(stopped.classes().iter().map(|class| class.len() as u64).sum()));
         let kernel = Kernel::new();
-        for (number, states) in chain.components().iter().enumerate() {
+        for (number, states) in stopped.classes().iter().enumerate() {
             let factor = all.class(number, states).factor(kernel, progress).map_err(|why| all.refused(why, states))?;
             all.factors.push(factor);
             progress.advance(states.len() as u64);
         }
         progress.end();
         Ok(all)
+    }
+
+    /// Every class is held to the limits alone as it is factored; all of them are kept, and so are held together too.
+    fn are_small_together(&self) -> Result<(), ExactError> {
+        let mut total = Cost::default();
+        let mut largest: Option<(&[u32], u64)> = None;
+        for (number, states) in self.stopped.classes().iter().enumerate() {
+            // A state by itself costs next to nothing.
+            let cost =
+                if states.len() == 1 { Cost { work: 0, entries: 1 } } else { self.class(number, states).best_cost() };
+            if cost.is_too_large() {
+                return Err(self.refused(Refusal::TooLarge(cost), states));
+            }
+            total = total.plus(cost);
+            if largest.is_none_or(|(_, work)| cost.work > work) {
+                largest = Some((states, cost.work));
+            }
+        }
+        let Some((states, _)) = largest.filter(|_| total.entries > ENTRIES_LIMIT || total.work > 4 * WORK_LIMIT) else {
+            return Ok(());
+        };
+        Err(ExactError::TooLarge {
+            classes: self.stopped.classes().len(),
+            states: self.stopped.classes().iter().map(Vec::len).sum(),
+            example: self.stopped.chain().name(states[0] as usize).to_owned(),
+            work: (total.work, 4 * WORK_LIMIT),
+            bytes: (total.entries * BYTES, ENTRIES_LIMIT * BYTES),
+        })
     }
 
     fn class(&self, number: usize, states: &[u32]) -> Class {
@@ -113,9 +144,10 @@ impl<'a> Elimination<'a> {
     }
 
     fn refused(&self, why: Refusal, states: &[u32]) -> ExactError {
-        let example = self.chain.name(states[0] as usize).to_owned();
+        let example = self.stopped.chain().name(states[0] as usize).to_owned();
         match why {
             Refusal::TooLarge(cost) => ExactError::TooLarge {
+                classes: 1,
                 states: states.len(),
                 example,
                 work: (cost.work, WORK_LIMIT),
@@ -131,13 +163,18 @@ impl<'a> Elimination<'a> {
         if self.progress.interrupted() { Err(ExactError::Interrupted) } else { Ok(()) }
     }
 
-    pub(super) fn chain(&self) -> &Chain {
-        self.chain
+    pub(super) fn stopped(&self) -> &'a Stopped<'a> {
+        self.stopped
     }
 
-    /// Moves of a state, stays left out; empty for ends and unreachable states.
+    /// Moves of a state, stays left out; empty where paths stop and for unreachable states.
     pub(super) fn moves(&self, state: usize) -> &[Move] {
         &self.moves[state]
+    }
+
+    /// Moves of a state with its stay.
+    pub(super) fn steps(&self, state: usize) -> impl Iterator<Item = Move> + '_ {
+        probabilities(self.stopped.chain().row(state))
     }
 
     /// Relative error of a sum over the moves of one state.
@@ -145,12 +182,12 @@ impl<'a> Elimination<'a> {
         U2 * (3.0 * self.widest as f64 + INPUT + 10.0)
     }
 
-    /// Solves `x = b + P x` over transient states, `x = 0` at ends, for `b` that is not negative: `x = N b`.
+    /// Solves `x = b + P x` over states where paths go on, `x = 0` elsewhere, for `b` that is not negative: `x = N b`.
     pub(super) fn column(&self, b: &Solution) -> Result<Solution, ExactError> {
         let mut x = vec![Dd::ZERO; b.of.len()];
         let mut errors = vec![0.0f64; self.factors.len()];
         let mut worst = b.error;
-        for (number, states) in self.chain.components().iter().enumerate().rev() {
+        for (number, states) in self.stopped.classes().iter().enumerate().rev() {
             self.go_on()?;
             let factor = &self.factors[number];
             let mut error = b.error;
@@ -175,14 +212,14 @@ impl<'a> Elimination<'a> {
         Ok(Solution { of: x, error: worst })
     }
 
-    /// Solves `y = a + y P` over transient states for `a` that is not negative: `y = a N`.
+    /// Solves `y = a + y P` over states where paths go on, for `a` that is not negative: `y = a N`.
     pub(super) fn row(&self, a: &Solution) -> Result<Solution, ExactError> {
         let mut y = a.of.clone();
         // What arrives at a state from earlier classes: how many terms, and the worst of their errors by class.
         let mut arrivals = vec![0u32; y.len()];
         let mut arrived = vec![a.error; self.factors.len()];
         let mut worst = a.error;
-        for (number, states) in self.chain.components().iter().enumerate() {
+        for (number, states) in self.stopped.classes().iter().enumerate() {
             self.go_on()?;
             let factor = &self.factors[number];
             let mut right: Vec<Dd> = states.iter().map(|state| y[*state as usize]).collect();
@@ -241,10 +278,11 @@ mod tests {
         for top in [2, 5, 40, 200] {
             let model = walk(top);
             let chain = model.chain();
-            let elimination = Elimination::of(chain, &Silent).unwrap();
+            let stopped = Stopped::in_ends(chain);
+            let elimination = Elimination::of(&stopped, &Silent).unwrap();
             let mut down = vec![Dd::ZERO; chain.states()];
             let mut ones = down.clone();
-            for state in chain.components().iter().flatten().map(|state| *state as usize) {
+            for state in stopped.classes().iter().flatten().map(|state| *state as usize) {
                 ones[state] = Dd::ONE;
                 let low = chain.state("0").unwrap();
                 for one in elimination.moves(state).iter().filter(|one| one.to as usize == low) {
@@ -283,7 +321,7 @@ mod tests {
         draft.absorbing("end");
         draft.start("s0");
         let model = draft.check().unwrap();
-        match Elimination::of(model.chain(), &Silent) {
+        match Elimination::of(&Stopped::in_ends(model.chain()), &Silent) {
             Err(ExactError::TooLarge { states, work, .. }) => assert!(states == 6000 && work.0 > work.1),
             other => panic!("{:?}", other.err()),
         }
@@ -302,8 +340,25 @@ mod tests {
         draft.absorbing("end");
         draft.start("s0");
         let model = draft.check().unwrap();
-        match Elimination::of(model.chain(), &Silent) {
+        match Elimination::of(&Stopped::in_ends(model.chain()), &Silent) {
             Err(ExactError::TooLarge { work, bytes, .. }) => assert!(work.0 < work.1 && bytes.0 > bytes.1),
+            other => panic!("{:?}", other.err()),
+        }
+    }
+
+    #[test]
+    fn classes_that_need_too_much_memory_together_are_refused_before_any_work() {
+        let (classes, n) = (4, 6_000);
+        let mut draft = Draft::new("onwards or back to the start of the class");
+        for i in 0..classes * n {
+            draft.moves(&format!("s{i}"), &format!("s{}", i + 1), "0.9999");
+            draft.moves(&format!("s{i}"), &format!("s{}", i / n * n), "rest");
+        }
+        draft.absorbing(&format!("s{}", classes * n));
+        draft.start("s0");
+        let model = draft.check().unwrap();
+        match Elimination::of(&Stopped::in_ends(model.chain()), &Silent) {
+            Err(ExactError::TooLarge { classes: 4, bytes, .. }) => assert!(bytes.0 > bytes.1),
             other => panic!("{:?}", other.err()),
         }
     }
@@ -316,7 +371,8 @@ mod tests {
             "start = \"a\"\nabsorbing = [\"y\"]\n[moves]\na = { a = \"1e-350\", y = \"rest\" }\n",
         ] {
             let model = Model::from_toml(text).unwrap();
-            let refused = Elimination::of(model.chain(), &Silent);
+            let stopped = Stopped::in_ends(model.chain());
+            let refused = Elimination::of(&stopped, &Silent);
             assert!(matches!(refused.err(), Some(ExactError::OutOfRange { .. })), "{text}");
         }
     }
@@ -336,11 +392,12 @@ mod tests {
         let asked = |questions: u32| Impatient(questions.into());
         let ones = Solution { of: vec![Dd::ONE; model.chain().states()], error: 0.0 };
         // One question for each eight of the 199 states, then one for the solve.
+        let stopped = Stopped::in_ends(model.chain());
         for questions in [0, 24] {
-            assert_eq!(Elimination::of(model.chain(), &asked(questions)).err(), Some(ExactError::Interrupted));
+            assert_eq!(Elimination::of(&stopped, &asked(questions)).err(), Some(ExactError::Interrupted));
         }
         let patient = asked(25);
-        let elimination = Elimination::of(model.chain(), &patient).unwrap();
+        let elimination = Elimination::of(&stopped, &patient).unwrap();
         assert_eq!(elimination.column(&ones).err(), Some(ExactError::Interrupted));
         assert_eq!(elimination.row(&ones).err(), Some(ExactError::Interrupted));
     }

@@ -88,22 +88,36 @@ pub(super) struct Cost {
 }
 
 impl Cost {
-    fn is_too_large(self) -> bool {
+    pub(super) fn is_too_large(self) -> bool {
         self.work > WORK_LIMIT || self.entries > ENTRIES_LIMIT
+    }
+
+    /// That of both together.
+    pub(super) fn plus(self, other: Self) -> Self {
+        Self { work: self.work.saturating_add(other.work), entries: self.entries.saturating_add(other.entries) }
     }
 }
 
 impl Class {
-    /// The order as given and its reverse with their predicted costs, the better first.
-    fn orders(&self) -> [(Vec<u32>, Cost); 2] {
+    /// The order as given, its reverse, and both from the outside in, with their predicted costs, the best first.
+    fn orders(&self) -> Vec<(Vec<u32>, Cost)> {
         let n = self.inside.len() as u32;
-        let priced = |order: Vec<u32>| {
-            let cost = self.cost(&order);
-            (order, cost)
-        };
-        let (forward, backward) = (priced((0..n).collect()), priced((0..n).rev().collect()));
-        let worth = |cost: Cost| (cost.is_too_large(), cost.work);
-        if worth(backward.1) < worth(forward.1) { [backward, forward] } else { [forward, backward] }
+        let inwards = (0..n).map(|i| if i % 2 == 0 { i / 2 } else { n - 1 - i / 2 });
+        let mut orders: Vec<(Vec<u32>, Cost)> = [(0..n).collect(), (0..n).rev().collect(), inwards.collect()]
+            .into_iter()
+            .map(|order: Vec<u32>| {
+                let cost = self.cost(&order);
+                (order, cost)
+            })
+            .collect();
+        // A stable sort: of equals the order as given comes first.
+        orders.sort_by_key(|(_, cost)| (cost.is_too_large(), cost.work));
+        orders
+    }
+
+    /// What the best order will take.
+    pub(super) fn best_cost(&self) -> Cost {
+        self.orders()[0].1
     }
 
     /// What the elimination will take in a given order; counting ends far above the limits.
@@ -143,15 +157,19 @@ impl Class {
     /// # Complexity
     /// At most n³/3 multiply-adds for n states; n·b² for a band of width b.
     pub(super) fn factor(&self, kernel: Kernel, progress: &dyn Progress) -> Result<Factor, Refusal> {
-        let [(order, cost), (other, other_cost)] = self.orders();
-        if cost.is_too_large() {
-            return Err(Refusal::TooLarge(cost));
+        let mut refused = Refusal::OutOfRange;
+        for (at, (order, cost)) in self.orders().into_iter().enumerate() {
+            if cost.is_too_large() {
+                return Err(if at == 0 { Refusal::TooLarge(cost) } else { refused });
+            }
+            // Where a line drifts one way, the way out at its start vanishes from the other end but not from this one; where
+            // it drifts apart, neither end sees the other, and the middle sees both.
+            match self.factor_in(order, kernel, progress) {
+                Err(Refusal::OutOfRange) => refused = Refusal::OutOfRange,
+                factored => return factored,
+            }
         }
-        match self.factor_in(order, kernel, progress) {
-            // Where a line drifts one way, the way out at its start vanishes from the other end but not from this one.
-            Err(Refusal::OutOfRange) if !other_cost.is_too_large() => self.factor_in(other, kernel, progress),
-            factored => factored,
-        }
+        Err(refused)
     }
 
     fn factor_in(&self, order: Vec<u32>, kernel: Kernel, progress: &dyn Progress) -> Result<Factor, Refusal> {
@@ -272,7 +290,7 @@ fn elimination_error(n: usize, width: usize) -> f64 {
 impl Factor {
     /// Relative error that a solve adds to those of the factor and of its right-hand side.
     pub(super) fn solve_error(&self) -> f64 {
-        U2 * self.rows.len() as f64 * 2.0 * (3.0 * self.widest as f64 + 25.0)
+        U2 * self.rows.len() as f64 * 2.0 * (6.0 * self.widest as f64 + 20.0)
     }
 
     /// Solves `x = b + Q x` for a right-hand side that is not negative, in place, in local numbers.

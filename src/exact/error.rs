@@ -8,7 +8,9 @@ use std::fmt;
 pub enum ExactError {
     /// A communicating class that would take too long, or too much memory, to eliminate.
     TooLarge {
-        /// States of the class.
+        /// Classes that are too large together: one, if it is too large alone.
+        classes: usize,
+        /// Their states.
         states: usize,
         /// One of them.
         example: String,
@@ -37,11 +39,19 @@ impl ExactError {
     /// What is wrong, and where.
     pub fn text(&self) -> String {
         match self {
-            Self::TooLarge { states, example, work, bytes } => format!(
-                "the communicating class of `{example}` has {states} states and would take {:.1e} multiply-adds and {:.1e} \
-                 bytes to eliminate, beyond the {:.1e} and {:.1e} of this version (about 2,000 states that all lead to one \
+            Self::TooLarge { classes, states, example, work, bytes } => format!(
+                "the {} `{example}` with {states} states would take {:.1e} multiply-adds and {:.1e} bytes to eliminate, \
+                 beyond the {:.1e} and {:.1e} of this version (about 2,000 states that all lead to one \
                  another)",
-                work.0 as f64, bytes.0 as f64, work.1 as f64, bytes.1 as f64
+                if *classes == 1 {
+                    "communicating class of".to_owned()
+                } else {
+                    format!("{classes} communicating classes around")
+                },
+                work.0 as f64,
+                bytes.0 as f64,
+                work.1 as f64,
+                bytes.1 as f64
             ),
             Self::OutOfRange { example } => format!(
                 "numbers below 1e-271 or above 1e299 occur around state `{example}`, where this version cannot keep its error \
@@ -84,18 +94,24 @@ impl std::error::Error for ExactError {}
 pub enum LawRefusal {
     /// It would take too long.
     #[error(
-        "the law of the time would take more than {steps} steps over {moves} moves, beyond the budget of {budget:.0e} \
+        "the law of the time is expected to take more than {steps} steps over {moves} moves, beyond the budget of {budget:.0e} \
          multiply-adds or of {longest} steps"
     )]
     TooLong {
         /// Moves among reachable transient states.
         moves: u64,
-        /// Steps that it would take at least.
+        /// Steps that it is expected to take at least.
         steps: u64,
         /// Multiply-adds that are allowed.
         budget: f64,
         /// Steps that are allowed.
         longest: u64,
+    },
+    /// It was computed to a time up to which it does not decide a quantile.
+    #[error("the law of the time is known up to {horizon} steps, and does not decide this quantile")]
+    Undecided {
+        /// The last time that was computed.
+        horizon: u64,
     },
     /// The request did not ask for it.
     #[error("the law of the time was not asked for")]

@@ -31,7 +31,7 @@
 //!
 //! - P(end e) = α_e + Σ_i y_i R_ie and E\[T; e\] = Σ_i (α N²)_i R_ie;
 //! - Var T = Σ_i y_i Σ_j p_ij (1 + h_j − h_i)² + Σ_i α_i (h_i − E T)², a sum of squares; and Var T = 2 E\[C(T + 1, 2)\] −
-//!   E T − (E T)², which is better where the mean is beyond 1e30. The one of the smaller proven error is the answer.
+//!   E T − (E T)² with E\[C(T + 1, 2)\] = Σ_i y_i h_i, which is better where the mean is beyond 1e30. The one of the smaller proven error is the answer.
 //!
 //! # Why the bounds hold
 //! Let u = 2⁻⁵³. Sums, products and quotients of double-doubles that are not negative lose at most 3 u², 5 u² and 15 u²
@@ -50,8 +50,8 @@
 //! Σ_m 2 m (3 w + 25) u² = n (n + 1)(3 w + 25) u², where w is the longest row, fill included. The given weights count once
 //! more, exits being sums themselves: 2 n (18 + 3 w) u². For 2,000 states and full rows this is 3e-22.
 //!
-//! *Solves add what they round*: each unknown is a sum of at most w products, one quotient and what its predecessors carry,
-//! through two sweeps of n unknowns: 2 n (3 w + 25) u². Between classes another sum of products is added; errors of classes
+//! *Solves add what they round*: each unknown is a sum of at most w products with factors that carry 3 w + 15 themselves, one
+//! quotient and what its predecessors carry, through two sweeps of n unknowns: 2 n (6 w + 20) u². Between classes another sum of products is added; errors of classes
 //! that follow one another add up.
 //!
 //! *Deviations in the variance cancel*, so each d = 1 + h_j − h_i carries the absolute error ε (h_i + h_j) plus rounding, and
@@ -73,16 +73,20 @@
 
 mod answers;
 mod bounded;
+mod costs;
 mod dd;
+mod deviations;
 mod elimination;
 mod envelope;
 mod error;
 mod kernel;
 mod law;
 mod linear;
+mod passages;
 mod reference;
 mod shape;
 mod steps;
+mod stopped;
 mod support;
 
 pub use answers::{Exact, Request};

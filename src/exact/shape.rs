@@ -66,6 +66,13 @@ impl Shape {
         shape
     }
 
+    /// From the mean and the central moments from the second on, as far as they are known.
+    pub(super) fn of_central(mean: f64, known: &[Option<f64>]) -> Self {
+        let mut central = [None; ORDERS - 2];
+        central.iter_mut().zip(known).for_each(|(moment, known)| *moment = *known);
+        Self { mean, central }
+    }
+
     /// The shape of a time that does not vary.
     pub(super) fn constant(time: f64) -> Self {
         Self { mean: time, central: [Some(0.0); ORDERS - 2] }

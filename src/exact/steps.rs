@@ -98,12 +98,13 @@ impl<T: Real> Steps<T> {
             steps.offsets.push(steps.moves.len());
         }
         steps.most = f64::from(into.into_iter().max().unwrap_or(0));
-        let mut start = vec![T::ZERO; order.len() + steps.ends];
+        // Many states of one end may share the start: their shares are joined before they are rounded.
+        let mut start = vec![Dd::ZERO; order.len() + steps.ends];
         for one in probabilities(chain.start()) {
             let at = target(one.to) as usize;
-            start[at] = start[at].plus(T::of(one.probability));
+            start[at] = start[at].plus(one.probability);
         }
-        (steps, start)
+        (steps, start.into_iter().map(T::of).collect())
     }
 
     /// One step: `after` becomes the distribution over states and what has newly entered each end.

@@ -36,11 +36,13 @@ impl Draft {
         let structure = Structure::of(&targets, start.targets(0));
         let ends = self.check_ends(&structure, &mut checked);
         let groups = self.check_groups(&ends);
-        self.check_quantities(&ends, &groups);
         let mut end_of = vec![NO_END; self.states.len()];
         for (number, end) in ends.iter().enumerate() {
             end.states.iter().for_each(|state| end_of[*state] = number as u32);
         }
+        let costs = self.check_costs(&targets, &end_of);
+        let hits = self.check_hits(&ends);
+        self.check_quantities(&ends, &groups, &costs, &hits, &end_of);
         if self.faults.is_empty() {
             self.check_something_happens(&structure, &ends, &end_of, start.targets(0), &mut checked);
         }
@@ -60,12 +62,17 @@ impl Draft {
             components: structure.transient_components(),
             reachable: structure.reachable,
         };
+        let of_groups = groups.iter().map(|group| (group.name.clone(), group.ends.clone()));
+        let of_ends = chain.ends.iter().enumerate().map(|(number, end)| (end.name.clone(), vec![number]));
         Ok(Model {
+            ends_by_name: of_groups.chain(of_ends).collect(),
             title: self.title,
             clock_unit: self.clock_unit.unwrap_or_else(|| "step".to_owned()),
             fingerprint: chain.fingerprint(),
             chain,
             groups,
+            costs,
+            hits,
             compare: self.compare.map(|rows| rows.into_iter().map(|(quantity, _)| quantity).collect()),
             tolerances,
             warnings: checked.warnings,
@@ -89,6 +96,13 @@ impl Draft {
             }
         }
         let mut taken: HashSet<&str> = HashSet::new();
+        let others = self.hits.iter().map(|hit| (&hit.name, hit.line));
+        let others = others.chain(self.costs.iter().map(|cost| (&cost.name, cost.line)));
+        for (name, line) in others {
+            if let Some(text) = bad_name(name) {
+                faults.push(Fault::new(FaultKind::BadName, self.place(0, line), text, "rename it"));
+            }
+        }
         for list in self.classes.iter().chain(&self.groups) {
             if let Some(text) = bad_name(&list.name) {
                 faults.push(Fault::new(FaultKind::BadName, self.place(0, list.line), text, "rename it"));

@@ -7,6 +7,7 @@ use super::chain::{End, NO_END, Structure};
 use super::check::Checked;
 use super::draft::{Draft, NamedList};
 use super::fault::{Fault, FaultKind, WarningKind, did_you_mean, listed};
+use super::observed::{Cost, Hit};
 use super::quantity::Quantity;
 use super::tolerance::ToleranceKey;
 
@@ -100,8 +101,15 @@ impl Draft {
         groups
     }
 
-    /// The rows to compare and the tolerances must speak of ends and groups that exist.
-    pub(super) fn check_quantities(&mut self, ends: &[End], groups: &[Group]) {
+    /// The rows to compare and the tolerances must speak of what exists.
+    pub(super) fn check_quantities(
+        &mut self,
+        ends: &[End],
+        groups: &[Group],
+        costs: &[Cost],
+        hits: &[Hit],
+        end_of: &[u32],
+    ) {
         let mut asked: Vec<(Quantity, u64)> = self.compare.clone().unwrap_or_default();
         for (key, _, line) in &self.tolerances {
             if let ToleranceKey::One(quantity) = key {
@@ -110,7 +118,12 @@ impl Draft {
         }
         for (quantity, line) in asked {
             let place = self.place(0, line);
-            if let Some((text, remedy)) = unknown_end(&quantity, ends, groups) {
+            let states = States {
+                number: &|name| self.known_state(name).map(|state| state as usize),
+                names: &|| self.states.iter().map(|state| state.name.as_str()).collect(),
+                end_of,
+            };
+            if let Some((text, remedy)) = unknown_name(&quantity, ends, groups, costs, hits, &states) {
                 self.fault(Fault::new(FaultKind::UnknownName, place, text, remedy).valued(quantity.to_string()));
             }
         }
@@ -161,15 +174,49 @@ impl Draft {
     }
 }
 
-/// Why a quantity means nothing for these ends, and what to write instead.
-pub(super) fn unknown_end(quantity: &Quantity, ends: &[End], groups: &[Group]) -> Option<(String, String)> {
-    let (Quantity::AbsorptionProbability(of) | Quantity::MeanTimeGiven(of)) = quantity else { return None };
-    let names = || ends.iter().map(|end| end.name.as_str()).chain(groups.iter().map(|group| group.name.as_str()));
-    if names().any(|name| name == of) {
+/// The states of a model, checked or not yet.
+pub(super) struct States<'a> {
+    pub(super) number: &'a dyn Fn(&str) -> Option<usize>,
+    pub(super) names: &'a dyn Fn() -> Vec<&'a str>,
+    pub(super) end_of: &'a [u32],
+}
+
+/// Why a quantity means nothing for this model, and what to write instead.
+pub(super) fn unknown_name(
+    quantity: &Quantity,
+    ends: &[End],
+    groups: &[Group],
+    costs: &[Cost],
+    hits: &[Hit],
+    states: &States<'_>,
+) -> Option<(String, String)> {
+    let (of, known, what, remedy): (_, Vec<&str>, _, _) = match quantity {
+        Quantity::AbsorptionProbability(of) | Quantity::MeanTimeGiven(of) => {
+            let names = ends.iter().map(|end| &*end.name).chain(groups.iter().map(|group| &*group.name));
+            (of, names.collect(), "no end and no group", "name an end or a group of the model")
+        }
+        Quantity::MeanCost(of) | Quantity::VarianceCost(of) | Quantity::CovarianceTimeCost(of) => {
+            (of, costs.iter().map(|cost| &*cost.name).collect(), "no cost", "name a cost below [costs] in the model")
+        }
+        Quantity::HitProbability(of) | Quantity::MeanTimeGivenHit(of) => {
+            (of, hits.iter().map(|hit| &*hit.name).collect(), "no hit", "name a hit below [hits] in the model")
+        }
+        Quantity::MeanVisits(of) | Quantity::VarianceVisits(of) | Quantity::VisitProbability(of) => {
+            match (states.number)(of) {
+                Some(state) if states.end_of[state] == NO_END => return None,
+                Some(_) => {
+                    let text = format!("`{quantity}` speaks of `{of}`, where replications finish");
+                    return Some((text, "ask for the absorption_probability of the end".to_owned()));
+                }
+                None => (of, (states.names)(), "no state", "name a state of the model"),
+            }
+        }
+        _ => return None,
+    };
+    if known.contains(&of.as_str()) {
         return None;
     }
-    let remedy = did_you_mean(of, names(), "name an end or a group of the model");
-    Some((format!("`{quantity}` speaks of `{of}`, which is no end and no group"), remedy))
+    Some((format!("`{quantity}` speaks of `{of}`, which is {what}"), did_you_mean(of, known, remedy)))
 }
 
 fn plural(count: usize) -> &'static str {

@@ -62,6 +62,16 @@ pub(super) struct NamedList {
     pub(super) line: u64,
 }
 
+/// A cost as written: amounts a step in a state, and a move.
+#[derive(Debug, Clone)]
+pub(super) struct DraftCost {
+    pub(super) name: String,
+    pub(super) unit: Option<String>,
+    pub(super) visit: Vec<(String, Number, u64)>,
+    pub(super) moves: Vec<(String, String, Number, u64)>,
+    pub(super) line: u64,
+}
+
 /// A model as written, built by a reader or in code.
 ///
 /// ```
@@ -96,6 +106,8 @@ pub struct Draft {
     pub(super) lone_stay_is_absorbing: bool,
     pub(super) classes: Vec<NamedList>,
     pub(super) groups: Vec<NamedList>,
+    pub(super) costs: Vec<DraftCost>,
+    pub(super) hits: Vec<NamedList>,
     pub(super) compare: Option<Vec<(Quantity, u64)>>,
     pub(super) tolerances: Vec<(ToleranceKey, Tolerance, u64)>,
     pub(super) faults: Vec<Fault>,
@@ -151,6 +163,42 @@ impl Draft {
         self.classes.push(NamedList { name: name.to_owned(), members, line: 0 });
     }
 
+    /// Lets a cost accumulate by an amount for every step spent in a state; amounts are numbers as in a model file, and may
+    /// be negative.
+    pub fn visit_cost(&mut self, cost: &str, state: &str, amount: &str) {
+        if let Some(amount) = self.amount(amount, cost, Place::default()) {
+            self.cost(cost, 0).visit.push((state.to_owned(), amount, 0));
+        }
+    }
+
+    /// The same for every move from one state to another.
+    pub fn move_cost(&mut self, cost: &str, from: &str, to: &str, amount: &str) {
+        if let Some(amount) = self.amount(amount, cost, Place::default()) {
+            self.cost(cost, 0).moves.push((from.to_owned(), to.to_owned(), amount, 0));
+        }
+    }
+
+    /// Asks for the first passage to a set of states.
+    pub fn hit(&mut self, name: &str, states: &[&str]) {
+        let members = states.iter().map(|state| (*state).to_owned()).collect();
+        self.hits.push(NamedList { name: name.to_owned(), members, line: 0 });
+    }
+
+    /// The cost of a name, new if there is none.
+    fn cost(&mut self, name: &str, line: u64) -> &mut DraftCost {
+        let at = self.costs.iter().position(|cost| cost.name == name).unwrap_or_else(|| {
+            self.costs.push(DraftCost {
+                name: name.to_owned(),
+                unit: None,
+                visit: Vec::new(),
+                moves: Vec::new(),
+                line,
+            });
+            self.costs.len() - 1
+        });
+        &mut self.costs[at]
+    }
+
     /// Sets a tolerance.
     pub fn tolerance(&mut self, key: ToleranceKey, value: Tolerance) {
         self.tolerances.push((key, value, 0));
@@ -191,6 +239,19 @@ impl Draft {
 
     pub(super) fn fault(&mut self, fault: Fault) {
         self.faults.push(fault);
+    }
+
+    /// Reads an amount of a cost; what is wrong with it becomes a fault.
+    pub(super) fn amount(&mut self, text: &str, cost: &str, place: Place) -> Option<Number> {
+        let reason = match Number::parse(text) {
+            Ok(number) => return Some(number),
+            Err(reason) => reason,
+        };
+        let kind = if reason == NumberFault::NotFinite { FaultKind::NonFinite } else { FaultKind::NotANumber };
+        let said = format!("`{}` among the amounts of the cost `{cost}` {reason}", shortened(text));
+        let remedy = "write a decimal such as -0.25, or a fraction such as \"5/12\"";
+        self.fault(Fault::new(kind, place, said, remedy).about(cost).valued(shortened(text)));
+        None
     }
 
     /// Reads the probability of a move of a state, or a share of the start; what is wrong with it becomes a fault.

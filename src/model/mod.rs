@@ -1,7 +1,6 @@
 //! The model: a finite Markov chain with a start, read from a file or made in code, and proven well formed.
 //!
-//! Limits of this version: the clock counts steps (discrete time); costs and hits are not read yet. States number up to
-//! 2³² − 1. Probabilities are kept exactly as written, as rationals; see [`Row`].
+//! Limits of this version: the clock counts steps (discrete time). States number up to 2³² − 1. Probabilities are kept exactly as written, as rationals; see [`Row`].
 //!
 //! ```
 //! use tallystone::model::Model;
@@ -18,10 +17,12 @@
 mod chain;
 mod check;
 mod check_ends;
+mod check_observed;
 mod classes;
 mod draft;
 mod fault;
 mod number;
+mod observed;
 mod progress;
 mod quantity;
 mod records;
@@ -30,6 +31,9 @@ mod source;
 mod table;
 mod tolerance;
 mod toml_file;
+mod toml_observed;
+
+use std::collections::HashMap;
 
 use serde::Serialize;
 
@@ -38,6 +42,7 @@ pub use draft::{Draft, Written};
 pub use fault::{Fault, FaultKind, ModelError, Place, Warning, WarningKind, nearest};
 pub(crate) use fault::{did_you_mean, listed, shortened};
 pub use number::{Number, NumberFault};
+pub use observed::{Cost, Hit};
 pub use progress::{Progress, Silent};
 pub use quantity::{Quantity, QuantityFault};
 pub(crate) use records::{Records, cell, decimal_point, delimiter};
@@ -72,6 +77,10 @@ pub struct Model {
     chain: Chain,
     fingerprint: String,
     groups: Vec<Group>,
+    /// Ends by the names of ends and groups.
+    ends_by_name: HashMap<String, Vec<usize>>,
+    costs: Vec<Cost>,
+    hits: Vec<Hit>,
     compare: Option<Vec<Quantity>>,
     tolerances: Tolerances,
     warnings: Vec<Warning>,
@@ -105,6 +114,16 @@ impl Model {
         &self.groups
     }
 
+    /// Costs that accumulate on the way.
+    pub fn costs(&self) -> &[Cost] {
+        &self.costs
+    }
+
+    /// Sets of states whose first passage matters.
+    pub fn hits(&self) -> &[Hit] {
+        &self.hits
+    }
+
     /// The rows that the model asks to compare; `None` means the default ones.
     pub fn compare(&self) -> Option<&[Quantity]> {
         self.compare.as_deref()
@@ -130,19 +149,39 @@ impl Model {
         &self.inputs
     }
 
-    /// The ends that a name stands for: one end, or those of a group.
-    pub fn ends_named(&self, name: &str) -> Option<Vec<usize>> {
-        let end = self.chain.ends().iter().position(|end| end.name == name);
-        let group = || self.groups.iter().find(|group| group.name == name).map(|group| group.ends.clone());
-        end.map(|end| vec![end]).or_else(group)
+    /// The number of a named cost in [`Model::costs`].
+    pub fn cost_named(&self, name: &str) -> Option<usize> {
+        self.costs.iter().position(|cost| cost.name == name)
     }
 
-    /// Checks that a quantity speaks of ends and groups of this model.
+    /// The number of a named hit in [`Model::hits`].
+    pub fn hit_named(&self, name: &str) -> Option<usize> {
+        self.hits.iter().position(|hit| hit.name == name)
+    }
+
+    /// The number of a named transient state in the chain.
+    pub fn transient_named(&self, name: &str) -> Option<usize> {
+        self.chain.state(name).filter(|state| self.chain.end_of(*state).is_none())
+    }
+
+    /// The ends that a name stands for: one end, or those of a group.
+    pub fn ends_named(&self, name: &str) -> Option<Vec<usize>> {
+        self.ends_by_name.get(name).cloned()
+    }
+
+    /// Checks that a quantity speaks of ends, groups, states, costs and hits of this model.
     ///
     /// # Errors
     /// The unknown name, with the nearest known one.
     pub fn resolve(&self, quantity: &Quantity) -> Result<(), QuantityFault> {
-        match check_ends::unknown_end(quantity, self.chain.ends(), &self.groups) {
+        let states = check_ends::States {
+            number: &|name| self.chain.state(name),
+            names: &|| (0..self.chain.states()).map(|state| self.chain.name(state)).collect(),
+            end_of: &self.chain.end_of,
+        };
+        let unknown =
+            check_ends::unknown_name(quantity, self.chain.ends(), &self.groups, &self.costs, &self.hits, &states);
+        match unknown {
             Some((text, remedy)) => Err(QuantityFault { text, remedy }),
             None => Ok(()),
         }

@@ -26,15 +26,31 @@ pub enum Quantity {
     MeanTimeGiven(String),
     /// End and time jointly: P(end = e, time ≤ t) for every end and time.
     Law,
+    /// Mean number of steps spent in a state, a start there included.
+    MeanVisits(String),
+    /// Variance of that number.
+    VarianceVisits(String),
+    /// Probability of ever being in a state.
+    VisitProbability(String),
+    /// Mean of a cost over a replication.
+    MeanCost(String),
+    /// Variance of a cost.
+    VarianceCost(String),
+    /// Covariance of a cost with the time.
+    CovarianceTimeCost(String),
+    /// Probability of ever being in the set of a hit.
+    HitProbability(String),
+    /// Mean time of the first passage to that set, of the replications that pass there.
+    MeanTimeGivenHit(String),
 }
 
 /// Names that take no argument, and names that need one.
 const PLAIN: [&str; 4] = ["mean_time", "sd_time", "variance_time", "law"];
-const WITH_ARGUMENT: [&str; 4] = ["absorption_probability", "mean_time_given", "time_quantile", "survival_probability"];
-/// Names that the format reserves; this version does not compute them yet.
-const RESERVED: [&str; 10] = [
-    "skewness_time",
-    "kurtosis_time",
+const WITH_ARGUMENT: [&str; 12] = [
+    "absorption_probability",
+    "mean_time_given",
+    "time_quantile",
+    "survival_probability",
     "mean_visits",
     "variance_visits",
     "visit_probability",
@@ -44,6 +60,8 @@ const RESERVED: [&str; 10] = [
     "hit_probability",
     "mean_time_given_hit",
 ];
+/// Names that the format reserves; this version does not compute them yet.
+const RESERVED: [&str; 2] = ["skewness_time", "kurtosis_time"];
 
 /// Why a text names no quantity, and what to write instead.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
@@ -99,6 +117,14 @@ impl Quantity {
             "law" => Ok(Self::Law),
             "absorption_probability" => Ok(Self::AbsorptionProbability(argument.to_owned())),
             "mean_time_given" => Ok(Self::MeanTimeGiven(argument.to_owned())),
+            "mean_visits" => Ok(Self::MeanVisits(argument.to_owned())),
+            "variance_visits" => Ok(Self::VarianceVisits(argument.to_owned())),
+            "visit_probability" => Ok(Self::VisitProbability(argument.to_owned())),
+            "mean_cost" => Ok(Self::MeanCost(argument.to_owned())),
+            "variance_cost" => Ok(Self::VarianceCost(argument.to_owned())),
+            "covariance_time_cost" => Ok(Self::CovarianceTimeCost(argument.to_owned())),
+            "hit_probability" => Ok(Self::HitProbability(argument.to_owned())),
+            "mean_time_given_hit" => Ok(Self::MeanTimeGivenHit(argument.to_owned())),
             "time_quantile" => match argument.parse::<f64>() {
                 Ok(p) if p > 0.0 && p < 1.0 => Ok(Self::TimeQuantile(p)),
                 _ => fault(
@@ -135,13 +161,30 @@ impl Quantity {
             Self::SurvivalProbability(_) => "survival_probability",
             Self::MeanTimeGiven(_) => "mean_time_given",
             Self::Law => "law",
+            Self::MeanVisits(_) => "mean_visits",
+            Self::VarianceVisits(_) => "variance_visits",
+            Self::VisitProbability(_) => "visit_probability",
+            Self::MeanCost(_) => "mean_cost",
+            Self::VarianceCost(_) => "variance_cost",
+            Self::CovarianceTimeCost(_) => "covariance_time_cost",
+            Self::HitProbability(_) => "hit_probability",
+            Self::MeanTimeGivenHit(_) => "mean_time_given_hit",
         }
     }
 
     /// What stands behind the colon, if anything.
     pub fn of(&self) -> Option<String> {
         match self {
-            Self::AbsorptionProbability(end) | Self::MeanTimeGiven(end) => Some(end.clone()),
+            Self::AbsorptionProbability(name)
+            | Self::MeanTimeGiven(name)
+            | Self::MeanVisits(name)
+            | Self::VarianceVisits(name)
+            | Self::VisitProbability(name)
+            | Self::MeanCost(name)
+            | Self::VarianceCost(name)
+            | Self::CovarianceTimeCost(name)
+            | Self::HitProbability(name)
+            | Self::MeanTimeGivenHit(name) => Some(name.clone()),
             Self::TimeQuantile(p) => Some(p.to_string()),
             Self::SurvivalProbability(t) => Some(t.to_string()),
             Self::MeanTime | Self::SdTime | Self::VarianceTime | Self::Law => None,
@@ -150,7 +193,14 @@ impl Quantity {
 
     /// Whether the answer is a probability, so that a tolerance beyond one makes no sense.
     pub fn is_probability(&self) -> bool {
-        matches!(self, Self::AbsorptionProbability(_) | Self::SurvivalProbability(_) | Self::Law)
+        matches!(
+            self,
+            Self::AbsorptionProbability(_)
+                | Self::SurvivalProbability(_)
+                | Self::Law
+                | Self::VisitProbability(_)
+                | Self::HitProbability(_)
+        )
     }
 
     /// Whether a name is that of a quantity.
@@ -168,6 +218,9 @@ impl Quantity {
             "absorption_probability" | "mean_time_given" => format!("`{name}:END`"),
             "time_quantile" => format!("`{name}:P`"),
             "survival_probability" => format!("`{name}:T`"),
+            "mean_visits" | "variance_visits" | "visit_probability" => format!("`{name}:STATE`"),
+            "mean_cost" | "variance_cost" | "covariance_time_cost" => format!("`{name}:COST`"),
+            "hit_probability" | "mean_time_given_hit" => format!("`{name}:HIT`"),
             _ => format!("`{name}`"),
         }
     }
@@ -197,6 +250,14 @@ mod tests {
             "survival_probability:18446744073709551615",
             "mean_time_given:shipped",
             "law",
+            "mean_visits:board",
+            "variance_visits:board",
+            "visit_probability:board",
+            "mean_cost:labour",
+            "variance_cost:labour",
+            "covariance_time_cost:labour",
+            "hit_probability:any-repair",
+            "mean_time_given_hit:any-repair",
         ] {
             assert_eq!(Quantity::parse(text).unwrap().to_string(), text);
         }
@@ -210,7 +271,8 @@ mod tests {
             ("mean_time:3", "takes no argument", "`mean_time`"),
             ("time_quantile:1.5", "`1.5`", "time_quantile:0.9"),
             ("survival_probability:-1", "`-1`", "survival_probability:100"),
-            ("mean_cost:labour", "not computed by this version", "mean_time"),
+            ("skewness_time", "not computed by this version", "mean_time"),
+            ("mean_cost", "lacks its argument", "mean_cost:COST"),
             ("zzz", "`zzz`", "use one of"),
         ] {
             let fault = Quantity::parse(text).unwrap_err();

@@ -15,7 +15,7 @@ use super::quantity::Quantity;
 use super::tolerance::{Tolerance, ToleranceKey};
 use super::{source, table};
 
-const KEYS: [&str; 11] = [
+const KEYS: [&str; 13] = [
     "title",
     "clock",
     "clock_unit",
@@ -26,11 +26,10 @@ const KEYS: [&str; 11] = [
     "moves_file",
     "classes",
     "groups",
+    "costs",
+    "hits",
     "tolerance",
 ];
-/// Keys that the format reserves; this version does not read them yet.
-const RESERVED: [&str; 2] = ["costs", "hits"];
-
 /// Reads the text of a model file. `directory` is where a `moves_file` is looked for.
 pub(super) fn read(
     text: &str,
@@ -51,8 +50,8 @@ pub(super) fn read(
     Ok((reader.draft, reader.inputs))
 }
 
-struct Reader<'t> {
-    draft: Draft,
+pub(super) struct Reader<'t> {
+    pub(super) draft: Draft,
     text: &'t str,
     lines: Lines,
     inputs: Vec<super::InputFile>,
@@ -77,11 +76,11 @@ impl Reader<'_> {
         self.draft.fault(Fault { value, ..Fault::new(FaultKind::Syntax, place, said, remedy) });
     }
 
-    fn line(&self, span: &Range<usize>) -> u64 {
+    pub(super) fn line(&self, span: &Range<usize>) -> u64 {
         self.lines.of_byte(span.start)
     }
 
-    fn place(&self, span: &Range<usize>) -> Place {
+    pub(super) fn place(&self, span: &Range<usize>) -> Place {
         self.draft.place(0, self.line(span))
     }
 
@@ -115,6 +114,12 @@ impl Reader<'_> {
         if let Some(groups) = entries.get("groups") {
             self.draft.groups = self.named_lists(groups, "groups");
         }
+        if let Some(hits) = entries.get("hits") {
+            self.hits(hits);
+        }
+        if let Some(costs) = entries.get("costs") {
+            self.costs(costs);
+        }
         if let Some(compare) = entries.get("compare") {
             self.compare(compare);
         }
@@ -128,11 +133,7 @@ impl Reader<'_> {
         for (key, _) in document {
             let name = key.get_ref().as_ref();
             let place = self.place(&key.span());
-            if RESERVED.contains(&name) {
-                let said = format!("the key `{name}` is not read by this version");
-                let fault = Fault::new(FaultKind::Unsupported, place, said, "take it out for now");
-                self.draft.fault(fault.valued(name));
-            } else if !KEYS.contains(&name) {
+            if !KEYS.contains(&name) {
                 let known = KEYS.iter().copied();
                 let remedy = did_you_mean(name, known, &format!("the keys are {}", KEYS.join(", ")));
                 let said = format!("the key `{name}` means nothing here");
@@ -310,7 +311,7 @@ impl Reader<'_> {
 
     /// A number or text as written, so that its exact value is not lost in a double; anything else as the file has it, for
     /// the message that it is no number.
-    fn as_written(&self, value: &Spanned<DeValue<'_>>) -> String {
+    pub(super) fn as_written(&self, value: &Spanned<DeValue<'_>>) -> String {
         match value.get_ref() {
             DeValue::String(text) => text.to_string(),
             DeValue::Float(number) => number.as_str().to_owned(),
@@ -319,7 +320,7 @@ impl Reader<'_> {
         }
     }
 
-    fn text(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Option<String> {
+    pub(super) fn text(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Option<String> {
         match value.get_ref() {
             DeValue::String(text) => Some(text.to_string()),
             other => {
@@ -329,7 +330,12 @@ impl Reader<'_> {
         }
     }
 
-    fn table<'a, 'b>(&mut self, value: &'a Spanned<DeValue<'b>>, key: &str, remedy: &str) -> Option<&'a DeTable<'b>> {
+    pub(super) fn table<'a, 'b>(
+        &mut self,
+        value: &'a Spanned<DeValue<'b>>,
+        key: &str,
+        remedy: &str,
+    ) -> Option<&'a DeTable<'b>> {
         let table = value.get_ref().as_table();
         if table.is_none() {
             self.wrong_type(key, value.get_ref(), &value.span(), remedy);
@@ -337,7 +343,7 @@ impl Reader<'_> {
         table
     }
 
-    fn names(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Vec<(String, u64)> {
+    pub(super) fn names(&mut self, value: &Spanned<DeValue<'_>>, key: &str) -> Vec<(String, u64)> {
         // A lone name is told off, and then taken for the list that was meant.
         let items = value.get_ref().as_array().map_or(std::slice::from_ref(value), |items| items);
         if value.get_ref().as_array().is_none() {
@@ -346,7 +352,7 @@ impl Reader<'_> {
         items.iter().filter_map(|item| self.text(item, key).map(|name| (name, self.line(&item.span())))).collect()
     }
 
-    fn wrong_type(&mut self, key: &str, value: &DeValue<'_>, span: &Range<usize>, remedy: &str) {
+    pub(super) fn wrong_type(&mut self, key: &str, value: &DeValue<'_>, span: &Range<usize>, remedy: &str) {
         let said = format!("`{key}` holds a value of type {}, which does not belong there", value.type_str());
         let fault = Fault::new(FaultKind::WrongType, self.place(span), said, remedy);
         let written = self.text.get(span.clone()).unwrap_or_default();
@@ -354,7 +360,7 @@ impl Reader<'_> {
     }
 }
 
-fn is_empty_list(value: &Spanned<DeValue<'_>>) -> bool {
+pub(super) fn is_empty_list(value: &Spanned<DeValue<'_>>) -> bool {
     value.get_ref().as_array().is_some_and(|items| items.is_empty())
 }
 

@@ -46,6 +46,9 @@ fn trimmed(digits: &str) -> &str {
     if digits.contains('.') { digits.trim_end_matches('0').trim_end_matches('.') } else { digits }
 }
 
+/// A range around zero that is narrower shows as zero.
+const NEGLIGIBLE: f64 = 1e-12;
+
 /// An exact answer to the digits that its bounds prove, at most `digits`.
 ///
 /// ```
@@ -56,6 +59,9 @@ fn trimmed(digits: &str) -> &str {
 /// assert_eq!(proven(Bounded { value: 0.5, low: 0.014_9, high: 1.0 }, 10), "0.014 to 1");
 /// ```
 pub fn proven(answer: Bounded, digits: usize) -> String {
+    if answer.low < 0.0 && answer.high > 0.0 && answer.high - answer.low < NEGLIGIBLE {
+        return "0".to_owned();
+    }
     let agreed = (2..=digits).rev().find(|digits| rounded(answer.low, *digits) == rounded(answer.high, *digits));
     match agreed {
         Some(digits) => rounded(answer.value, digits),
@@ -161,6 +167,8 @@ mod tests {
     fn an_answer_that_proves_no_digit_shows_its_range() {
         assert_eq!(proven(Bounded { value: 1.0, low: 0.0, high: 2.0 }, 10), "0 to 2");
         assert_eq!(proven(Bounded::exactly(42.0), 10), "42");
+        let nothing = Bounded { value: 1e-31, low: -1e-29, high: 2e-29 };
+        assert_eq!((proven(nothing, 6), proven_within(nothing, 6)), ("0".to_owned(), "± 2.1e-29".to_owned()));
     }
 
     #[test]

@@ -3,7 +3,7 @@
 use crate::model::{Model, Quantity};
 use crate::statistics::PowerSums;
 
-use super::Tally;
+use super::{Observable, Tally};
 
 /// An estimate with its standard error.
 #[derive(Debug, Clone, PartialEq)]
@@ -20,23 +20,21 @@ pub struct Estimate {
 const LEVELS: [f64; 3] = [0.5, 0.9, 0.99];
 
 /// The shares of ends and groups, mean and standard deviation of the time, its quantiles at 0.5, 0.9 and 0.99 where a cell
-/// of the grid holds one time alone, and the mean time given each end.
+/// of the grid holds one time alone, the mean time given each end, and what the tally records of costs and hits.
 ///
 /// # Panics
 /// When the tally is over other ends than the model.
 pub fn estimates(model: &Model, tally: &Tally) -> Vec<Estimate> {
     let n = tally.replications() as f64;
-    let share = |name: &str, ends: &[usize]| {
-        let p = (n > 0.0).then(|| tally.count_of(ends) as f64 / n);
-        Estimate {
-            quantity: Quantity::AbsorptionProbability(name.to_owned()),
-            estimate: p,
-            standard_error: p.map(|p| (p * (1.0 - p) / n).sqrt()),
-        }
+    let share = |quantity: Quantity, count: u64| {
+        let p = (n > 0.0).then(|| count as f64 / n);
+        Estimate { quantity, estimate: p, standard_error: p.map(|p| (p * (1.0 - p) / n).sqrt()) }
     };
+    let finishing =
+        |name: &str, ends: &[usize]| share(Quantity::AbsorptionProbability(name.to_owned()), tally.count_of(ends));
     let ends = model.chain().ends();
-    let mut all: Vec<Estimate> = ends.iter().enumerate().map(|(end, one)| share(&one.name, &[end])).collect();
-    all.extend(model.groups().iter().map(|group| share(&group.name, &group.ends)));
+    let mut all: Vec<Estimate> = ends.iter().enumerate().map(|(end, one)| finishing(&one.name, &[end])).collect();
+    all.extend(model.groups().iter().map(|group| finishing(&group.name, &group.ends)));
     let times = tally.all();
     all.push(mean(Quantity::MeanTime, &times));
     let sd = times.variance().map(f64::sqrt);
@@ -49,6 +47,19 @@ pub fn estimates(model: &Model, tally: &Tally) -> Vec<Estimate> {
     all.extend(LEVELS.into_iter().filter_map(|p| quantile(p, tally)));
     let given = ends.iter().enumerate();
     all.extend(given.map(|(end, one)| mean(Quantity::MeanTimeGiven(one.name.clone()), &tally.power_sums(end))));
+    for (number, cost) in model.costs().iter().enumerate() {
+        let Some(column) = tally.column(Observable::Cost(number)) else { continue };
+        let Estimate { quantity, estimate, standard_error } =
+            mean(Quantity::MeanCost(cost.name.clone()), &column.sums().values());
+        let scaled = |value: Option<f64>| value.map(|value| value / cost.denominator as f64);
+        all.push(Estimate { quantity, estimate: scaled(estimate), standard_error: scaled(standard_error) });
+    }
+    for (number, hit) in model.hits().iter().enumerate() {
+        let Some(column) = tally.column(Observable::Hit(number)) else { continue };
+        let times = column.sums().values();
+        all.push(share(Quantity::HitProbability(hit.name.clone()), times.count()));
+        all.push(mean(Quantity::MeanTimeGivenHit(hit.name.clone()), &times));
+    }
     all
 }
 

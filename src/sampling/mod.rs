@@ -26,16 +26,20 @@
 //! ```
 
 mod alias;
+mod column;
 mod estimate;
 mod grid;
+mod observed;
 mod quantise;
 mod run;
 mod sampler;
 mod streams;
 mod tally;
 
+pub use column::Column;
 pub use estimate::{Estimate, estimates};
 pub use grid::Grid;
+pub use observed::{Observable, ObservedSampler};
 pub use run::{Interrupted, OutcomeSource, Plan, sample, sample_with};
 pub use sampler::{Outcome, Sampler};
 pub use streams::{BLOCK, STREAM_VERSION, Streams};

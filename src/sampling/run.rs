@@ -7,6 +7,7 @@ use rayon::iter::{IntoParallelIterator, ParallelIterator};
 use thiserror::Error;
 
 use super::grid::Grid;
+use super::observed::Observable;
 use super::sampler::Sampler;
 use super::streams::{BLOCK, Streams};
 use super::tally::Tally;
@@ -77,6 +78,11 @@ pub trait OutcomeSource: Sync {
     /// Number of ends.
     fn ends(&self) -> usize;
 
+    /// What is recorded of every replication besides end and time.
+    fn observed(&self) -> Arc<[Observable]> {
+        Arc::from([])
+    }
+
     /// Adds the first `replications` outcomes of a block to a tally.
     ///
     /// # Errors
@@ -118,7 +124,8 @@ pub fn sample_with<S: OutcomeSource + ?Sized>(
     progress.begin("sampling", "replications", Some(plan.replications));
     let streams = Streams::new(plan.seed);
     let done = AtomicU64::new(0);
-    let empty = || Tally::new(source.ends(), Arc::clone(&plan.grid));
+    let observed = source.observed();
+    let empty = || Tally::observing(source.ends(), Arc::clone(&plan.grid), Arc::clone(&observed));
     let sampled = (0..plan.blocks())
         .into_par_iter()
         // One tally for each run of consecutive blocks that a thread takes, not for each block: tallies may be large.

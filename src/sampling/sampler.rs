@@ -51,7 +51,7 @@ impl Sampler {
     /// # Panics
     /// When the transient states, ends and escapes of the chain number 2³² or more together.
     pub fn new(chain: &Chain) -> Self {
-        let is_place = |state: usize| chain.is_reachable(state) && chain.end_of(state).is_none();
+        let is_place = |state: usize| is_place(chain, state);
         let places = (0..chain.states()).filter(|state| is_place(*state)).count() as u32;
         let ends = chain.ends().len() as u32;
         let mut next_place = 0;
@@ -106,6 +106,45 @@ impl Sampler {
         }
     }
 
+    /// Walks one path and shows every place that it comes to, with the place before, if any, and the time. Places number the
+    /// reachable transient states, ends come after them. The outcome and the draws are those of [`Sampler::walk`].
+    ///
+    /// # Errors
+    /// [`Interrupted`] if the user asked to stop within a path of many steps.
+    pub(super) fn follow(
+        &self,
+        rng: &mut Lcg128CmDxsm64,
+        progress: &dyn Progress,
+        mut visit: impl FnMut(Option<u32>, u32, u64),
+    ) -> Result<Outcome, Interrupted> {
+        let mut place = self.resolve(self.tables.draw(self.places, rng), rng);
+        let mut time = 0_u64;
+        visit(None, place, time);
+        while place < self.places {
+            let next = self.resolve(self.tables.draw(place, rng), rng);
+            time = time.saturating_add(1);
+            visit(Some(place), next, time);
+            place = next;
+            if time.is_multiple_of(STEPS_BETWEEN_CHECKS) && progress.interrupted() {
+                return Err(Interrupted { done: 0 });
+            }
+        }
+        Ok(Outcome { end: place - self.places, time })
+    }
+
+    /// The states of the places, by their numbers in the chain that the sampler was built from.
+    pub(super) fn states_of_places(chain: &Chain) -> Vec<usize> {
+        (0..chain.states()).filter(|state| is_place(chain, *state)).collect()
+    }
+
+    /// The place of a state, or that of its end; `states` are those of the places.
+    pub(super) fn place_of(&self, chain: &Chain, state: usize, states: &[usize]) -> u32 {
+        match chain.end_of(state) {
+            Some(end) => self.places + end as u32,
+            None => states.partition_point(|known| *known < state) as u32,
+        }
+    }
+
     /// Draws on while a draw escaped.
     #[inline]
     fn resolve(&self, mut place: u32, rng: &mut Lcg128CmDxsm64) -> u32 {
@@ -114,6 +153,11 @@ impl Sampler {
         }
         place
     }
+}
+
+/// Whether a sampler keeps moves of a state.
+fn is_place(chain: &Chain, state: usize) -> bool {
+    chain.is_reachable(state) && chain.end_of(state).is_none()
 }
 
 impl OutcomeSource for Sampler {

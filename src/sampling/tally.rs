@@ -3,11 +3,12 @@
 use std::fmt;
 use std::sync::Arc;
 
-use dashu_int::UBig;
 use sha2::{Digest, Sha256};
 use thiserror::Error;
 
+use super::column::Column;
 use super::grid::Grid;
+use super::observed::Observable;
 use crate::model::hexadecimal;
 use crate::statistics::{PowerSums, PowerSumsBlock};
 
@@ -15,6 +16,9 @@ use crate::statistics::{PowerSums, PowerSumsBlock};
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Error)]
 #[non_exhaustive]
 pub enum TallyMismatch {
+    /// They record different things besides end and time.
+    #[error("the tallies record different quantities; sample both with the same ones")]
+    Observed,
     /// They are over different numbers of ends.
     #[error("one tally has {left} ends and the other {right}; merge tallies of one model only")]
     Ends {
@@ -79,13 +83,42 @@ pub struct Tally {
     ends: Vec<EndTally>,
     /// The cells of end 0, of end 1, and so on.
     cells: Vec<u64>,
+    observed: Arc<[Observable]>,
+    /// One an observable.
+    columns: Vec<Column>,
 }
 
 impl Tally {
     /// The empty tally.
     pub fn new(ends: usize, grid: Arc<Grid>) -> Self {
+        Self::observing(ends, grid, Arc::from([]))
+    }
+
+    /// The empty tally with columns for what is recorded besides end and time.
+    pub fn observing(ends: usize, grid: Arc<Grid>, observed: Arc<[Observable]>) -> Self {
         let cells = vec![0; ends * grid.cells()];
-        Self { grid, replications: 0, ends: vec![EndTally::default(); ends], cells }
+        let columns = vec![Column::default(); observed.len()];
+        Self { grid, replications: 0, ends: vec![EndTally::default(); ends], cells, observed, columns }
+    }
+
+    /// Adds one outcome with what was recorded of it, one cell an observable; a cell without a value counts nothing.
+    ///
+    /// # Panics
+    /// When there is no such end, or as many cells as observables.
+    pub fn add_observed(&mut self, end: usize, time: u64, values: &[Option<i128>]) {
+        assert_eq!(values.len(), self.columns.len(), "one cell an observable");
+        self.add(end, time);
+        for (column, value) in self.columns.iter_mut().zip(values) {
+            if let Some(value) = value {
+                column.add(*value, time);
+            }
+        }
+    }
+
+    /// What was recorded of an observable; `None` if nothing was.
+    pub fn column(&self, observable: Observable) -> Option<&Column> {
+        let at = self.observed.iter().position(|known| *known == observable)?;
+        Some(&self.columns[at])
     }
 
     /// Adds one outcome.
@@ -127,6 +160,9 @@ impl Tally {
         if !Arc::ptr_eq(&self.grid, &other.grid) && self.grid.edges() != other.grid.edges() {
             return Err(TallyMismatch::Edges);
         }
+        if self.observed != other.observed {
+            return Err(TallyMismatch::Observed);
+        }
         self.replications += other.replications;
         for (end, more) in self.ends.iter_mut().zip(&other.ends) {
             if let Some((smallest, largest)) = more.range {
@@ -137,6 +173,7 @@ impl Tally {
         for (cell, more) in self.cells.iter_mut().zip(&other.cells) {
             *cell += more;
         }
+        self.columns.iter_mut().zip(&other.columns).for_each(|(column, more)| column.merge(more));
         Ok(())
     }
 
@@ -263,6 +300,8 @@ impl PartialEq for Tally {
     fn eq(&self, other: &Self) -> bool {
         self.grid.edges() == other.grid.edges()
             && self.cells == other.cells
+            && self.observed == other.observed
+            && self.columns == other.columns
             && self.ends.len() == other.ends.len()
             && self.ends.iter().zip(&other.ends).all(|(a, b)| a.range == b.range && a.power_sums() == b.power_sums())
     }
@@ -273,7 +312,9 @@ impl Eq for Tally {}
 /// The canonical text: the same for equal tallies, and for no others.
 ///
 /// One line with the edges; then, for each end, one with count, smallest and largest time (`-` for none) and the sums of
-/// the powers 1 to 4, and one with the cells that are not empty as `cell:count`. Lines end with a line feed.
+/// the powers 1 to 4, and one with the cells that are not empty as `cell:count`; then one for each observable, with its
+/// number in the model, count, values above zero, smallest and largest value, and the sums of [`JointSums::sums`](crate::statistics::JointSums::sums). Lines end
+/// with a line feed.
 impl fmt::Display for Tally {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         write!(f, "tallystone tally 1\nedges")?;
@@ -285,10 +326,18 @@ impl fmt::Display for Tally {
                 None => f.write_str("- -")?,
             }
             f.write_str(" sums")?;
-            end.power_sums().sums().iter().try_for_each(|sum: &UBig| write!(f, " {sum}"))?;
+            end.power_sums().sums().iter().try_for_each(|sum| write!(f, " {sum}"))?;
             f.write_str("\ncells")?;
             let mut cells = self.cells(number).iter().enumerate().filter(|(_, count)| **count > 0);
             cells.try_for_each(|(cell, count)| write!(f, " {cell}:{count}"))?;
+        }
+        for (observable, column) in self.observed.iter().zip(&self.columns) {
+            let (kind, number) = match observable {
+                Observable::Visits(state) => ("visits", state),
+                Observable::Cost(cost) => ("cost", cost),
+                Observable::Hit(hit) => ("hit", hit),
+            };
+            write!(f, "\n{kind} {number} {column}")?;
         }
         f.write_str("\n")
     }
@@ -296,6 +345,7 @@ impl fmt::Display for Tally {
 
 #[cfg(test)]
 mod tests {
+    use dashu_int::IBig;
     use rand_pcg::Lcg128CmDxsm64;
     use rand_pcg::rand_core::Rng;
 
@@ -344,7 +394,7 @@ mod tests {
             assert_eq!(tally.smallest(end), times(end).min());
             assert_eq!(tally.largest(end), times(end).max());
             assert_eq!(tally.cells(end).iter().sum::<u64>(), tally.count(end));
-            let fourth = times(end).map(|time| UBig::from(time).pow(4)).sum::<UBig>();
+            let fourth = times(end).map(|time| IBig::from(time).pow(4)).sum::<IBig>();
             assert_eq!(tally.power_sums(end).sums()[3], fourth);
             assert_eq!(tally.at_or_below_for(end, 1000), Some(times(end).filter(|time| *time <= 1000).count() as u64));
         }

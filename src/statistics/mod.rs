@@ -36,6 +36,7 @@ mod continued;
 mod incomplete_beta;
 mod incomplete_gamma;
 mod interval;
+mod joint;
 mod moments;
 mod normal;
 mod order;
@@ -52,6 +53,7 @@ pub use binomial::{
 };
 pub use chi_square::{GoodnessOfFit, chi_square_survival, chi_square_upper_quantile, pooled_chi_square};
 pub use interval::Interval;
+pub use joint::JointSums;
 pub use moments::{PowerSums, PowerSumsBlock};
 pub use normal::{normal_density, normal_survival, normal_upper_quantile};
 pub use order::{Ranks, quantile_p_value, quantile_ranks};

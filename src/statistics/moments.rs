@@ -1,6 +1,6 @@
 //! Exact power sums of whole numbers, and the moments that they give.
 //!
-//! A tally of step counts is a set of whole numbers, so its power sums are whole numbers too and can be kept without any
+//! A tally of step counts, or of costs over their denominator, is a set of whole numbers, so its power sums are whole numbers too and can be kept without any
 //! rounding. They merge by addition, in any order, to the same result; and the moments are formed from them exactly and
 //! rounded once. A running sum of squares in doubles would lose the variance altogether when the mean is large.
 
@@ -24,13 +24,13 @@ use dashu_int::{IBig, UBig};
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
 pub struct PowerSums {
     count: u64,
-    sums: [UBig; 4],
+    sums: [IBig; 4],
 }
 
 impl PowerSums {
     /// The tally whose parts were kept elsewhere: the number of values and the sums of their powers 1 to 4.
     #[must_use]
-    pub fn from_parts(count: u64, sums: [UBig; 4]) -> Self {
+    pub fn from_parts(count: u64, sums: [IBig; 4]) -> Self {
         Self { count, sums }
     }
 
@@ -42,7 +42,7 @@ impl PowerSums {
     /// Adds the same value `copies` times.
     pub fn add_many(&mut self, value: u64, copies: u64) {
         self.count += copies;
-        let mut term = UBig::from(copies);
+        let mut term = IBig::from(copies);
         for sum in &mut self.sums {
             term *= value;
             *sum += &term;
@@ -65,14 +65,14 @@ impl PowerSums {
 
     /// The sums of the powers 1 to 4.
     #[must_use]
-    pub fn sums(&self) -> &[UBig; 4] {
+    pub fn sums(&self) -> &[IBig; 4] {
         &self.sums
     }
 
     /// The mean, correctly rounded; `None` without values.
     #[must_use]
     pub fn mean(&self) -> Option<f64> {
-        ratio_to_f64(&IBig::from(self.sums[0].clone()), &UBig::from(self.count))
+        ratio_to_f64(&self.sums[0], &UBig::from(self.count))
     }
 
     /// The sample variance, divisor n − 1, correctly rounded; `None` below two values.
@@ -137,7 +137,7 @@ impl PowerSums {
 
     fn signed(&self) -> [IBig; 5] {
         let [s1, s2, s3, s4] = &self.sums;
-        [IBig::from(self.count), s1.clone().into(), s2.clone().into(), s3.clone().into(), s4.clone().into()]
+        [IBig::from(self.count), s1.clone(), s2.clone(), s3.clone(), s4.clone()]
     }
 }
 
@@ -198,7 +198,7 @@ impl PowerSumsBlock {
     #[cold]
     fn settle(&mut self) {
         let held = std::mem::take(&mut self.held);
-        let sums = std::mem::take(&mut self.sums).map(UBig::from);
+        let sums = std::mem::take(&mut self.sums).map(IBig::from);
         self.settled.merge(&PowerSums::from_parts(held, sums));
     }
 }

@@ -97,3 +97,54 @@ fn gauss(matrix: &[Vec<RBig>], right: &[RBig]) -> Vec<RBig> {
     }
     x
 }
+
+/// A chain that also stops at some states, as equations over the states where it goes on.
+pub(crate) struct System<'c> {
+    chain: &'c Chain,
+    states: Vec<usize>,
+    place: Vec<Option<usize>>,
+    matrix: Vec<Vec<RBig>>,
+}
+
+impl<'c> System<'c> {
+    pub(crate) fn new(chain: &'c Chain, stops: impl Fn(usize) -> bool) -> Self {
+        let reachable = chain.components().iter().flatten().map(|state| *state as usize);
+        let states: Vec<usize> = reachable.filter(|state| !stops(*state)).collect();
+        let mut place = vec![None; chain.states()];
+        states.iter().enumerate().for_each(|(at, state)| place[*state] = Some(at));
+        let mut matrix = vec![vec![RBig::ZERO; states.len()]; states.len()];
+        for (at, state) in states.iter().enumerate() {
+            matrix[at][at] = RBig::ONE;
+            let row = chain.row(*state);
+            for (i, to) in row.targets.iter().enumerate() {
+                if let Some(column) = place[*to as usize] {
+                    matrix[at][column] -= row.probability(i);
+                }
+            }
+        }
+        Self { chain, states, place, matrix }
+    }
+
+    /// Solves `x_i = Σ_j p_ij (a(i, j) + x_j)`, `x` being `stopped(j)` where the chain stops; for every state of the chain.
+    pub(crate) fn solve(&self, a: impl Fn(usize, usize) -> RBig, stopped: impl Fn(usize) -> RBig) -> Vec<RBig> {
+        let right = |state: &usize| {
+            let row = self.chain.row(*state);
+            total(row.targets.iter().enumerate().map(|(i, to)| {
+                let to = *to as usize;
+                let after = if self.place[to].is_none() { stopped(to) } else { RBig::ZERO };
+                row.probability(i) * (a(*state, to) + after)
+            }))
+        };
+        let right: Vec<RBig> = self.states.iter().map(right).collect();
+        let solved = gauss(&self.matrix, &right);
+        (0..self.chain.states())
+            .map(|state| self.place[state].map_or_else(|| stopped(state), |at| solved[at].clone()))
+            .collect()
+    }
+
+    /// The mean over the start of values of the states.
+    pub(crate) fn over_start(&self, values: &[RBig]) -> RBig {
+        let start = self.chain.start();
+        total(start.targets.iter().enumerate().map(|(i, state)| start.probability(i) * &values[*state as usize]))
+    }
+}

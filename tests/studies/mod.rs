@@ -5,7 +5,7 @@
 use tallystone::compare::{Comparison, Row, Settings, Study};
 use tallystone::exact::{Exact, Request};
 use tallystone::model::{Model, Quantity, Silent, Tolerance, ToleranceKey};
-use tallystone::sampling::{Plan, Sampler, Tally, sample};
+use tallystone::sampling::{ObservedSampler, Plan, Sampler, Tally, sample_with};
 
 /// Three ends, one of them rare, and a loop.
 pub(crate) const BENCH: &str = r#"
@@ -42,13 +42,15 @@ pub(crate) fn tolerating(mut settings: Settings, key: &str, tolerance: Tolerance
 
 pub(crate) fn with_study<T>(text: &str, settings: &Settings, test: impl FnOnce(&Model, &Study<'_>) -> T) -> T {
     let model = Model::from_toml(text).unwrap();
-    let exact = Exact::solve(&model, &Request::of(&Study::quantities(&model, settings)), &Silent).unwrap();
+    let exact = Exact::solve(&model, &Request::of(&model, &Study::quantities(&model, settings)), &Silent).unwrap();
     test(&model, &Study::new(&exact, settings).unwrap())
 }
 
 pub(crate) fn run(model: &Model, study: &Study<'_>, replications: u64, seed: u64) -> Comparison {
     let plan = Plan { replications, seed, grid: study.grid() };
-    study.compare(&sample(&Sampler::new(model.chain()), &plan, &Silent).unwrap(), Vec::new())
+    let sampler = Sampler::new(model.chain());
+    let watching = ObservedSampler::new(&sampler, model, study.observed());
+    study.compare(&sample_with(&watching, &plan, &Silent).unwrap(), Vec::new())
 }
 
 pub(crate) fn made(study: &Study<'_>, outcomes: &[(usize, u64, u64)]) -> Comparison {
