@@ -1,7 +1,8 @@
 //! Exact answers, each with a proven bound.
 //!
 //! **Purpose.** From a checked chain: the probability of each end and group, mean and variance of the time, the mean time
-//! given an end, and the joint law of end and time with its quantiles and survival probabilities.
+//! given an end, the joint law of end and time with its quantiles and survival probabilities; and on request the visits of
+//! a state, costs that accumulate on the way, and first passages to sets of states.
 //!
 //! **Limits.** The clock counts steps. A communicating class of transient states may be as large as 2,000 states that all
 //! lead to one another, or much larger when moves lead only to states near in the order of the model; larger ones are
@@ -33,6 +34,10 @@
 //! - Var T = Σ_i y_i Σ_j p_ij (1 + h_j − h_i)² + Σ_i α_i (h_i − E T)², a sum of squares; and Var T = 2 E\[C(T + 1, 2)\] −
 //!   E T − (E T)² with E\[C(T + 1, 2)\] = Σ_i y_i h_i, which is better where the mean is beyond 1e30. The one of the smaller proven error is the answer.
 //!
+//! - Visits and first passages are absorption probabilities and times of the chain that also stops at the state or set
+//!   (`passages.rs`); a cost is `x⁺ − x⁻`, each from a column solve, and its variance and covariance with the time are sums
+//!   over steps of products of deviations like those above (`costs.rs`, `deviations.rs`).
+//!
 //! # Why the bounds hold
 //! Let u = 2⁻⁵³. Sums, products and quotients of double-doubles that are not negative lose at most 3 u², 5 u² and 15 u²
 //! relatively (Joldes, Muller & Popescu 2017). A given probability, two conversions and a quotient, is within 18 u².
@@ -55,7 +60,8 @@
 //! that follow one another add up.
 //!
 //! *Deviations in the variance cancel*, so each d = 1 + h_j − h_i carries the absolute error ε (h_i + h_j) plus rounding, and
-//! the sum of squares the error Σ y_i p_ij (2 |d| δ + δ²) besides the relative one of its weights.
+//! the sum of squares the error Σ y_i p_ij (2 |d| δ + δ²) besides the relative one of its weights. For a cost of both signs ε
+//! refers to x⁺ + x⁻, and a product of two deviations has the error |d| δ' + |d'| δ + δ δ'.
 //!
 //! All this is first order in quantities below 1e-12; a factor 1 + 1e-10 and outward rounding to doubles cover the rest.
 //! Numbers below 2⁻⁹⁰⁰ or above 2⁹⁹⁶ are refused where they occur, given probabilities included, since underflow and overflow

@@ -95,6 +95,9 @@ impl<'a> ObservedSampler<'a> {
         values: &mut [Option<i128>],
         progress: &dyn Progress,
     ) -> Result<Outcome, Interrupted> {
+        if self.observed.is_empty() {
+            return self.sampler.walk(rng, progress);
+        }
         values.iter_mut().zip(&self.is_sum).for_each(|(value, is_sum)| *value = is_sum.then_some(0));
         self.sampler.follow(rng, progress, |from, to, time| {
             if let Some(from) = from {
@@ -136,6 +139,9 @@ impl OutcomeSource for ObservedSampler<'_> {
         tally: &mut Tally,
         progress: &dyn Progress,
     ) -> Result<(), Interrupted> {
+        if self.observed.is_empty() {
+            return self.sampler.block(streams, block, replications, tally, progress);
+        }
         let mut rng = streams.block(block);
         let mut values = vec![None; self.observed.len()];
         for done in 0..replications {
