@@ -168,7 +168,6 @@ fn keys_that_mean_nothing_or_hold_the_wrong_thing() {
             "compare = [\"mean_visits:x\"]",
             (UnknownName, 3, "", "mean_visits:x", "`x`, where replications finish", "absorption_probability"),
         ),
-        ("clock = \"rates\"", (Unsupported, 3, "", "rates", "is not supported by this version", "clock = \"steps\"")),
         ("clock = \"hours\"", (WrongType, 3, "", "hours", "`hours` is no clock", "clock = \"steps\"")),
         ("title = 5", (WrongType, 3, "title", "5", "`title` holds a value of type integer", "in quotes")),
         ("moves_file = \"m.csv\"", (Shape, 3, "", "", "both [moves] and moves_file", "keep one of the two")),

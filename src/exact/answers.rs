@@ -2,7 +2,7 @@
 
 use std::sync::OnceLock;
 
-use crate::model::{Model, Progress, Quantity};
+use crate::model::{Clock, Model, Progress, Quantity};
 
 use super::costs::CostAnswer;
 use super::dd::{Dd, U2};
@@ -98,7 +98,7 @@ impl<'a> Exact<'a> {
         let reachable =
             chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
         let all: Vec<usize> = (0..chain.ends().len()).collect();
-        let only = only_time(chain, &all);
+        let only = only_time(chain, &all).filter(|time| model.clock() == Clock::Steps || *time == 0);
         if let Some(time) = only {
             linear.mean = Bounded::exactly(time as f64);
             linear.variance = Bounded::exactly(0.0);
@@ -173,7 +173,7 @@ impl<'a> Exact<'a> {
         if !ends.iter().any(|end| self.reachable[*end]) {
             return None;
         }
-        if let Some(time) = only_time(self.model.chain(), ends) {
+        if let Some(time) = self.only_time(ends) {
             return Some(Bounded::exactly(time as f64));
         }
         let ratio = self.summed(ends, 1).over(self.summed(ends, 0));
@@ -186,7 +186,12 @@ impl<'a> Exact<'a> {
     /// # Panics
     /// When there is no such end.
     pub fn only_time(&self, ends: &[usize]) -> Option<u64> {
-        only_time(self.model.chain(), ends)
+        // In continuous time only a start in the ends takes one time.
+        only_time(self.model.chain(), ends).filter(|time| self.is_in_steps() || *time == 0)
+    }
+
+    fn is_in_steps(&self) -> bool {
+        self.model.clock() == Clock::Steps
     }
 
     /// Whether a replication can finish in an end at a time at all, by the moves alone. `true` when that would take too
@@ -195,7 +200,10 @@ impl<'a> Exact<'a> {
     /// # Panics
     /// When there is no such end.
     pub fn is_possible(&self, end: usize, time: u64) -> bool {
-        self.reachable[end] && self.support.get_or_init(|| Support::of(self.model.chain())).is_possible(end, time)
+        // In continuous time every time is possible where the end is.
+        self.reachable[end]
+            && (!self.is_in_steps()
+                || self.support.get_or_init(|| Support::of(self.model.chain())).is_possible(end, time))
     }
 
     /// Moments of the time, for planning.
@@ -211,11 +219,11 @@ impl<'a> Exact<'a> {
         if !ends.iter().any(|end| self.reachable[*end]) {
             return None;
         }
-        if let Some(time) = only_time(self.model.chain(), ends) {
+        if let Some(time) = self.only_time(ends) {
             return Some(Shape::constant(time as f64));
         }
         let sums: Vec<Dd> = (0..self.linear.errors.len()).map(|order| self.summed(ends, order)).collect();
-        Some(Shape::of_rising(&sums, &self.linear.errors))
+        Some(Shape::of_sums(&sums, &self.linear.errors, self.is_in_steps()))
     }
 
     fn visits_of(&self, state: &str) -> Option<&VisitAnswer> {

@@ -11,6 +11,7 @@ use super::bounded::Bounded;
 use super::dd::{Dd, INPUT, U2};
 use super::deviations::{Covariance, Gathered, covariance};
 use super::elimination::{Elimination, Solution};
+use super::holding::Holding;
 use super::linear::start_sum;
 use super::stopped::Stopped;
 use super::{ExactError, Shape};
@@ -35,6 +36,7 @@ pub(super) struct CostAnswer {
 pub(super) fn answer(
     cost: &Cost,
     elimination: &Elimination<'_>,
+    holding: &Holding,
     start: &Solution,
     visits: &Solution,
     time: &Gathered<'_>,
@@ -42,14 +44,18 @@ pub(super) fn answer(
     let stopped = elimination.stopped();
     let begins = stopped.chain().start().targets;
     let around_start = || ExactError::OutOfRange { example: stopped.chain().name(begins[0] as usize).to_owned() };
-    let step = |from: usize, to: usize| cost.of_step(from, to);
-    let gains = elimination.column(&amounts(elimination, |from, to| step(from, to).max(0).unsigned_abs()))?;
-    let losses = elimination.column(&amounts(elimination, |from, to| step(from, to).min(0).unsigned_abs()))?;
+    let (pace, jump) = (|state: usize| cost.of_visit(state), |from: usize, to: usize| cost.of_move(from, to));
+    let side = |sign: i64| {
+        let part = move |amount: i64| (amount * sign).max(0).unsigned_abs();
+        amounts(elimination, holding, |state| part(pace(state)), |from, to| part(jump(from, to)))
+    };
+    let (gains, losses) = (elimination.column(&side(1))?, elimination.column(&side(-1))?);
     let ((gained, adding), (lost, _)) = (start_sum(start, &gains, begins), start_sum(start, &losses, begins));
     let mean = gained.minus(lost);
     let relative = start.error + gains.error + losses.error + adding + 6.0 * U2;
     let mean_error = (gained.hi + lost.hi) * relative * (1.0 + 1e-10);
-    let gathered = Gathered { step: &step, gains: &gains, losses: Some(&losses), mean: (mean, mean_error) };
+    let gathered =
+        Gathered { pace: &pace, jump: &jump, gains: &gains, losses: Some(&losses), mean: (mean, mean_error) };
 
     let unit = Dd::of_u64(cost.denominator);
     let square = unit.times(unit);
@@ -57,20 +63,23 @@ pub(super) fn answer(
         let quotient = value.over(by);
         (quotient, error / by.hi * (1.0 + 1e-10) + quotient.hi.abs() * 25.0 * U2)
     };
-    let variance = covariance(stopped, start, visits, &gathered, &gathered)?;
-    let together = covariance(stopped, start, visits, &gathered, time)?;
+    let variance = covariance(stopped, holding, start, visits, &gathered, &gathered)?;
+    let together = covariance(stopped, holding, start, visits, &gathered, time)?;
     let bounded = |Covariance { value, error }: Covariance, by: Dd| scaled(value, error, by);
     let (mean_value, mean_off) = scaled(mean, mean_error, unit);
     let (variance_value, variance_off) = bounded(variance, square);
     let (covariance_value, covariance_off) = bounded(together, unit);
-    let moments = Moments { elimination, start, gathered: &gathered, time };
+    let moments = Moments { elimination, holding, start, gathered: &gathered, time };
+    // In continuous time what a state adds while it is held is never fixed.
+    let is_fixed_by_moves = holding.is_one_step() || cost.is_of_moves_alone();
+    let step = |from: usize, to: usize| cost.of_step(from, to);
     let scale = 1.0 / cost.denominator as f64;
     let mut answer = CostAnswer {
         mean: Bounded::signed(mean_value, mean_off).ok_or_else(around_start)?,
         variance: Bounded::within(variance_value, variance_off).ok_or_else(around_start)?,
         covariance: Bounded::signed(covariance_value, covariance_off).ok_or_else(around_start)?,
         shape: moments.of_cost(mean_value.hi, scale)?,
-        only: stopped.only_amount(|_| true, step),
+        only: is_fixed_by_moves.then(|| stopped.only_amount(|_| true, step)).flatten(),
         product: moments.of_product(scale)?,
     };
     if let Some(only) = answer.only {
@@ -97,14 +106,21 @@ impl CostAnswer {
     }
 }
 
-/// The mean amount of one step out of each state, stays included.
-fn amounts(elimination: &Elimination<'_>, of_step: impl Fn(usize, usize) -> u64) -> Solution {
+/// The mean amount of one visit of each state and the move after it, stays included.
+fn amounts(
+    elimination: &Elimination<'_>,
+    holding: &Holding,
+    pace: impl Fn(usize) -> u64,
+    jump: impl Fn(usize, usize) -> u64,
+) -> Solution {
     let stopped = elimination.stopped();
     let mut of = vec![Dd::ZERO; stopped.chain().states()];
     for state in stopped.classes().iter().flatten().map(|state| *state as usize) {
+        let held = Dd::of_u64(pace(state));
+        let held = holding.of(state).map_or(held, |mean| held.times(mean));
         of[state] = elimination
             .steps(state)
-            .fold(Dd::ZERO, |sum, one| sum.plus(one.probability.times(Dd::of_u64(of_step(state, one.to as usize)))));
+            .fold(held, |sum, one| sum.plus(one.probability.times(Dd::of_u64(jump(state, one.to as usize)))));
     }
     Solution { of, error: elimination.row_sum_error() + U2 * (INPUT + 8.0) }
 }
@@ -116,9 +132,11 @@ const PRODUCT_ORDERS: usize = 4;
 /// Joint central moments of cost and time, for planning: guides without bounds.
 ///
 /// `c⁽ᵖ'ᵠ⁾_i = E_i[(C − x_i)ᵖ (T − h_i)ᵠ]` solves `(I − Q) c = g` with
-/// `g_i = Σ_j p_ij Σ_{(l,m) < (p,q)} C(p,l) C(q,m) d_ij^{p−l} e_ij^{q−m} c⁽ˡ'ᵐ⁾_j`; gains and losses of `g` are solved apart.
+/// `g_i = Σ_j p_ij Σ_{(l,m) < (p,q)} C(p,l) C(q,m) E[d_ij^{p−l} e_ij^{q−m}] c⁽ˡ'ᵐ⁾_j`; gains and losses of `g` are solved apart.
+/// In continuous time the deviations d and e vary with the holding time.
 struct Moments<'m, 's> {
     elimination: &'m Elimination<'m>,
+    holding: &'m Holding,
     start: &'m Solution,
     gathered: &'m Gathered<'s>,
     time: &'m Gathered<'s>,
@@ -176,16 +194,16 @@ impl Moments<'_, '_> {
         }
         let mut total = (0.0, 0.0);
         for state in stopped.chain().start().targets.iter().map(|state| *state as usize) {
-            let (d, e) = (self.gathered.deviation_of_start(stopped, state).0.hi, self.time_of_start(stopped, state));
-            let (value, size) = expanded(stopped, p, q, d, e, state, known, true);
+            let step = Step {
+                d: self.gathered.deviation_of_start(stopped, state).0.hi,
+                e: self.time.deviation_of_start(stopped, state).0.hi,
+                held: None,
+            };
+            let (value, size) = expanded(stopped, (p, q), &step, state, known, true);
             let share = self.start.of[state].hi;
             total = (total.0 + share * value, total.1 + share * size);
         }
         Ok((total.0.is_finite() && total.1.is_finite()).then_some(total))
-    }
-
-    fn time_of_start(&self, stopped: &Stopped<'_>, state: usize) -> f64 {
-        self.time.deviation_of_start(stopped, state).0.hi
     }
 
     /// Solves for the moments of two orders from each state on, all lower ones being known.
@@ -196,9 +214,13 @@ impl Moments<'_, '_> {
         for state in stopped.classes().iter().flatten().map(|state| *state as usize) {
             for one in self.elimination.steps(state) {
                 let to = one.to as usize;
-                let d = self.gathered.deviation(stopped, state, to).0.hi;
-                let e = self.time.deviation(stopped, state, to).0.hi;
-                let (value, _) = expanded(stopped, p, q, d, e, to, known, false);
+                let held = |of: &Gathered<'_>| of.held(self.holding, state).0.hi;
+                let step = Step {
+                    d: self.gathered.deviation(stopped, self.holding, state, to).0.hi,
+                    e: self.time.deviation(stopped, self.holding, state, to).0.hi,
+                    held: self.holding.of(state).map(|_| (held(self.gathered), held(self.time))),
+                };
+                let (value, _) = expanded(stopped, (p, q), &step, to, known, false);
                 let term = one.probability.hi * value;
                 if !term.is_finite() {
                     return Ok(None);
@@ -235,14 +257,43 @@ fn binomial(n: usize, k: usize) -> f64 {
     (0..k).fold(1.0, |c, i| c * (n - i) as f64 / (i + 1) as f64)
 }
 
-/// `Σ C(p,l) C(q,m) d^{p−l} e^{q−m} c⁽ˡ'ᵐ⁾` over lower orders, or over all of them, with the sum of absolute values.
-#[expect(clippy::too_many_arguments, reason = "the indices of a formula")]
-fn expanded(
-    stopped: &Stopped<'_>,
-    p: usize,
-    q: usize,
+/// The deviations of a step: those of its mean, and in continuous time how much each varies with the holding time, by its
+/// means.
+struct Step {
     d: f64,
     e: f64,
+    held: Option<(f64, f64)>,
+}
+
+/// The moments of an exponential time of mean 1 less 1.
+const SUBFACTORIALS: [f64; 9] = [1.0, 0.0, 1.0, 2.0, 9.0, 44.0, 265.0, 1854.0, 14833.0];
+
+impl Step {
+    /// `E[d^a e^b]`.
+    fn power(&self, a: usize, b: usize) -> f64 {
+        let Some((v, w)) = self.held else { return self.d.powi(a as i32) * self.e.powi(b as i32) };
+        // Both deviate by a multiple of the same exponential time of mean 1, less 1.
+        let mut sum = 0.0;
+        for i in 0..=a {
+            for j in 0..=b {
+                let mean_part = self.d.powi((a - i) as i32) * self.e.powi((b - j) as i32);
+                sum += binomial(a, i)
+                    * binomial(b, j)
+                    * mean_part
+                    * v.powi(i as i32)
+                    * w.powi(j as i32)
+                    * SUBFACTORIALS[i + j];
+            }
+        }
+        sum
+    }
+}
+
+/// `Σ C(p,l) C(q,m) E[d^{p−l} e^{q−m}] c⁽ˡ'ᵐ⁾` over lower orders, or over all of them, with the sum of absolute values.
+fn expanded(
+    stopped: &Stopped<'_>,
+    (p, q): (usize, usize),
+    step: &Step,
     state: usize,
     known: &Known,
     all: bool,
@@ -257,7 +308,7 @@ fn expanded(
                 _ if stopped.slot(state).is_some() => (0.0, 0.0),
                 _ => known.get(&(l, m)).map_or((0.0, 0.0), |of| of[state]),
             };
-            let factor = binomial(p, l) * binomial(q, m) * d.powi((p - l) as i32) * e.powi((q - m) as i32);
+            let factor = binomial(p, l) * binomial(q, m) * step.power(p - l, q - m);
             value += factor * moment.0;
             size += factor.abs() * moment.1;
         }

@@ -4,19 +4,24 @@
 //! Let `X` gather an amount `s_ij` with each step from `i` to `j`, and `x_i` be its mean from `i` on. The deviation of a step
 //! is `d_ij = s_ij + x_j − x_i`, with `x` zero where paths stop, and `E[X − x_i]` is a sum of deviations of mean zero. So
 //! `Cov(X, Y) = Σ_i y_i Σ_j p_ij d_ij e_ij + Σ_i α_i (x_i − E X)(y_i − E Y)`, and with `Y = X` a variance is a sum of squares.
+//! In continuous time a state is held for an exponential time of mean `θ_i` and adds `v_i` a clock unit, so that `s_ij` is
+//! `v_i θ_i + c_ij` in the mean, and `Σ_i y_i v_i w_i θ_i²` comes from the holding times themselves.
 
 use crate::model::Chain;
 
 use super::ExactError;
 use super::dd::{Dd, INPUT, SMALLEST, U2};
 use super::elimination::{Solution, usable_probabilities};
+use super::holding::Holding;
 use super::stopped::Stopped;
 
 /// What a path gathers until it stops, by its mean from each state on. Amounts may be negative; then the mean is the
 /// difference of two solutions that are not.
 pub(super) struct Gathered<'s> {
-    /// What a step from one state to another adds.
-    pub(super) step: &'s dyn Fn(usize, usize) -> i64,
+    /// What a clock unit spent in a state adds.
+    pub(super) pace: &'s dyn Fn(usize) -> i64,
+    /// What a move from one state to another adds.
+    pub(super) jump: &'s dyn Fn(usize, usize) -> i64,
     pub(super) gains: &'s Solution,
     /// `None` when nothing is negative.
     pub(super) losses: Option<&'s Solution>,
@@ -38,18 +43,32 @@ impl Gathered<'_> {
         self.losses.map_or(0.0, |losses| losses.error + 3.0 * U2).max(0.0) + self.gains.error
     }
 
+    /// What a visit of a state adds while it lasts, in the mean, with its absolute error.
+    pub(super) fn held(&self, holding: &Holding, state: usize) -> (Dd, f64) {
+        let pace = Dd::of_i64((self.pace)(state));
+        match holding.of(state) {
+            None => (pace, 0.0),
+            Some(mean) => {
+                let held = pace.times(mean);
+                (held, held.hi.abs() * U2 * (INPUT + 6.0))
+            }
+        }
+    }
+
     /// The deviation of a step, with its absolute error.
-    pub(super) fn deviation(&self, stopped: &Stopped<'_>, from: usize, to: usize) -> (Dd, f64) {
-        let amount = (self.step)(from, to);
-        let step = Dd::of_i64(amount);
+    pub(super) fn deviation(&self, stopped: &Stopped<'_>, holding: &Holding, from: usize, to: usize) -> (Dd, f64) {
+        let (held, held_off) = self.held(holding, from);
+        let jump = Dd::of_i64((self.jump)(from, to));
+        let step = held.sum(jump);
+        let step_off = held_off + 3.0 * U2 * step.hi.abs();
         // A stay changes nothing that is expected.
         if from == to {
-            return (step, 0.0);
+            return (step, if held_off == 0.0 { 0.0 } else { step_off });
         }
         let (own, own_size) = self.from(from);
         let (after, after_size) = if stopped.slot(to).is_some() { (Dd::ZERO, 0.0) } else { self.from(to) };
         let sizes = own_size + after_size;
-        let off = self.error() * sizes;
+        let off = self.error() * sizes + step_off;
         // And so does a move between states of equal mean.
         if after == own { (step, off) } else { (after.minus(own).sum(step), off + 8.0 * U2 * (step.hi.abs() + sizes)) }
     }
@@ -73,6 +92,7 @@ pub(super) struct Covariance {
 /// The covariance of two gathered amounts; `visits` are the mean numbers of steps in each state, stays included.
 pub(super) fn covariance(
     stopped: &Stopped<'_>,
+    holding: &Holding,
     start: &Solution,
     visits: &Solution,
     one: &Gathered<'_>,
@@ -84,7 +104,10 @@ pub(super) fn covariance(
         for step in usable_probabilities(chain, Some(state))? {
             let weight = step.probability.times(visits.of[state]);
             let to = step.to as usize;
-            total.add(weight, one.deviation(stopped, state, to), other.deviation(stopped, state, to));
+            total.add(weight, one.deviation(stopped, holding, state, to), other.deviation(stopped, holding, state, to));
+        }
+        if holding.of(state).is_some() {
+            total.add(visits.of[state], one.held(holding, state), other.held(holding, state));
         }
     }
     let begins = chain.start().targets;

@@ -113,6 +113,9 @@ pub enum LawRefusal {
         /// The last time that was computed.
         horizon: u64,
     },
+    /// The clock runs in rates.
+    #[error("this version computes the law of the time, quantiles and survival only for a clock in steps")]
+    ContinuousTime,
     /// The request did not ask for it.
     #[error("the law of the time was not asked for")]
     NotRequested,

@@ -12,7 +12,7 @@
 //! # Complexity
 //! One multiply-add a move and step; memory for one number a step up to the horizon.
 
-use crate::model::{Chain, Progress};
+use crate::model::{Chain, Clock, Progress};
 
 use super::bounded::Bounded;
 use super::dd::{Dd, INPUT, U2};
@@ -66,6 +66,9 @@ impl Law {
     ) -> Result<Result<Self, LawRefusal>, ExactError> {
         if !request.law && request.levels.is_empty() && request.times.is_empty() {
             return Ok(Err(LawRefusal::NotRequested));
+        }
+        if chain.clock() == Clock::Rates {
+            return Ok(Err(LawRefusal::ContinuousTime));
         }
         let moves: usize =
             chain.components().iter().flatten().map(|state| chain.row(*state as usize).targets.len()).sum();

@@ -7,11 +7,13 @@ use super::costs::{self, CostAnswer};
 use super::dd::{Dd, INPUT, U2};
 use super::deviations::{Covariance, Gathered, covariance};
 use super::elimination::{Elimination, Solution, usable_probabilities};
+use super::holding::Holding;
 use super::shape::ORDERS;
 use super::stopped::Stopped;
 use super::{ExactError, Request, envelope, reference};
 
-/// `E[C(T + j − 1, j); slot]` for one slot, `j` from 0: the probability of stopping there, the mean of the time, and so on.
+/// `E[C(T + j − 1, j); slot]` for one slot, or in continuous time `E[T^j; slot]/j!`, `j` from 0: the probability of stopping
+/// there, the mean of the time, and so on.
 #[derive(Debug, Clone, Default)]
 pub(super) struct RisingSums {
     /// As far as they could be computed.
@@ -60,9 +62,9 @@ impl Linear {
         let chain = model.chain();
         let stopped = Stopped::in_ends(chain);
         let start = distribution(&stopped, None)?;
+        let holding = Holding::of_chain(chain)?;
         let elimination = Elimination::of(&stopped, progress)?;
-        let ones = Solution { of: vec![Dd::ONE; chain.states()], error: 0.0 };
-        let times = elimination.column(&ones)?;
+        let times = elimination.column(&holding.once(chain.states()))?;
         let begins = chain.start().targets;
         let (mean, adding) = start_sum(&start, &times, begins);
         let mean_error = start.error + times.error + adding;
@@ -70,14 +72,17 @@ impl Linear {
         let mean_bound = Bounded::relative(mean, mean_error).ok_or_else(around_start)?;
 
         let visits = elimination.row(&start)?;
-        let time = Gathered { step: &|_, _| 1, gains: &times, losses: None, mean: (mean, mean_error * mean.hi) };
-        let squares = covariance(&stopped, &start, &visits, &time, &time)?;
-        let second_moment = second_moment(&stopped, &visits, &times, (mean, mean_error));
+        let mean_off = mean_error * mean.hi;
+        let time = Gathered { pace: &|_| 1, jump: &|_, _| 0, gains: &times, losses: None, mean: (mean, mean_off) };
+        let squares = covariance(&stopped, &holding, &start, &visits, &time, &time)?;
+        let spent = holding.spent(chain, visits.clone())?;
+        let steps = if holding.is_one_step() { mean } else { Dd::ZERO };
+        let second_moment = second_moment(&stopped, &spent, &times, steps, (mean, mean_error));
         let wanted = request.costs.iter().map(|number| (*number, &model.costs()[*number]));
         let costs = wanted
-            .map(|(number, cost)| Ok((number, costs::answer(cost, &elimination, &start, &visits, &time)?)))
+            .map(|(number, cost)| Ok((number, costs::answer(cost, &elimination, &holding, &start, &visits, &time)?)))
             .collect::<Result<_, ExactError>>()?;
-        let Rising { slots: ends, errors } = rising(&elimination, &start, visits, ORDERS)?;
+        let Rising { slots: ends, errors } = rising(&elimination, &holding, &start, visits, ORDERS)?;
         for (end, sums) in chain.ends().iter().zip(&ends).filter(|(_, sums)| !sums.of[0].is_zero()) {
             if !sums.of[1].over(sums.of[0]).is_in_range() {
                 return Err(ExactError::OutOfRange { example: end.name.clone() });
@@ -86,7 +91,7 @@ impl Linear {
         let variance = narrower(squares, second_moment);
         let variance = variance.ok_or_else(around_start)?;
         let transient: Vec<usize> = stopped.classes().iter().flatten().map(|state| *state as usize).collect();
-        reference::confirm(chain, &transient, mean_bound)?;
+        reference::confirm(chain, &transient, &holding, mean_bound)?;
         Ok(Self { ends, errors, mean: mean_bound, variance, costs })
     }
 }
@@ -102,6 +107,7 @@ pub(super) fn start_sum(start: &Solution, of: &Solution, begins: &[u32]) -> (Dd,
 /// When the first two orders are out of range: higher ones only guide the plan, and end the list.
 pub(super) fn rising(
     elimination: &Elimination<'_>,
+    holding: &Holding,
     start: &Solution,
     mut visits: Solution,
     orders: usize,
@@ -121,7 +127,8 @@ pub(super) fn rising(
             }
         }
         if order + 1 < orders {
-            match elimination.row(&visits) {
+            let next = holding.spent(stopped.chain(), visits).and_then(|spent| elimination.row(&spent));
+            match next {
                 Ok(next) => visits = next,
                 Err(ExactError::OutOfRange { .. }) if order > 0 => break,
                 Err(refused) => return Err(refused),
@@ -159,19 +166,21 @@ fn narrower(one: Covariance, other: Covariance) -> Option<Bounded> {
     Bounded::within(value, error)
 }
 
-/// `Var T = 2 E[C(T + 1, 2)] − m − m²`, where `E[C(T + 1, 2)] = α N² 1 = Σ_i y_i h_i`: it cancels where the time hardly varies,
-/// but its error does not grow with the mean.
+/// `Var T = 2 E[C(T + 1, 2)] − m − m²`, where `E[C(T + 1, 2)] = α N² 1 = Σ_i y_i h_i`; in continuous time
+/// `Var T = 2 Σ_i y_i θ_i h_i − m²`. It cancels where the time hardly varies, but its error does not grow with the mean.
+/// `spent` are the mean times spent in each state, and `steps` is what is taken off besides m².
 fn second_moment(
     stopped: &Stopped<'_>,
-    visits: &Solution,
+    spent: &Solution,
     times: &Solution,
+    steps: Dd,
     (mean, mean_error): (Dd, f64),
 ) -> Covariance {
     let states = stopped.classes().iter().flatten().map(|state| *state as usize);
-    let (sum, adding) = sum_of_products(states.map(|state| (visits.of[state], times.of[state])));
+    let (sum, adding) = sum_of_products(states.map(|state| (spent.of[state], times.of[state])));
     let (twice, square) = (sum.times(Dd::of(2.0)), mean.times(mean));
-    let value = twice.minus(mean).minus(square);
-    let sum_error = visits.error + times.error + adding;
+    let value = twice.minus(steps).minus(square);
+    let sum_error = spent.error + times.error + adding;
     let sizes = twice.hi + mean.hi + square.hi;
     let error = twice.hi * sum_error + (mean.hi + 2.0 * square.hi) * mean_error + 16.0 * U2 * sizes;
     Covariance { value, error: error * (1.0 + 1e-10) }

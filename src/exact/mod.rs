@@ -85,6 +85,7 @@ mod deviations;
 mod elimination;
 mod envelope;
 mod error;
+mod holding;
 mod kernel;
 mod law;
 mod linear;

@@ -10,6 +10,7 @@ use crate::model::{Chain, Hit, Progress};
 use super::bounded::Bounded;
 use super::dd::{Dd, U2};
 use super::elimination::{Elimination, Solution};
+use super::holding::Holding;
 use super::linear::{Rising, RisingSums, distribution, rising};
 use super::shape::ORDERS;
 use super::stopped::Stopped;
@@ -44,9 +45,14 @@ struct Split {
     errors: Vec<f64>,
 }
 
-fn split(elimination: &Elimination<'_>, start: &Solution, orders: usize) -> Result<Split, ExactError> {
+fn split(
+    elimination: &Elimination<'_>,
+    holding: &Holding,
+    start: &Solution,
+    orders: usize,
+) -> Result<Split, ExactError> {
     let visits = elimination.row(start)?;
-    let Rising { mut slots, errors } = rising(elimination, start, visits, orders)?;
+    let Rising { mut slots, errors } = rising(elimination, holding, start, visits, orders)?;
     let there = slots.pop().unwrap_or_default();
     let elsewhere = slots.iter().fold(Dd::ZERO, |sum, slot| sum.plus(slot.of[0]));
     let adding = 3.0 * U2 * slots.len() as f64;
@@ -67,10 +73,13 @@ fn probability(stopped: &Stopped<'_>, from: &[u32], split: &Split) -> Bounded {
 pub(super) fn hit(chain: &Chain, hit: &Hit, progress: &dyn Progress) -> Result<HitAnswer, ExactError> {
     let stopped = Stopped::also_at(chain, |state| hit.contains(state));
     let elimination = Elimination::of(&stopped, progress)?;
-    let split = split(&elimination, &distribution(&stopped, None)?, ORDERS)?;
+    let holding = Holding::of_chain(chain)?;
+    let split = split(&elimination, &holding, &distribution(&stopped, None)?, ORDERS)?;
     let probability = probability(&stopped, chain.start().targets, &split);
     let there = stopped.slots() - 1;
     let only = stopped.only_amount(|slot| slot == there, |_, _| 1).and_then(|time| u64::try_from(time).ok());
+    // In continuous time only a start in the set is met at one time.
+    let only = only.filter(|time| holding.is_one_step() || *time == 0);
     let given = match only {
         _ if probability.high == 0.0 => None,
         Some(time) => Some((Bounded::exactly(time as f64), Shape::constant(time as f64))),
@@ -78,7 +87,10 @@ pub(super) fn hit(chain: &Chain, hit: &Hit, progress: &dyn Progress) -> Result<H
             let ratio = split.there.of[1].over(split.there.of[0]);
             let bounded = Bounded::relative(ratio, split.errors[0] + split.errors[1] + 15.0 * U2);
             let out_of_range = || ExactError::OutOfRange { example: chain.name(hit.states[0]).to_owned() };
-            Some((bounded.ok_or_else(out_of_range)?, Shape::of_rising(&split.there.of, &split.errors)))
+            Some((
+                bounded.ok_or_else(out_of_range)?,
+                Shape::of_sums(&split.there.of, &split.errors, holding.is_one_step()),
+            ))
         }
     };
     Ok(HitAnswer { probability, given, only })
@@ -88,13 +100,14 @@ pub(super) fn hit(chain: &Chain, hit: &Hit, progress: &dyn Progress) -> Result<H
 pub(super) fn visits(chain: &Chain, state: usize, progress: &dyn Progress) -> Result<VisitAnswer, ExactError> {
     let stopped = Stopped::also_at(chain, |at| at == state);
     let elimination = Elimination::of(&stopped, progress)?;
-    let first = split(&elimination, &distribution(&stopped, None)?, 1)?;
+    let holding = Holding::of_chain(chain)?;
+    let first = split(&elimination, &holding, &distribution(&stopped, None)?, 1)?;
     let probability = probability(&stopped, chain.start().targets, &first);
     if probability.high == 0.0 {
         let zero = Bounded::exactly(0.0);
         return Ok(VisitAnswer { probability, mean: zero, variance: zero, shape: Shape::constant(0.0), only: Some(0) });
     }
-    let again = split(&elimination, &distribution(&stopped, Some(state))?, 1)?;
+    let again = split(&elimination, &holding, &distribution(&stopped, Some(state))?, 1)?;
     let is_once = |from: usize, _: usize| i64::from(from == state);
     let only = Stopped::in_ends(chain).only_amount(|_| true, is_once).and_then(|visits| u64::try_from(visits).ok());
     if let Some(visits) = only {
@@ -121,7 +134,7 @@ pub(super) fn visits(chain: &Chain, state: usize, progress: &dyn Progress) -> Re
         probability,
         mean: Bounded::relative(mean, f_error + e_error + 15.0 * U2).ok_or_else(out_of_range)?,
         variance: Bounded::relative(variance, 2.0 * f_error + 3.0 * e_error + 40.0 * U2).ok_or_else(out_of_range)?,
-        shape: Shape::of_rising(&sums, &errors),
+        shape: Shape::of_sums(&sums, &errors, true),
         only,
     })
 }

@@ -4,6 +4,8 @@ use nalgebra::{DMatrix, DVector};
 
 use crate::model::{Chain, Weights};
 
+use super::dd::Dd;
+use super::holding::Holding;
 use super::{Bounded, ExactError};
 
 /// Chains of up to this many transient states are solved twice: at that size the second solution takes a millisecond.
@@ -13,7 +15,7 @@ const LARGEST: usize = 150;
 ///
 /// # Errors
 /// [`ExactError::Contradiction`].
-pub(super) fn confirm(chain: &Chain, transient: &[usize], mean: Bounded) -> Result<(), ExactError> {
+pub(super) fn confirm(chain: &Chain, transient: &[usize], holding: &Holding, mean: Bounded) -> Result<(), ExactError> {
     let n = transient.len();
     if n == 0 || n > LARGEST {
         return Ok(());
@@ -27,15 +29,19 @@ pub(super) fn confirm(chain: &Chain, transient: &[usize], mean: Bounded) -> Resu
             matrix[(at, place[*to as usize])] -= probability(row.weights, i);
         }
     }
-    let Some(times) = matrix.lu().solve(&DVector::from_element(n, 1.0)) else { return Ok(()) };
+    let once = |at: usize, _: usize| holding.of(transient[at]).map_or(1.0, Dd::to_f64);
+    let lu = matrix.lu();
+    let Some(times) = lu.solve(&DVector::from_fn(n, once)) else { return Ok(()) };
+    let Some(visits) = lu.solve(&DVector::from_element(n, 1.0)) else { return Ok(()) };
     let start = chain.start();
     let reference: f64 = (start.targets.iter().enumerate())
         .filter(|(_, state)| place[**state as usize] != usize::MAX)
         .map(|(i, state)| probability(start.weights, i) * times[place[*state as usize]])
         .sum();
-    // ‖I − Q‖ ≤ 2 and ‖N‖ is the largest mean time; backward errors of LU beyond n² units are not met in practice.
+    // ‖I − Q‖ ≤ 2 and ‖N‖ is the largest mean number of visits; backward errors of LU beyond n² units are not met in practice.
     let longest = times.iter().fold(0.0f64, |most, time| most.max(time.abs()));
-    let relative = 8.0 * (n * n) as f64 * f64::EPSILON * (longest + mean.value);
+    let most = visits.iter().fold(0.0f64, |most, visits| most.max(visits.abs()));
+    let relative = 8.0 * (n * n) as f64 * f64::EPSILON * (2.0 * most);
     let trusted = relative < 0.5 && reference.is_finite();
     if trusted && (reference - mean.value).abs() > relative * longest.max(mean.value) {
         return Err(ExactError::Contradiction { elimination: mean.value, reference });

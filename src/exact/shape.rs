@@ -17,13 +17,14 @@ pub struct Shape {
 }
 
 impl Shape {
-    /// From `E[C(T + j − 1, j)]` for `j` from 0, up to a common factor, each within a relative error.
+    /// From `E[C(T + j − 1, j)]` for `j` from 0, or in continuous time (not `in_steps`) from `E[T^j]/j!`, up to a common
+    /// factor, each within a relative error.
     ///
     /// # Formula
     /// `j! C(T + j − 1, j) = T (T + 1) … (T + j − 1)`, and `T^k = Σ_j (−1)^(k−j) S(k, j) T (T + 1) … (T + j − 1)` with
     /// Stirling numbers of the second kind; then the binomial theorem about the mean. Both cancel, in double-double, and
     /// the sums of absolute values say by how much.
-    pub(super) fn of_rising(sums: &[Dd], errors: &[f64]) -> Self {
+    pub(super) fn of_sums(sums: &[Dd], errors: &[f64], in_steps: bool) -> Self {
         let mut rising = Vec::with_capacity(sums.len());
         let mut factorial = Dd::ONE;
         for (j, sum) in sums.iter().enumerate() {
@@ -36,6 +37,11 @@ impl Shape {
         let mut stirling = vec![1.0];
         for k in 0..rising.len() {
             let term = |j: usize| rising[j].times(Dd::of(stirling[j]));
+            if !in_steps {
+                raw.push(rising[k]);
+                raw_size.push(rising[k].hi);
+                continue;
+            }
             let alternating = (0..=k).map(|j| if (k - j) % 2 == 0 { term(j) } else { Dd::ZERO.minus(term(j)) });
             raw.push(alternating.fold(Dd::ZERO, Dd::sum));
             raw_size.push((0..=k).map(|j| term(j).hi).sum::<f64>());
@@ -132,7 +138,7 @@ mod tests {
     /// Binomial moments of a geometric time: P(T > t) = (1 − p)^t gives E[C(T + j − 1, j)] = p^(−j).
     fn geometric(p: f64) -> Shape {
         let sums: Vec<Dd> = (0..ORDERS).map(|j| Dd::ONE.over(Dd::of(p.powi(j as i32)))).collect();
-        Shape::of_rising(&sums, &[0.0; ORDERS])
+        Shape::of_sums(&sums, &[0.0; ORDERS], true)
     }
 
     #[test]
@@ -158,7 +164,7 @@ mod tests {
         let sums: Vec<Dd> = (0..ORDERS)
             .map(|j| (0..j).fold(Dd::ONE, |c, i| c.times(Dd::of(mean + i as f64)).over(Dd::of(i as f64 + 1.0))))
             .collect();
-        let shape = Shape::of_rising(&sums, &[1e-30; ORDERS]);
+        let shape = Shape::of_sums(&sums, &[1e-30; ORDERS], true);
         assert_eq!(shape.central(8), None);
         assert_eq!(shape.of_squared_deviation(), None);
     }

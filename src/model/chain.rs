@@ -2,8 +2,10 @@
 
 use std::collections::HashMap;
 
+use dashu_ratio::RBig;
 use sha2::{Digest, Sha256};
 
+use super::Clock;
 use super::classes::{Components, Graph, strongly_connected};
 use super::row::{Row, Rows, Weights};
 use super::source::hexadecimal;
@@ -17,7 +19,8 @@ pub struct End {
     pub states: Vec<usize>,
 }
 
-/// A finite Markov chain, proven well formed: every row sums to one exactly and every state reaches an end.
+/// A finite Markov chain, proven well formed: every row sums to one exactly and every state reaches an end. In continuous time
+/// rows are those of the embedded chain, and states have rates besides.
 ///
 /// States are numbered in the order of the model. Rows hold the exact rational probabilities; the states of ends have
 /// none, since what happens inside an end is no part of a replication.
@@ -31,6 +34,9 @@ pub struct Chain {
     pub(super) end_of: Vec<u32>,
     pub(super) components: Vec<Vec<u32>>,
     pub(super) reachable: Vec<bool>,
+    pub(super) clock: Clock,
+    /// Total rate out of each state, zero for the states of ends; empty when the clock counts steps.
+    pub(super) rates: Vec<RBig>,
 }
 
 pub(super) const NO_END: u32 = u32::MAX;
@@ -59,7 +65,23 @@ impl Chain {
         self.names.iter().position(|known| known == name)
     }
 
-    /// The moves out of a state; empty for the states of ends.
+    /// What time means.
+    pub fn clock(&self) -> Clock {
+        self.clock
+    }
+
+    /// The exact total rate out of a transient state, per clock unit; `None` when the clock counts steps, and for the states
+    /// of ends.
+    ///
+    /// # Panics
+    /// When there is no such state.
+    pub fn rate(&self, state: usize) -> Option<&RBig> {
+        let rate = || &self.rates[state];
+        (self.clock == Clock::Rates && self.end_of(state).is_none()).then(rate)
+    }
+
+    /// The moves out of a state with their probabilities, which with a clock in rates are those of where the state is left
+    /// for; empty for the states of ends.
     ///
     /// # Panics
     /// When there is no such state.
@@ -108,7 +130,7 @@ impl Chain {
             hash.update((part.len() as u64).to_le_bytes());
             hash.update(part.as_bytes());
         };
-        text("tallystone chain 1, steps");
+        text(&format!("tallystone chain 1, {}", self.clock.name()));
         for name in &self.names {
             text(name);
         }
@@ -125,6 +147,9 @@ impl Chain {
                     row.targets.iter().zip(numerators).for_each(|(to, weight)| text(&format!("{to} {weight}")));
                 }
             }
+        }
+        for rate in &self.rates {
+            text(&format!("rate {rate}"));
         }
         for end in &self.ends {
             text("end");

@@ -2,13 +2,15 @@
 
 use std::collections::{HashMap, HashSet};
 
-use super::Model;
+use dashu_ratio::RBig;
+
 use super::chain::{Chain, NO_END, Structure};
 use super::draft::{Draft, DraftMove, DraftState, Written};
 use super::fault::{Fault, FaultKind, LISTED, ModelError, Place, Warning, WarningKind, did_you_mean};
 use super::number::Number;
 use super::row::{ExactRow, Rest, RowOutcome, Rows};
 use super::tolerance::Tolerances;
+use super::{Clock, Model};
 
 /// Names that are compared, at most, in search of those that were meant.
 const SUGGESTION_WORK: usize = 1_000_000;
@@ -61,13 +63,15 @@ impl Draft {
             end_of,
             components: structure.transient_components(),
             reachable: structure.reachable,
+            clock: self.clock,
+            rates: checked.rates,
         };
         let of_groups = groups.iter().map(|group| (group.name.clone(), group.ends.clone()));
         let of_ends = chain.ends.iter().enumerate().map(|(number, end)| (end.name.clone(), vec![number]));
         Ok(Model {
             ends_by_name: of_groups.chain(of_ends).collect(),
             title: self.title,
-            clock_unit: self.clock_unit.unwrap_or_else(|| "step".to_owned()),
+            clock_unit: self.clock_unit.unwrap_or_else(|| self.clock.default_unit().to_owned()),
             fingerprint: chain.fingerprint(),
             chain,
             groups,
@@ -137,8 +141,10 @@ impl Draft {
                 self.states[state].absorbing = Some(moves[0].line);
                 rows.push(ExactRow::none());
                 targets.push(ExactRow::none());
+                checked.no_rate(self.clock);
                 continue;
             }
+            let known = checked.rates.len();
             match self.check_row(state, moves, checked) {
                 Some(row) => {
                     targets.push(row.clone());
@@ -148,6 +154,9 @@ impl Draft {
                     rows.push(ExactRow::none());
                     targets.push(ExactRow::targets_only(moves.iter().map(|one| one.to)));
                 }
+            }
+            if checked.rates.len() == known {
+                checked.no_rate(self.clock);
             }
         }
         (rows, targets)
@@ -187,6 +196,9 @@ impl Draft {
             self.fault(fault(FaultKind::RowSum, format!("the row of `{name}` holds no moves"), remedy));
             return None;
         }
+        if self.clock == Clock::Rates {
+            return self.check_rates(state, &numbers, &rests, &place, checked);
+        }
         match ExactRow::normalise(&numbers, Some(state as u32), rests.first().copied()) {
             RowOutcome::Exact(row) => Some(row),
             RowOutcome::Corrected { row, sum } => {
@@ -206,6 +218,39 @@ impl Draft {
                 None
             }
         }
+    }
+
+    fn check_rates(
+        &mut self,
+        state: usize,
+        numbers: &[(u32, Number)],
+        rests: &[Rest],
+        place: &Place,
+        checked: &mut Checked,
+    ) -> Option<ExactRow> {
+        let name = self.states[state].name.clone();
+        let is_stay = |(to, number): &(u32, Number)| *to as usize == state && !number.is_zero();
+        let fault = if !rests.is_empty() {
+            let text = format!("a rate among the moves of `{name}` is \"rest\"");
+            let remedy = "rates need not sum to anything; give the rate itself";
+            Fault::new(FaultKind::Rest, place.clone(), text, remedy).valued("rest")
+        } else if numbers.iter().any(is_stay) {
+            let text = format!("`{name}` has a rate to itself, which means nothing in continuous time");
+            Fault::new(FaultKind::Unsupported, place.clone(), text, "take it out")
+        } else {
+            match ExactRow::of_rates(numbers) {
+                Some((row, rate)) => {
+                    checked.rates.push(rate);
+                    return Some(row);
+                }
+                None => {
+                    let text = format!("every rate out of `{name}` is zero");
+                    Fault::new(FaultKind::RowSum, place.clone(), text, "give it rates, or declare it absorbing")
+                }
+            }
+        };
+        self.fault(fault.about(name));
+        None
     }
 
     fn check_duplicates(&mut self, name: &str, moves: &[DraftMove]) -> bool {
@@ -331,11 +376,20 @@ pub(super) struct Checked {
     warnings: Vec<Warning>,
     largest_correction: f64,
     corrected: usize,
+    /// One a state when the clock runs in rates.
+    rates: Vec<RBig>,
 }
 
 impl Checked {
     pub(super) fn warn(&mut self, kind: WarningKind, text: String) {
         self.warnings.push(Warning { kind, text });
+    }
+
+    /// A state without moves, or with faulty ones, has no rate.
+    fn no_rate(&mut self, clock: Clock) {
+        if clock == Clock::Rates {
+            self.rates.push(RBig::ZERO);
+        }
     }
 
     fn correct(&mut self, place: &Place, what: &str, sum: f64) {

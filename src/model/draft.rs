@@ -4,15 +4,18 @@
 use std::collections::HashMap;
 use std::sync::Arc;
 
+use super::Clock;
 use super::fault::{Fault, FaultKind, Place, shortened};
 use super::number::{Number, NumberFault};
 use super::quantity::Quantity;
 use super::tolerance::{Tolerance, ToleranceKey};
 
 const IN_RANGE: &str = "probabilities lie between 0 and 1; correct it";
+const RATE_IN_RANGE: &str = "rates are finite and not negative; correct it";
+const HOW_TO_WRITE_A_RATE: &str = "write a decimal such as 0.25, or a fraction such as \"5/12\"";
 const HOW_TO_WRITE: &str = "write a decimal such as 0.25, a fraction such as \"5/12\", or \"rest\"";
 
-/// A probability as written.
+/// A probability or a rate as written.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Written {
     /// A number.
@@ -88,6 +91,7 @@ pub(super) struct DraftCost {
 #[derive(Debug, Clone, Default)]
 pub struct Draft {
     pub(super) title: String,
+    pub(super) clock: Clock,
     pub(super) clock_unit: Option<String>,
     pub(super) files: Vec<Arc<str>>,
     pub(super) states: Vec<DraftState>,
@@ -119,7 +123,12 @@ impl Draft {
         Self { title: title.into(), ..Self::default() }
     }
 
-    /// The unit printed beside every time; `step` where none is given.
+    /// An empty draft in continuous time: the numbers of its moves are rates.
+    pub fn in_rates(title: impl Into<String>) -> Self {
+        Self { title: title.into(), clock: Clock::Rates, ..Self::default() }
+    }
+
+    /// The unit printed beside every time; `step`, or `unit` in continuous time, where none is given.
     pub fn clock_unit(&mut self, unit: impl Into<String>) {
         self.clock_unit = Some(unit.into());
     }
@@ -143,7 +152,7 @@ impl Draft {
         self.states[number as usize].absorbing = Some(0);
     }
 
-    /// Adds a move; its probability is a number as in a model file, or `rest`.
+    /// Adds a move; its probability is a number as in a model file, or `rest`, and its rate a number.
     pub fn moves(&mut self, from: &str, to: &str, probability: &str) {
         let (from_number, to_number) = (self.state(from, 0, 0), self.state(to, 0, 0));
         self.states[from_number as usize].row = Some(0);
@@ -260,13 +269,16 @@ impl Draft {
         if text == "rest" {
             return Some(Written::Rest);
         }
+        let is_rate = state.is_some() && self.clock == Clock::Rates;
+        let (in_range, how_to_write) =
+            if is_rate { (RATE_IN_RANGE, HOW_TO_WRITE_A_RATE) } else { (IN_RANGE, HOW_TO_WRITE) };
         let (kind, reason, remedy) = match Number::parse(text) {
-            _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), HOW_TO_WRITE),
-            Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), IN_RANGE),
-            Ok(number) if number.exceeds_one() => (FaultKind::AboveOne, "is above 1".to_owned(), IN_RANGE),
+            _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), how_to_write),
+            Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), in_range),
+            Ok(number) if number.exceeds_one() && !is_rate => (FaultKind::AboveOne, "is above 1".to_owned(), in_range),
             Ok(number) => return Some(Written::Number(number)),
-            Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), IN_RANGE),
-            Err(reason) => (FaultKind::NotANumber, reason.to_string(), HOW_TO_WRITE),
+            Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), in_range),
+            Err(reason) => (FaultKind::NotANumber, reason.to_string(), how_to_write),
         };
         let shown = shortened(text);
         let what = if text.is_empty() { "a value".to_owned() } else { format!("`{shown}`") };

@@ -1,6 +1,6 @@
 //! The model: a finite Markov chain with a start, read from a file or made in code, and proven well formed.
 //!
-//! Limits of this version: the clock counts steps (discrete time). States number up to 2³² − 1. Probabilities are kept exactly as written, as rationals; see [`Row`].
+//! The clock counts steps (discrete time, moves have probabilities) or runs in rates (continuous time). States number up to 2³² − 1. Probabilities and rates are kept exactly as written, as rationals; see [`Row`].
 //!
 //! ```
 //! use tallystone::model::Model;
@@ -19,6 +19,7 @@ mod check;
 mod check_ends;
 mod check_observed;
 mod classes;
+mod clock;
 mod draft;
 mod fault;
 mod number;
@@ -38,6 +39,7 @@ use std::collections::HashMap;
 use serde::Serialize;
 
 pub use chain::{Chain, End};
+pub use clock::Clock;
 pub use draft::{Draft, Written};
 pub use fault::{Fault, FaultKind, ModelError, Place, Warning, WarningKind, nearest};
 pub(crate) use fault::{did_you_mean, listed, shortened};
@@ -97,6 +99,11 @@ impl Model {
     /// The unit of time.
     pub fn clock_unit(&self) -> &str {
         &self.clock_unit
+    }
+
+    /// What time means.
+    pub fn clock(&self) -> Clock {
+        self.chain.clock
     }
 
     /// The chain.

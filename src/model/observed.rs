@@ -1,6 +1,6 @@
 //! What a replication leaves besides its end and time: costs, and first passages to sets of states.
 
-/// A cost: an amount for every step spent in a state, and for every move, negative ones included. Nothing accumulates in an
+/// A cost: an amount for every step (in continuous time, every clock unit) spent in a state, and for every move, negative ones included. Nothing accumulates in an
 /// end.
 ///
 /// Amounts are kept exactly, as whole numbers over one denominator, so that sums over paths are exact too.
@@ -12,14 +12,14 @@ pub struct Cost {
     pub unit: Option<String>,
     /// What the amounts are divided by.
     pub denominator: u64,
-    /// Amount a step of each state that has one, ascending by state.
+    /// Amount a step or clock unit of each state that has one, ascending by state.
     pub(super) visits: Vec<(u32, i64)>,
     /// Amount of each move that has one, ascending by its two states.
     pub(super) moves: Vec<((u32, u32), i64)>,
 }
 
 impl Cost {
-    /// Amount of a step spent in a state, times the denominator.
+    /// Amount of a step, or of a clock unit in continuous time, spent in a state, times the denominator.
     pub fn of_visit(&self, state: usize) -> i64 {
         let found = self.visits.binary_search_by_key(&state, |(at, _)| *at as usize);
         found.map_or(0, |at| self.visits[at].1)
@@ -29,6 +29,11 @@ impl Cost {
     pub fn of_move(&self, from: usize, to: usize) -> i64 {
         let found = self.moves.binary_search_by_key(&(from, to), |((from, to), _)| (*from as usize, *to as usize));
         found.map_or(0, |at| self.moves[at].1)
+    }
+
+    /// Whether nothing accumulates while a state is held.
+    pub fn is_of_moves_alone(&self) -> bool {
+        self.visits.iter().all(|(_, amount)| *amount == 0)
     }
 
     /// Amount of a step that leads from a state to another, the stay included, times the denominator.

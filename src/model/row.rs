@@ -229,6 +229,18 @@ impl ExactRow {
         RowOutcome::Corrected { row: Self::reduced(targets, numerators, total), sum }
     }
 
+    /// The row of rates: each over their sum, which is returned too. Rates of zero are dropped; `None` if all are.
+    pub(super) fn of_rates(moves: &[(u32, Number)]) -> Option<(Self, RBig)> {
+        let common = moves.iter().fold(UBig::ONE, |common, (_, value)| lcm(common, &denominator(value)));
+        let numerators: Vec<UBig> = moves.iter().map(|(_, value)| numerator_over(value, &common)).collect();
+        let total: UBig = numerators.iter().sum();
+        if total == UBig::ZERO {
+            return None;
+        }
+        let rate = RBig::from_parts(IBig::from(total.clone()), common);
+        Some((Self::reduced(moves.iter().map(|(to, _)| *to).collect(), numerators, total), rate))
+    }
+
     fn reduced(targets: Vec<u32>, numerators: Vec<UBig>, denominator: UBig) -> Self {
         let (targets, numerators): (Vec<u32>, Vec<UBig>) =
             targets.into_iter().zip(numerators).filter(|(_, weight)| *weight != UBig::ZERO).unzip();
@@ -333,6 +345,14 @@ mod tests {
         assert!(matches!(off, RowOutcome::WrongSum { sum } if sum.to_string() == "9/10"));
         let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(Rest { place: 2, to: 3 }));
         assert!(matches!(full, RowOutcome::NothingLeft { sum } if sum.to_string() == "6/5"));
+    }
+
+    #[test]
+    fn rates_are_shares_of_their_sum() {
+        let (row, rate) = ExactRow::of_rates(&written(&[(1, "1e6"), (2, "0"), (3, "2.5e-1")])).unwrap();
+        assert_eq!(rate.to_string(), "4000001/4");
+        assert_eq!(shown(row), pairs(&[(1, "4000000/4000001"), (3, "1/4000001")]));
+        assert!(ExactRow::of_rates(&written(&[(1, "0")])).is_none());
     }
 
     #[test]

@@ -4,6 +4,7 @@ use std::collections::HashMap;
 
 use csv::{ByteRecord, StringRecord};
 
+use super::Clock;
 use super::draft::{Draft, DraftMove, Written};
 use super::fault::{Fault, FaultKind, did_you_mean, nearest, shortened};
 use super::number::Number;
@@ -11,6 +12,8 @@ use super::records::{self, Records, decimal_point};
 
 /// Column names of a list of moves.
 const COLUMNS: [&str; 3] = ["from", "to", "probability"];
+/// In place of the last one, in continuous time.
+const RATE: &str = "rate";
 
 /// Lines that begin with it are comments.
 const COMMENT: Option<u8> = Some(b'#');
@@ -69,6 +72,9 @@ pub(super) fn read(bytes: &[u8], draft: &mut Draft) {
     draft.lone_stay_is_absorbing = true;
     let mut table = Table::of(bytes);
     let Some((header, line)) = table.header(draft) else { return };
+    if header.iter().any(|name| name.eq_ignore_ascii_case(RATE)) {
+        draft.clock = Clock::Rates;
+    }
     // Two of the three names show what is meant, so that a misspelt third is told.
     if COLUMNS.iter().filter(|name| header.iter().any(|known| known.eq_ignore_ascii_case(name))).count() >= 2 {
         list_of_moves(table, &header, line, draft);
@@ -86,14 +92,22 @@ pub(super) fn read_moves(bytes: &[u8], draft: &mut Draft) {
 
 fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
     let file = draft.moves_file;
-    let is_column = |known: &str| COLUMNS.iter().any(|name| name.eq_ignore_ascii_case(known));
+    let [first, second, last] = COLUMNS;
+    let names = [first, second, if draft.clock == Clock::Rates { RATE } else { last }];
+    let is_column = |known: &str| names.iter().any(|name| name.eq_ignore_ascii_case(known));
     let mut columns = [None; 3];
-    for (column, name) in columns.iter_mut().zip(COLUMNS) {
+    for (column, name) in columns.iter_mut().zip(names) {
         *column = header.iter().position(|known| known.eq_ignore_ascii_case(name));
         if column.is_none() {
             let others = header.iter().map(String::as_str).filter(|known| !is_column(known));
             let near = nearest(name, others).map(|near| format!("rename `{near}` to `{name}`"));
-            let remedy = near.unwrap_or_else(|| "the header is from,to,probability".to_owned());
+            let is_rate =
+                column.is_none() && name == last && header.iter().any(|known| known.eq_ignore_ascii_case(RATE));
+            let remedy = match near {
+                _ if is_rate => "set clock = \"rates\" in the model, or give probabilities".to_owned(),
+                Some(near) => near,
+                None => format!("the header is {}", names.join(",")),
+            };
             let said = format!("the header has no column `{name}`");
             let fault = Fault::new(FaultKind::Shape, draft.place(file, header_line), said, remedy);
             draft.fault(fault.valued(header.join(",")));

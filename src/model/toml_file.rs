@@ -8,6 +8,7 @@ use std::sync::Arc;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
+use super::Clock;
 use super::draft::{Draft, DraftMove, NamedList, Written};
 use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean, shortened};
 use super::number::Number;
@@ -152,16 +153,15 @@ impl Reader<'_> {
         let Some(clock) = entries.get("clock") else { return };
         match self.text(clock, "clock").as_deref() {
             None | Some("steps") => {}
-            Some("rates") => {
-                let said = "clock = \"rates\" is not supported by this version";
-                let fault =
-                    Fault::new(FaultKind::Unsupported, self.place(&clock.span()), said, "use clock = \"steps\"");
-                self.draft.fault(fault.valued("rates"));
-            }
+            Some("rates") => self.draft.clock = Clock::Rates,
             Some(other) => {
                 let said = format!("`{other}` is no clock");
-                let fault =
-                    Fault::new(FaultKind::WrongType, self.place(&clock.span()), said, "write clock = \"steps\"");
+                let fault = Fault::new(
+                    FaultKind::WrongType,
+                    self.place(&clock.span()),
+                    said,
+                    "write clock = \"steps\" or \"rates\"",
+                );
                 self.draft.fault(fault.valued(other));
             }
         }
