@@ -8,7 +8,7 @@ use faults::{AS_NUMBER, Expected, GIVE_MOVES, IN_RANGE, hold, options};
 use tallystone::model::FaultKind::{
     AboveOne, AbsorbingWithMoves, BadName, DuplicateName, MissingStart, Negative, NoEndReachable, NoMoves, NonFinite,
     NotAClosedClass, NotANumber, OutOfRange, Rest, RowSum, Shape, Syntax, UnknownKey, UnknownName, UnknownState,
-    Unsupported, WrongType,
+    WrongType,
 };
 use tallystone::model::{Model, ModelError, ReadOptions};
 

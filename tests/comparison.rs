@@ -157,7 +157,7 @@ fn a_model_without_chance_has_only_certain_rows() {
         let late = made(study, &[(0, 2, 999_999), (0, 3, 1)]);
         let disagreeing = late.rows.iter().filter(|row| row.verdict == Verdict::Disagree).count();
         assert_eq!((late.verdict, disagreeing), (Verdict::Disagree, 7), "all but both ends and survival at 1");
-        assert_eq!((late.findings.len(), late.findings[0].time), (1, 3));
+        assert_eq!((late.findings.len(), late.findings[0].time), (1, Some(3)));
         let elsewhere = made(study, &[(0, 2, 999_999), (1, 2, 1)]);
         assert_eq!(row(&elsewhere, "absorption_probability:y").verdict, Verdict::Disagree);
         assert_eq!(elsewhere.findings[0].end, "y");
@@ -183,7 +183,7 @@ fn impossible_outcomes_are_found_whatever_the_rows_say() {
             let comparison = made(study, &outcomes);
             assert_eq!(comparison.verdict, Verdict::Disagree);
             let [finding] = &comparison.findings[..] else { panic!("{:?}", comparison.findings) };
-            assert_eq!((finding.end.as_str(), finding.time, finding.count), (end, time, count));
+            assert_eq!((finding.end.as_str(), finding.time, finding.count), (end, Some(time), count));
             // What an audit saw of that end is not said twice.
             let mut tally = Tally::new(3, study.grid());
             outcomes.iter().for_each(|(end, time, copies)| tally.add_many(*end, *time, *copies));

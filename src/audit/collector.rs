@@ -6,7 +6,7 @@ use std::sync::Arc;
 use crate::compare::{Finding, Study};
 use crate::exact::Exact;
 use crate::model::{did_you_mean, listed, shortened};
-use crate::sampling::{Grid, Tally};
+use crate::sampling::{Grid, Tally, Ticks};
 
 /// Steps to either side in which the nearest possible time is looked for.
 const NEIGHBOURHOOD: u64 = 10_000;
@@ -51,20 +51,21 @@ pub struct Audited {
 impl<'a> Collector<'a> {
     /// Collects for a study.
     pub fn new(study: &'a Study<'a>) -> Self {
-        Self::over(study.exact(), study.grid())
+        Self::over(study.exact(), study.grid(), study.ticks())
     }
 
-    pub(super) fn over(exact: &'a Exact<'a>, grid: Arc<Grid>) -> Self {
+    pub(super) fn over(exact: &'a Exact<'a>, grid: Arc<Grid>, ticks: Ticks) -> Self {
         let ends = exact.model().chain().ends();
         Self {
             exact,
-            tally: Tally::new(ends.len(), grid),
+            tally: Tally::new(ends.len(), grid).in_ticks(ticks),
             ends: ends.iter().enumerate().map(|(number, end)| (end.name.as_bytes(), number)).collect(),
             impossible: vec![None; ends.len()],
         }
     }
 
-    /// Adds an outcome by the name of its end; `line` is its place in a file, if it comes from one.
+    /// Adds an outcome by the name of its end and its time in steps, or in the ticks of the study in continuous time; `line`
+    /// is its place in a file, if it comes from one.
     ///
     /// # Errors
     /// An end that the model does not have, with the nearest known name; nothing is added then.
@@ -75,6 +76,11 @@ impl<'a> Collector<'a> {
         let number = self.end(end.as_bytes()).ok_or_else(|| self.unknown_end(end))?;
         self.count(number, time, line);
         Ok(())
+    }
+
+    /// The unit in which times are counted.
+    pub(super) fn ticks(&self) -> Ticks {
+        self.tally.ticks()
     }
 
     /// The number of the end of that name.
@@ -132,7 +138,10 @@ impl<'a> Collector<'a> {
                 (_, None) => format!(" (the first of {count} impossible outcomes)"),
                 (_, Some(line)) => format!(" (line {line}, the first of {count} impossible outcomes)"),
             };
-            let text = format!("`{name}` at time {time}{which} cannot happen: {why}");
+            let ticks = self.tally.ticks();
+            let at = if ticks.is_steps() { time.to_string() } else { ticks.time(time).to_string() };
+            let text = format!("`{name}` at time {at}{which} cannot happen: {why}");
+            let time = ticks.is_steps().then_some(time);
             Finding { end: name.clone(), time, line, count, text }
         });
         let findings = findings.collect();
@@ -198,7 +207,7 @@ mod tests {
     fn audited(outcomes: &[(&str, u64, Option<u64>)]) -> (Audited, Vec<OutcomeFault>) {
         let model = Model::from_toml(BENCH).unwrap();
         let exact = Exact::solve(&model, &Request::default(), &Silent).unwrap();
-        let mut collector = Collector::over(&exact, Arc::new(Grid::new(vec![3])));
+        let mut collector = Collector::over(&exact, Arc::new(Grid::new(vec![3])), Ticks::STEPS);
         let faults = outcomes.iter().filter_map(|(end, time, line)| collector.add(end, *time, *line).err()).collect();
         (collector.finish(), faults)
     }
@@ -236,7 +245,7 @@ mod tests {
             ]
         );
         let shipped = &audited.findings[1];
-        assert_eq!((shipped.end.as_str(), shipped.time, shipped.line, shipped.count), ("shipped", 7, Some(3), 2));
+        assert_eq!((shipped.end.as_str(), shipped.time, shipped.line, shipped.count), ("shipped", Some(7), Some(3), 2));
     }
 
     #[test]

@@ -4,6 +4,8 @@ use csv::ByteRecord;
 
 use crate::model::{Fault, FaultKind, Number, NumberFault, Place, cell, decimal_point, shortened};
 
+use crate::sampling::Ticks;
+
 use super::Collector;
 
 /// Where the columns stand.
@@ -66,7 +68,11 @@ impl Columns {
             return Err(BadRow::LineBreak);
         }
         let end = collector.end(cell(row, self.end)).ok_or(BadRow::End)?;
-        let time = self.whole(row, self.time).map_err(BadRow::Time)?;
+        let time = match collector.ticks() {
+            Ticks::STEPS => self.whole(row, self.time),
+            ticks => self.in_ticks(row, self.time, ticks),
+        };
+        let time = time.map_err(BadRow::Time)?;
         let replication = self.replication.map(|column| self.whole(row, column).map_err(BadRow::Replication));
         Ok(Outcome { end, time, replication: replication.transpose()? })
     }
@@ -76,22 +82,39 @@ impl Columns {
         self.whole(row, self.replication?).ok()
     }
 
-    /// A whole number, as programs write it: `12`, `12.0`, `1.2e1`.
-    fn whole(&self, row: &ByteRecord, column: usize) -> Result<u64, NotWhole> {
+    /// A time in clock units, as the nearest number of ticks.
+    fn in_ticks(&self, row: &ByteRecord, column: usize, ticks: Ticks) -> Result<u64, NotWhole> {
+        let number = self.number(row, column)?;
+        if number.is_negative() {
+            return Err(NotWhole::Negative);
+        }
+        ticks.count(&number.to_ratio()).ok_or(NotWhole::OutOfRange)
+    }
+
+    /// A cell that holds a number.
+    fn number(&self, row: &ByteRecord, column: usize) -> Result<Number, NotWhole> {
         let cell = cell(row, column);
         if cell.is_empty() {
             return Err(NotWhole::Empty);
         }
         let text = std::str::from_utf8(cell).map_err(|_| NotWhole::NotText)?;
-        // Nearly every cell.
-        if let (true, Ok(number)) = (cell[0].is_ascii_digit(), text.parse()) {
-            return Ok(number);
-        }
-        let number = Number::parse(&decimal_point(text, self.delimiter)).map_err(|reason| match reason {
+        Number::parse(&decimal_point(text, self.delimiter)).map_err(|reason| match reason {
             NumberFault::NotFinite => NotWhole::NotFinite,
             NumberFault::TooExtreme => NotWhole::OutOfRange,
             _ => NotWhole::NotANumber,
-        })?;
+        })
+    }
+
+    /// A whole number, as programs write it: `12`, `12.0`, `1.2e1`.
+    fn whole(&self, row: &ByteRecord, column: usize) -> Result<u64, NotWhole> {
+        let cell = cell(row, column);
+        // Nearly every cell.
+        if cell.first().is_some_and(u8::is_ascii_digit)
+            && let Some(number) = std::str::from_utf8(cell).ok().and_then(|text| text.parse().ok())
+        {
+            return Ok(number);
+        }
+        let number = self.number(row, column)?;
         match number {
             Number::Decimal { mantissa, scale: 0 } => Ok(mantissa),
             _ if number.is_negative() => Err(NotWhole::Negative),
@@ -130,7 +153,10 @@ impl Columns {
                 (FaultKind::UnknownName, value(self.end), reason.text, reason.remedy)
             }
             BadRow::Time(reason) => {
-                let remedy = "write the number of steps to the end, a whole number such as 12 or 12.0";
+                let remedy = match collector.ticks() {
+                    Ticks::STEPS => "write the number of steps to the end, a whole number such as 12 or 12.0",
+                    _ => "write the time to the end in clock units, a number such as 12.5",
+                };
                 let (kind, text) = reason.words("time", &value(self.time));
                 (kind, value(self.time), text, remedy.to_owned())
             }

@@ -13,7 +13,7 @@ use super::outcome_file::read;
 use super::{Collector, OutcomeError, OutcomeFile};
 use crate::exact::{Exact, Request};
 use crate::model::{FaultKind, Model, Progress, Silent};
-use crate::sampling::Grid;
+use crate::sampling::{Grid, Ticks};
 
 fn file(bytes: &[u8]) -> NamedTempFile {
     let mut file = NamedTempFile::new().unwrap();
@@ -35,7 +35,7 @@ fn read_with(path: &Path, progress: &dyn Progress) -> Result<OutcomeFile, Outcom
     );
     let model = model.unwrap();
     let exact = Exact::solve(&model, &Request::default(), &Silent).unwrap();
-    read(path, Collector::over(&exact, Arc::new(Grid::new(vec![2, 5]))), progress)
+    read(path, Collector::over(&exact, Arc::new(Grid::new(vec![2, 5])), Ticks::STEPS), progress)
 }
 
 fn outcomes(bytes: &[u8]) -> Result<OutcomeFile, OutcomeError> {
@@ -212,7 +212,7 @@ fn impossible_outcomes_are_found_with_their_line_and_no_bad_rows() {
     let read = outcomes(b"end,time\r\nshipped,2\r\nshipped,1\r\nshipped,0\r\n").unwrap();
     assert_eq!(read.audited.tally.replications(), 3);
     let [finding] = read.audited.findings.as_slice() else { panic!("{:?}", read.audited.findings) };
-    assert_eq!((finding.end.as_str(), finding.time, finding.line, finding.count), ("shipped", 1, Some(3), 2));
+    assert_eq!((finding.end.as_str(), finding.time, finding.line, finding.count), ("shipped", Some(1), Some(3), 2));
 }
 
 #[derive(Default)]

@@ -57,13 +57,13 @@ fn one(model: &Model, arguments: &Check, session: &Session) -> Result<Verdict, F
     steps::look_at(&study.warnings(), &arguments.reading)?;
 
     let size = study.plan();
-    let sampler = Sampler::new(model.chain());
+    let sampler = Sampler::in_ticks(model.chain(), study.ticks());
     let watching = ObservedSampler::new(&sampler, model, study.observed());
     let replications = arguments.sampling.replications.or(size.replications).unwrap_or(BLOCK);
     let plan = Plan { replications, seed, grid: study.grid() };
     let tally = steps::on_threads(&arguments.sampling, || {
         allow(&watching, &plan, &exact, &size, arguments)?;
-        let steps = exact.mean_time().value * replications as f64;
+        let steps = exact.mean_moves() * replications as f64;
         session.watch.expect(format!(", some {} steps", thousands(steps as u64)));
         Ok(sample_with(&watching, &plan, &session.watch)?)
     })?;
@@ -86,7 +86,7 @@ fn allow(
 ) -> Result<(), Failure> {
     let unasked = arguments.sampling.replications.is_none().then_some(UNASKED_SECONDS);
     let Some(limit) = arguments.time_limit.or(unasked) else { return Ok(()) };
-    let seconds = steps::predicted_seconds(sampler, plan, exact.mean_time().value);
+    let seconds = steps::predicted_seconds(sampler, plan, exact.mean_moves());
     if seconds <= limit {
         return Ok(());
     }
@@ -102,7 +102,7 @@ fn allow(
     let text = format!(
         "the run is not started: {} replications of {} steps in the mean would take about {}, more than the limit of {}{demanding}",
         thousands(plan.replications),
-        rounded(exact.mean_time().value, 3),
+        rounded(exact.mean_moves(), 3),
         duration(seconds),
         duration(limit)
     );

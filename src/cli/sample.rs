@@ -11,7 +11,7 @@ use super::{Session, output, steps};
 use crate::model::{Chain, Model, Progress};
 use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary};
 use crate::sampling::{
-    Grid, Observable, ObservedSampler, OutcomeSource, Plan, Sampler, Streams, Tally, estimates, sample_with,
+    Grid, Observable, ObservedSampler, OutcomeSource, Plan, Streams, Tally, Ticks, estimates, sample_with,
 };
 
 /// Replications where none are asked for.
@@ -23,7 +23,7 @@ pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> 
     let (seed, seed_source) = steps::seed(&arguments.sampling)?;
     let replications = arguments.sampling.replications.unwrap_or(REPLICATIONS);
     let plan = Plan { replications, seed, grid: Arc::new(Grid::logarithmic()) };
-    let sampler = Sampler::new(model.chain());
+    let sampler = steps::sampler(&model, session)?;
     let costs = (0..model.costs().len()).map(Observable::Cost);
     let observed = costs.chain((0..model.hits().len()).map(Observable::Hit)).collect();
     let watching = ObservedSampler::new(&sampler, &model, observed);
@@ -65,8 +65,10 @@ fn document(
         seed: Some((plan.seed, seed_source)),
     });
     let replications = Some(tally.replications());
-    document.run =
-        Some(RunSummary { replications, steps: Some(tally.steps()), times: tally.range(), seconds, solver: None });
+    let is_in_steps = tally.ticks().is_steps();
+    let steps = is_in_steps.then(|| tally.steps());
+    let times = tally.range().filter(|_| is_in_steps);
+    document.run = Some(RunSummary { replications, steps, times, seconds, solver: None });
     document.warnings = model.warnings().to_vec();
     document
 }
@@ -79,7 +81,8 @@ pub(super) fn write_outcomes(
     chain: &Chain,
     progress: &dyn Progress,
 ) -> Result<Tally, Failure> {
-    let mut tally = Tally::observing(sampler.ends(), Arc::clone(&plan.grid), sampler.observed());
+    let mut tally =
+        Tally::observing(sampler.ends(), Arc::clone(&plan.grid), sampler.observed()).in_ticks(sampler.ticks());
     let mut interrupted = None;
     let walked = output::write(path, |out| {
         progress.begin("sampling", "replications", Some(plan.replications));
@@ -111,7 +114,11 @@ fn walk(
         for _ in 0..plan.replications_in(block) {
             let walked = sampler.walk(&mut rng, &mut values, progress);
             let outcome = walked.map_err(|stopped| io::Error::other(stopped.to_string()))?;
-            writeln!(out, "{},{},{}", tally.replications(), names[outcome.end as usize], outcome.time)?;
+            let (number, end) = (tally.replications(), &names[outcome.end as usize]);
+            match sampler.ticks() {
+                Ticks::STEPS => writeln!(out, "{number},{end},{}", outcome.time)?,
+                ticks => writeln!(out, "{number},{end},{}", ticks.time(outcome.time))?,
+            }
             tally.add_observed(outcome.end as usize, outcome.time, &values);
         }
         progress.advance(plan.replications_in(block));

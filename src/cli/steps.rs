@@ -10,9 +10,10 @@ use super::arguments::{Comparing, DEFAULT_SEED, Reading, Sampling, Seed, Warning
 use super::failure::{Failure, refused};
 use super::{Session, output};
 use crate::compare::{Settings, Study};
-use crate::model::{Model, ReadOptions, Silent, Tolerance, ToleranceKey, Tolerances, Warning};
+use crate::exact::{Exact, ExactError, Request};
+use crate::model::{Clock, Model, ReadOptions, Silent, Tolerance, ToleranceKey, Tolerances, Warning};
 use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary, SeedSource};
-use crate::sampling::{OutcomeSource, Plan, Tally, sample_with};
+use crate::sampling::{OutcomeSource, Plan, Sampler, Tally, Ticks, sample_with};
 
 /// Reads a model and says what deserves a look.
 pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
@@ -86,6 +87,25 @@ const PILOT_STEPS: f64 = 1e6;
 /// A step is faster than this on no machine.
 const FASTEST_STEP_SECONDS: f64 = 5e-10;
 
+/// The sampler of a model. In continuous time the exact solver chooses the ticks, or where it refuses the model a guess by
+/// the mean holding times does.
+pub(super) fn sampler(model: &Model, session: &Session) -> Result<Sampler, Failure> {
+    let chain = model.chain();
+    if model.clock() == Clock::Steps {
+        return Ok(Sampler::new(chain));
+    }
+    let longest = match Exact::solve(model, &Request::default(), &session.watch) {
+        Ok(exact) => exact.longest_mean_time(),
+        Err(ExactError::Interrupted) => return Err(ExactError::Interrupted.into()),
+        Err(_) => {
+            let held =
+                (0..chain.states()).filter_map(|state| chain.rate(state)).map(|rate| 1.0 / rate.to_f64().value());
+            1024.0 * held.sum::<f64>()
+        }
+    };
+    Ok(Sampler::in_ticks(chain, Ticks::for_longest(longest)))
+}
+
 /// Seconds that sampling will take, by a short pilot on one thread; from the number of steps alone where even the pilot
 /// would be long.
 pub(super) fn predicted_seconds(sampler: &dyn OutcomeSource, plan: &Plan, mean_steps: f64) -> f64 {
@@ -125,8 +145,8 @@ pub(super) fn compared(
     });
     document.run = Some(RunSummary {
         replications: Some(tally.replications()),
-        steps: Some(tally.steps()),
-        times: tally.range(),
+        steps: tally.ticks().is_steps().then(|| tally.steps()),
+        times: tally.range().filter(|_| tally.ticks().is_steps()),
         seconds: started.elapsed().as_secs_f64(),
         solver: Some(exact.solver()),
     });

@@ -29,8 +29,8 @@ pub(super) enum Certain {
         observable: Observable,
         /// The number.
         amount: i128,
-        /// What it is divided by.
-        denominator: u64,
+        /// In how many parts of its unit it is counted, and of a clock unit.
+        units: (f64, f64),
     },
     /// Every replication finishes in one end at one time.
     Outcome {
@@ -92,15 +92,15 @@ impl Certain {
                 };
                 Seen { replications: sums.count(), otherwise, estimate }
             }
-            Self::Amount { observable, amount, denominator } => {
+            Self::Amount { observable, amount, units } => {
                 let column = recorded(tally, *observable);
-                let (sums, unit) = (column.sums(), *denominator as f64);
+                let (sums, unit) = (column.sums(), units.0);
                 let otherwise = column.range().is_some_and(|range| range != (*amount, *amount));
                 let estimate = match quantity {
                     Quantity::VarianceCost(_) | Quantity::VarianceVisits(_) => {
                         sums.values().variance().map(|variance| variance / unit / unit)
                     }
-                    Quantity::CovarianceTimeCost(_) => sums.covariance().map(|covariance| covariance / unit),
+                    Quantity::CovarianceTimeCost(_) => sums.covariance().map(|covariance| covariance / unit / units.1),
                     _ => sums.values().mean().map(|mean| mean / unit),
                 };
                 Seen { replications: sums.count(), otherwise, estimate }

@@ -82,8 +82,8 @@ pub struct Row {
 pub struct Finding {
     /// The end's name.
     pub end: String,
-    /// The time of the first such outcome.
-    pub time: u64,
+    /// The time of the first such outcome, in steps; `None` in continuous time.
+    pub time: Option<u64>,
     /// Line of the first in its file, if it has one.
     pub line: Option<u64>,
     /// How many such outcomes there were.

@@ -12,8 +12,9 @@ use super::sample::recorded;
 /// The covariance of a cost with the time.
 #[derive(Debug)]
 pub(super) struct Covariance {
-    /// The cost, and the denominator of what is recorded of it.
-    pub(super) cost: (Observable, u64),
+    /// The cost, and in how many parts of its unit, and of a clock unit, it is counted.
+    pub(super) cost: Observable,
+    pub(super) units: (f64, f64),
     pub(super) exact: Bounded,
     /// Of the product of the two deviations. The estimate is its mean but for the means that are estimated too, which
     /// changes it by terms of order 1/n.
@@ -30,7 +31,7 @@ impl Method for Covariance {
     }
 
     fn observes(&self) -> Option<Observable> {
-        Some(self.cost.0)
+        Some(self.cost)
     }
 
     fn miss_probability(&self, tolerance: f64, n: u64, alpha: f64) -> f64 {
@@ -40,11 +41,10 @@ impl Method for Covariance {
     }
 
     fn evaluate(&self, tally: &Tally, tolerance: f64, alpha: f64) -> Evidence {
-        let (observable, denominator) = self.cost;
-        let sums = recorded(tally, observable).sums();
+        let sums = recorded(tally, self.cost).sums();
         let n = sums.count();
         let premature = premature(n, self.spread.least_size(alpha), "");
-        let unit = denominator as f64;
+        let unit = self.units.0 * self.units.1;
         let moments = sums.covariance().zip(sums.squared_product_moment());
         let Some((covariance, square)) = moments.map(|(c, square)| (c / unit, square / unit / unit)) else {
             return Evidence { premature, ..Evidence::default() };

@@ -2,7 +2,7 @@
 
 use crate::exact::{Bounded, Exact, Shape};
 use crate::model::{Quantity, Tolerance};
-use crate::sampling::Observable;
+use crate::sampling::{Observable, Ticks};
 
 use super::certain::Certain;
 use super::covariance::Covariance;
@@ -12,7 +12,7 @@ use super::mean::{Mean, Spread};
 use super::method::Method;
 use super::planned::{Basis, Outcomes, Planned, Tested};
 use super::quantile::Quantile;
-use super::sample::Sample;
+use super::sample::{Sample, Values};
 use super::share::{Event, Share};
 use super::variance::{Squares, Variance};
 use super::{NotCompared, tolerance};
@@ -27,17 +27,18 @@ pub(super) fn draft<'a>(
     quantity: Quantity,
     given: Option<Tolerance>,
     detectable: Option<Tolerance>,
+    ticks: Ticks,
 ) -> Result<Planned<'a>, NotCompared> {
-    if let Some((answer, certain)) = certainty(exact, &quantity) {
+    if let Some((answer, certain)) = certainty(exact, &quantity, ticks) {
         return Ok(Planned { quantity, exact: answer, basis: Basis::Certain(certain) });
     }
     let answer = match exact.answer(&quantity) {
         Ok(answer) => answer,
         Err(refusal) => return Err(NotCompared { quantity, exact: None, text: refusal.to_string() }),
     };
-    match method(exact, &quantity, answer, given) {
+    match method(exact, &quantity, answer, given, ticks) {
         Ok(chosen) => {
-            let bounds = answer.unwrap_or(Bounded::exactly(0.0));
+            let bounds = answer.unwrap_or(Bounded::exactly(0.0)).widened(rounding(exact, &quantity, ticks));
             let default = chosen.default.unwrap_or_else(|| tolerance::default_of(&quantity, bounds));
             let tested = Tested {
                 method: chosen.method,
@@ -91,7 +92,7 @@ fn outcomes(exact: &Exact<'_>, quantity: &Quantity) -> Option<Outcomes> {
 }
 
 /// The answer to a quantity about which nothing is random, with what the model allows.
-fn certainty(exact: &Exact<'_>, quantity: &Quantity) -> Option<(Option<Bounded>, Certain)> {
+fn certainty(exact: &Exact<'_>, quantity: &Quantity, ticks: Ticks) -> Option<(Option<Bounded>, Certain)> {
     let all = all_ends(exact);
     let fixed = |time: f64| {
         let time_of_all = exact.only_time(&all)?;
@@ -133,8 +134,12 @@ fn certainty(exact: &Exact<'_>, quantity: &Quantity) -> Option<(Option<Bounded>,
         | Quantity::MeanTimeGivenHit(_) => {
             let amount = exact.only_amount(quantity)?;
             let (observable, denominator) = observable(exact, quantity)?;
+            let units = (observable.unit(denominator, ticks), ticks.per_unit());
+            // Amounts a move are recorded in parts of a clock unit too.
+            let parts = observable.unit(denominator, ticks) / denominator as f64;
+            let amount = if matches!(observable, Observable::Cost(_)) { amount * parts as i128 } else { amount };
             let answer = exact.answer(quantity).ok().flatten();
-            Some((answer, Certain::Amount { observable, amount, denominator }))
+            Some((answer, Certain::Amount { observable, amount, units }))
         }
         Quantity::Law => {
             let time = exact.only_time(&all)?;
@@ -174,6 +179,7 @@ fn method<'a>(
     quantity: &Quantity,
     answer: Option<Bounded>,
     given: Option<Tolerance>,
+    ticks: Ticks,
 ) -> Result<Chosen<'a>, String> {
     let undefined = || "it is undefined under the model".to_owned();
     if matches!(quantity, Quantity::Law) {
@@ -183,6 +189,8 @@ fn method<'a>(
         return Ok(if no_tolerance { Chosen::of(ChiSquare(curves)) } else { Chosen::of(Band(curves)) });
     }
     let bounds = answer.ok_or_else(undefined)?;
+    let clock = ticks.per_unit();
+    is_fine_enough(exact, quantity, bounds, ticks)?;
     match quantity {
         Quantity::AbsorptionProbability(name) => {
             Ok(Chosen::of(Share { event: Event::Ends(named(exact, name)), exact: bounds }))
@@ -190,19 +198,19 @@ fn method<'a>(
         Quantity::SurvivalProbability(time) => Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds })),
         Quantity::MeanTime => {
             let spread = Spread::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
-            Ok(Chosen::of(Mean { of: Sample::Times, share: 1.0, exact: bounds, spread }))
+            Ok(Chosen::of(Mean { of: Sample { of: Values::Times, unit: clock }, share: 1.0, exact: bounds, spread }))
         }
         Quantity::MeanTimeGiven(name) => {
             let ends = named(exact, name);
             let shape = exact.shape_given(&ends).ok_or_else(undefined)?;
             let spread = Spread::of(&shape).ok_or(UNKNOWN_SHAPE)?;
             let share = exact.absorption(&ends).value;
-            Ok(Chosen::of(Mean { of: Sample::TimesIn(ends), share, exact: bounds, spread }))
+            Ok(Chosen::of(Mean { of: Sample { of: Values::TimesIn(ends), unit: clock }, share, exact: bounds, spread }))
         }
         Quantity::VarianceTime | Quantity::SdTime => {
             let squares = squares(exact.shape())?;
             let root = *quantity == Quantity::SdTime;
-            Ok(Chosen::of(Variance { sample: Sample::Times, root, exact: bounds, squares }))
+            Ok(Chosen::of(Variance { sample: Sample { of: Values::Times, unit: clock }, root, exact: bounds, squares }))
         }
         Quantity::VisitProbability(_) | Quantity::HitProbability(_) => {
             let (observable, _) = observable(exact, quantity).ok_or_else(undefined)?;
@@ -213,7 +221,7 @@ fn method<'a>(
         | Quantity::MeanCost(_)
         | Quantity::VarianceCost(_)
         | Quantity::CovarianceTimeCost(_)
-        | Quantity::MeanTimeGivenHit(_) => of_observable(exact, quantity, bounds),
+        | Quantity::MeanTimeGivenHit(_) => of_observable(exact, quantity, bounds, ticks),
         Quantity::TimeQuantile(p) => {
             let law = exact.law().map_err(ToString::to_string)?;
             let quantile = Quantile { p: *p, exact: bounds, law };
@@ -227,16 +235,43 @@ fn method<'a>(
     }
 }
 
+/// What rounding to ticks can shift a mean by: half a tick each time that a state is held.
+fn rounding(exact: &Exact<'_>, quantity: &Quantity, ticks: Ticks) -> f64 {
+    let is_time = matches!(quantity, Quantity::MeanTime | Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_));
+    if ticks.is_steps() || !is_time { 0.0 } else { exact.mean_moves() * ticks.length() }
+}
+
+/// Rates so unlike one another that the ticks, which the slowest states choose, are too coarse for what is compared.
+fn is_fine_enough(exact: &Exact<'_>, quantity: &Quantity, bounds: Bounded, ticks: Ticks) -> Result<(), String> {
+    let off = exact.mean_moves() * ticks.length();
+    let size = match quantity {
+        _ if ticks.is_steps() => return Ok(()),
+        Quantity::MeanTime | Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_) | Quantity::SdTime => {
+            bounds.value
+        }
+        Quantity::VarianceTime => bounds.value.sqrt(),
+        _ => return Ok(()),
+    };
+    let text = "the rates of the model differ by so much that this version cannot sample it finely enough";
+    if off > 1e-3 * size { Err(text.to_owned()) } else { Ok(()) }
+}
+
 fn squares(shape: &Shape) -> Result<Squares, &'static str> {
     let reason = if shape.has_one_deviation() { ONE_DEVIATION } else { UNKNOWN_SHAPE };
     Squares::of(shape).ok_or(reason)
 }
 
 /// The method for what is recorded besides end and time.
-fn of_observable<'a>(exact: &'a Exact<'a>, quantity: &Quantity, bounds: Bounded) -> Result<Chosen<'a>, String> {
+fn of_observable<'a>(
+    exact: &'a Exact<'a>,
+    quantity: &Quantity,
+    bounds: Bounded,
+    ticks: Ticks,
+) -> Result<Chosen<'a>, String> {
     let shape = exact.shape_of(quantity).ok_or(UNKNOWN_SHAPE)?;
     let (observable, denominator) = observable(exact, quantity).ok_or(UNKNOWN_SHAPE)?;
-    let sample = Sample::Recorded(observable, denominator);
+    let unit = observable.unit(denominator, ticks);
+    let sample = Sample { of: Values::Recorded(observable), unit };
     match quantity {
         Quantity::VarianceVisits(_) | Quantity::VarianceCost(_) => {
             Ok(Chosen::of(Variance { sample, root: false, exact: bounds, squares: squares(&shape)? }))
@@ -248,7 +283,8 @@ fn of_observable<'a>(exact: &'a Exact<'a>, quantity: &Quantity, bounds: Bounded)
                 variance.map_or(0.0, |variance| variance.value.sqrt())
             };
             let product = deviation(&Quantity::VarianceCost(of.clone())) * deviation(&Quantity::VarianceTime);
-            let covariance = Covariance { cost: (observable, denominator), exact: bounds, spread };
+            let units = (unit, ticks.per_unit());
+            let covariance = Covariance { cost: observable, units, exact: bounds, spread };
             Ok(Chosen::with(covariance, tolerance::of_covariance(product)))
         }
         _ => {

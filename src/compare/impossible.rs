@@ -19,13 +19,14 @@ pub(super) fn findings(exact: &Exact<'_>, tally: &Tally, known: &[Finding]) -> V
         if exact.absorption(&[number]).high == 0.0 {
             let count = tally.count(number);
             let text = format!("`{name}` occurred {} times, but the start cannot reach it", counted(count));
-            found.push(Finding { end: name.clone(), time: smallest, line: None, count, text });
+            let time = tally.ticks().is_steps().then_some(smallest);
+            found.push(Finding { end: name.clone(), time, line: None, count, text });
             continue;
         }
         let impossible = [smallest, largest].into_iter().find(|time| !exact.is_possible(number, *time));
         if let Some(time) = impossible {
             let text = format!("`{name}` was entered at time {time}, when no path of the model does so");
-            found.push(Finding { end: name.clone(), time, line: None, count: 1, text });
+            found.push(Finding { end: name.clone(), time: Some(time), line: None, count: 1, text });
         }
     }
     found

@@ -75,7 +75,7 @@ impl Method for Mean {
 
     fn evaluate(&self, tally: &Tally, tolerance: f64, alpha: f64) -> Evidence {
         let sums = self.of.sums(tally);
-        let (n, unit) = (sums.count(), self.of.denominator());
+        let (n, unit) = (sums.count(), self.of.unit);
         let estimate = sums.mean().map(|mean| mean / unit);
         let (Some(mean), Some(variance)) = (estimate, sums.variance().map(|variance| variance / unit / unit)) else {
             return Evidence { estimate, premature: self.premature(n, alpha), ..Evidence::default() };
@@ -107,6 +107,7 @@ pub(super) mod tests {
     use rand_pcg::Lcg128CmDxsm64;
     use rand_pcg::rand_core::Rng;
 
+    use super::super::sample::Values;
     use super::super::verdict::{Verdict, of_interval};
     use super::*;
     use crate::sampling::Grid;
@@ -146,7 +147,7 @@ pub(super) mod tests {
     fn the_p_value_is_below_the_level_exactly_when_the_interval_disagrees() {
         let spread = Spread { standard_deviation: 0.5, skewness: 0.0, excess_kurtosis: -2.0 };
         let exact = Bounded { value: 1.5, low: 1.499, high: 1.502 };
-        let mean = Mean { of: Sample::Times, share: 1.0, exact, spread };
+        let mean = Mean { of: Sample { of: Values::Times, unit: 1.0 }, share: 1.0, exact, spread };
         let mut decided = [0; 2];
         for (i, tally) in odd_tallies(1).enumerate() {
             let tolerance = [0.0, 0.01, 0.1, 0.3][i % 4];
@@ -188,7 +189,12 @@ pub(super) mod tests {
     fn few_replications_are_premature_and_the_size_there_is_random() {
         let spread = Spread { standard_deviation: 1.0, skewness: 2.0, excess_kurtosis: 6.0 };
         let least = spread.least_size(ALPHA);
-        let mean = Mean { of: Sample::TimesIn(vec![1]), share: 0.1, exact: Bounded::exactly(1.5), spread };
+        let mean = Mean {
+            of: Sample { of: Values::TimesIn(vec![1]), unit: 1.0 },
+            share: 0.1,
+            exact: Bounded::exactly(1.5),
+            spread,
+        };
         let evidence =
             |there: u64| mean.evaluate(&tally(&[(0, 1, 10 * there), (1, 1, there - 1), (1, 2, 1)]), 0.1, ALPHA);
         assert_eq!(evidence(least).premature, None);
@@ -203,7 +209,8 @@ pub(super) mod tests {
     #[test]
     fn nothing_and_one_observation_have_no_interval() {
         let spread = Spread { standard_deviation: 0.5, skewness: 0.0, excess_kurtosis: -2.0 };
-        let mean = Mean { of: Sample::Times, share: 1.0, exact: Bounded::exactly(1.5), spread };
+        let mean =
+            Mean { of: Sample { of: Values::Times, unit: 1.0 }, share: 1.0, exact: Bounded::exactly(1.5), spread };
         for (tally, estimate) in [(tally(&[]), None), (tally(&[(0, 4, 1)]), Some(4.0))] {
             let evidence = mean.evaluate(&tally, 0.1, ALPHA);
             assert_eq!((evidence.estimate, evidence.interval, evidence.p_value), (estimate, None, None));

@@ -3,8 +3,8 @@
 use std::sync::Arc;
 
 use crate::exact::Exact;
-use crate::model::{Model, Quantity, Warning};
-use crate::sampling::{Grid, Observable, Tally};
+use crate::model::{Clock, Model, Quantity, Warning};
+use crate::sampling::{Grid, Observable, Tally, Ticks};
 
 use super::draft::draft;
 use super::evaluate::{Terms, evaluate};
@@ -23,6 +23,7 @@ pub struct Study<'a> {
     warnings: Vec<Warning>,
     grid: Arc<Grid>,
     observed: Arc<[Observable]>,
+    ticks: Ticks,
     terms: Terms,
 }
 
@@ -44,12 +45,16 @@ impl<'a> Study<'a> {
         let model = exact.model();
         settings.check(model)?;
         let selection = select(exact, settings);
+        let ticks = match model.clock() {
+            Clock::Steps => Ticks::STEPS,
+            Clock::Rates => Ticks::for_longest(exact.longest_mean_time()),
+        };
         let mut drafted = Vec::new();
         let mut refused = Vec::new();
         for quantity in selection.rows {
             let given = settings.tolerance(model, &quantity);
             let detectable = settings.detectable.of(&quantity);
-            let drafted_row = match draft(exact, quantity, given, detectable) {
+            let drafted_row = match draft(exact, quantity, given, detectable, ticks) {
                 // What a file of outcomes does not say cannot be compared.
                 Ok(row) if settings.outcomes_only && row.observes().is_some() => {
                     let text = "the outcomes hold end and time alone".to_owned();
@@ -76,7 +81,7 @@ impl<'a> Study<'a> {
         let alpha = level(&rows, settings.spent());
         warnings.extend(warnings::never(&rows, alpha, settings.power));
         let terms = Terms { error_rate: settings.spent(), power: settings.power, alpha };
-        Ok(Self { exact, rows, not_compared: refused, warnings, grid, observed: observed.into(), terms })
+        Ok(Self { exact, rows, not_compared: refused, warnings, grid, observed: observed.into(), ticks, terms })
     }
 
     /// The exact answers that the study compares with.
@@ -99,6 +104,11 @@ impl<'a> Study<'a> {
         Arc::clone(&self.observed)
     }
 
+    /// The unit in which the tally must count times.
+    pub fn ticks(&self) -> Ticks {
+        self.ticks
+    }
+
     /// How many replications the table needs.
     pub fn plan(&self) -> SizePlan {
         size::plan(&self.rows, self.terms.error_rate, self.terms.power)
@@ -113,7 +123,7 @@ impl<'a> Study<'a> {
     /// Impossible outcomes that the tally shows by itself join them.
     ///
     /// # Panics
-    /// When the tally is over another grid or other ends, or lacks what [`Study::observed`] asks for.
+    /// When the tally is over another grid or other ends, counts time in other ticks, or lacks what [`Study::observed`] asks for.
     pub fn compare(&self, tally: &Tally, mut findings: Vec<Finding>) -> Comparison {
         assert_eq!(
             tally.ends(),
@@ -121,6 +131,7 @@ impl<'a> Study<'a> {
             "the tally is over other ends than the model"
         );
         assert!(tally.grid() == &*self.grid, "the tally cuts times elsewhere than the study asks for");
+        assert!(tally.ticks() == self.ticks, "the tally counts time in another unit than the study asks for");
         findings.extend(impossible::findings(self.exact, tally, &findings));
         let rows: Vec<_> = (0..self.rows.len()).map(|at| evaluate(&self.rows, at, tally, self.terms)).collect();
         let verdict = verdict::of_table(&rows, &findings);

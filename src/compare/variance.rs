@@ -105,7 +105,7 @@ impl Method for Variance {
         let Some(((variance, second), fourth)) = moments else {
             return Evidence { premature, ..Evidence::default() };
         };
-        let unit = self.sample.denominator().powi(2);
+        let unit = self.sample.unit.powi(2);
         let (variance, second, fourth) = (variance / unit, second / unit, fourth / unit / unit);
         // Where nothing varies the limit is a point. From the least size on that does not happen to a law that varies.
         let of_variance = variance_interval(variance, fourth, n, alpha)
@@ -145,6 +145,7 @@ impl Variance {
 #[cfg(test)]
 mod tests {
     use super::super::mean::tests::{masses, odd_tallies, tally};
+    use super::super::sample::Values;
     use super::super::verdict::{Verdict, of_interval};
     use super::*;
 
@@ -165,7 +166,7 @@ mod tests {
         for root in [false, true] {
             let value = if root { variance.sqrt() } else { variance };
             let exact = Bounded { value, low: value - 1e-3, high: value + 2e-3 };
-            let method = Variance { sample: Sample::Times, root, exact, squares };
+            let method = Variance { sample: Sample { of: Values::Times, unit: 1.0 }, root, exact, squares };
             let mut decided = [0; 2];
             for (i, tally) in odd_tallies(2).enumerate() {
                 let tolerance = [0.0, 0.01, 0.05, 0.3][i % 4];
@@ -202,8 +203,18 @@ mod tests {
     #[test]
     fn the_standard_deviation_is_the_square_root_of_all() {
         let (variance, squares) = two_valued(0.25);
-        let of_variance = Variance { sample: Sample::Times, root: false, exact: Bounded::exactly(variance), squares };
-        let of_root = Variance { sample: Sample::Times, root: true, exact: Bounded::exactly(variance.sqrt()), squares };
+        let of_variance = Variance {
+            sample: Sample { of: Values::Times, unit: 1.0 },
+            root: false,
+            exact: Bounded::exactly(variance),
+            squares,
+        };
+        let of_root = Variance {
+            sample: Sample { of: Values::Times, unit: 1.0 },
+            root: true,
+            exact: Bounded::exactly(variance.sqrt()),
+            squares,
+        };
         let tally = tally(&[(0, 1, 40_000), (0, 2, 14_000)]);
         let (square, root) = (of_variance.evaluate(&tally, 0.0, ALPHA), of_root.evaluate(&tally, 0.0, ALPHA));
         assert!((root.estimate.unwrap().powi(2) - square.estimate.unwrap()).abs() < 1e-15);
@@ -221,7 +232,12 @@ mod tests {
     #[test]
     fn a_sample_that_does_not_vary_is_far_from_any_variance() {
         let (variance, squares) = two_valued(0.25);
-        let method = Variance { sample: Sample::Times, root: false, exact: Bounded::exactly(variance), squares };
+        let method = Variance {
+            sample: Sample { of: Values::Times, unit: 1.0 },
+            root: false,
+            exact: Bounded::exactly(variance),
+            squares,
+        };
         let evidence = method.evaluate(&tally(&[(0, 1, 100_000)]), 0.01, ALPHA);
         assert_eq!((evidence.estimate, evidence.p_value), (Some(0.0), Some(0.0)));
         assert_eq!(evidence.interval, Some(Interval { low: 0.0, high: 0.0 }));

@@ -188,7 +188,7 @@ mod tests {
             (&[], Inconclusive),
         ] {
             assert_eq!(of_table(&rows(verdicts), &[]), table);
-            let finding = Finding { end: "shipped".into(), time: 1, line: None, count: 1, text: String::new() };
+            let finding = Finding { end: "shipped".into(), time: Some(1), line: None, count: 1, text: String::new() };
             assert_eq!(of_table(&rows(verdicts), &[finding]), Disagree);
         }
     }

@@ -160,6 +160,16 @@ impl<'a> Exact<'a> {
         self.linear.mean
     }
 
+    /// The longest mean time from any reachable state to the end, rounded: a guide.
+    pub fn longest_mean_time(&self) -> f64 {
+        self.linear.longest
+    }
+
+    /// Mean number of moves until the end, stays included, rounded: a guide. With a clock in steps it is the mean time.
+    pub fn mean_moves(&self) -> f64 {
+        self.linear.moves
+    }
+
     /// Variance of the time.
     pub fn variance_time(&self) -> Bounded {
         self.linear.variance

@@ -52,6 +52,16 @@ impl Bounded {
         Self { value: value.min(1.0), low: low.min(1.0), high: high.min(1.0) }
     }
 
+    /// The same with more room on either side.
+    #[must_use]
+    pub fn widened(self, by: f64) -> Self {
+        if by == 0.0 {
+            self
+        } else {
+            Self { value: self.value, low: (self.low - by).next_down(), high: (self.high + by).next_up() }
+        }
+    }
+
     /// The square root, for an answer that is not negative.
     #[must_use]
     pub fn sqrt(self) -> Self {

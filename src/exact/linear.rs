@@ -35,6 +35,9 @@ pub(super) struct Linear {
     pub(super) errors: Vec<f64>,
     pub(super) mean: Bounded,
     pub(super) variance: Bounded,
+    /// The longest mean time from a state on, and the mean number of moves from the start; rounded.
+    pub(super) longest: f64,
+    pub(super) moves: f64,
     /// Answers of the costs that were asked for, by their numbers in the model.
     pub(super) costs: Vec<(usize, CostAnswer)>,
 }
@@ -75,6 +78,9 @@ impl Linear {
         let mean_off = mean_error * mean.hi;
         let time = Gathered { pace: &|_| 1, jump: &|_, _| 0, gains: &times, losses: None, mean: (mean, mean_off) };
         let squares = covariance(&stopped, &holding, &start, &visits, &time, &time)?;
+        let going_on = || stopped.classes().iter().flatten().map(|state| *state as usize);
+        let longest = going_on().map(|state| times.of[state].hi).fold(0.0, f64::max);
+        let moves = going_on().map(|state| visits.of[state].hi).sum();
         let spent = holding.spent(chain, visits.clone())?;
         let steps = if holding.is_one_step() { mean } else { Dd::ZERO };
         let second_moment = second_moment(&stopped, &spent, &times, steps, (mean, mean_error));
@@ -92,7 +98,7 @@ impl Linear {
         let variance = variance.ok_or_else(around_start)?;
         let transient: Vec<usize> = stopped.classes().iter().flatten().map(|state| *state as usize).collect();
         reference::confirm(chain, &transient, &holding, mean_bound)?;
-        Ok(Self { ends, errors, mean: mean_bound, variance, costs })
+        Ok(Self { ends, errors, mean: mean_bound, variance, longest, moves, costs })
     }
 }
 

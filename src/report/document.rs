@@ -81,7 +81,7 @@ pub struct ModelSummary {
     pub title: String,
     /// Fingerprint of its meaning.
     pub sha256: String,
-    /// `steps`.
+    /// `steps` or `rates`.
     pub clock: &'static str,
     /// The unit of time.
     pub clock_unit: String,
@@ -102,7 +102,7 @@ impl ModelSummary {
         Self {
             title: model.title().to_owned(),
             sha256: model.fingerprint().to_owned(),
-            clock: "steps",
+            clock: model.clock().name(),
             clock_unit: model.clock_unit().to_owned(),
             states: chain.states(),
             moves: chain.moves(),
@@ -148,9 +148,9 @@ pub struct PlanSummary {
 pub struct RunSummary {
     /// Replications; `None` where none were.
     pub replications: Option<u64>,
-    /// Their steps together.
+    /// Their steps together; `None` in continuous time.
     pub steps: Option<u128>,
-    /// The shortest and the longest of their times.
+    /// The shortest and the longest of their times, in steps; `None` in continuous time.
     pub times: Option<(u64, u64)>,
     /// How long it took.
     pub seconds: f64,

@@ -62,7 +62,9 @@ fn heading(document: &Document) -> String {
 fn particulars(document: &Document) -> Vec<String> {
     let mut lines = Vec::new();
     let unit = &document.model.clock_unit;
-    if unit != "step" {
+    if document.model.clock == "rates" {
+        lines.push(format!("Continuous time, in clock units of one {}.", shown(unit)));
+    } else if unit != "step" {
         lines.push(format!("One step of the clock is one {}.", shown(unit)));
     }
     for input in document.inputs.iter().filter(|input| input.rows.is_some()) {

@@ -36,29 +36,29 @@ pub fn estimates(model: &Model, tally: &Tally) -> Vec<Estimate> {
     let mut all: Vec<Estimate> = ends.iter().enumerate().map(|(end, one)| finishing(&one.name, &[end])).collect();
     all.extend(model.groups().iter().map(|group| finishing(&group.name, &group.ends)));
     let times = tally.all();
-    all.push(mean(Quantity::MeanTime, &times));
+    let clock = tally.ticks().per_unit();
+    all.push(mean(Quantity::MeanTime, &times, clock));
     let sd = times.variance().map(f64::sqrt);
     // The delta method: sd(s) ≈ √((m₄ − s⁴)/n)/(2 s).
     let sd_error = sd
         .filter(|sd| *sd > 0.0)
         .zip(times.central_moment(4))
         .map(|(sd, fourth)| ((fourth - sd.powi(4)).max(0.0) / n).sqrt() / (2.0 * sd));
-    all.push(Estimate { quantity: Quantity::SdTime, estimate: sd, standard_error: sd_error });
+    let in_units = |value: Option<f64>| value.map(|value| value / clock);
+    all.push(Estimate { quantity: Quantity::SdTime, estimate: in_units(sd), standard_error: in_units(sd_error) });
     all.extend(LEVELS.into_iter().filter_map(|p| quantile(p, tally)));
     let given = ends.iter().enumerate();
-    all.extend(given.map(|(end, one)| mean(Quantity::MeanTimeGiven(one.name.clone()), &tally.power_sums(end))));
+    all.extend(given.map(|(end, one)| mean(Quantity::MeanTimeGiven(one.name.clone()), &tally.power_sums(end), clock)));
     for (number, cost) in model.costs().iter().enumerate() {
         let Some(column) = tally.column(Observable::Cost(number)) else { continue };
-        let Estimate { quantity, estimate, standard_error } =
-            mean(Quantity::MeanCost(cost.name.clone()), &column.sums().values());
-        let scaled = |value: Option<f64>| value.map(|value| value / cost.denominator as f64);
-        all.push(Estimate { quantity, estimate: scaled(estimate), standard_error: scaled(standard_error) });
+        let unit = Observable::Cost(number).unit(cost.denominator, tally.ticks());
+        all.push(mean(Quantity::MeanCost(cost.name.clone()), &column.sums().values(), unit));
     }
     for (number, hit) in model.hits().iter().enumerate() {
         let Some(column) = tally.column(Observable::Hit(number)) else { continue };
         let times = column.sums().values();
         all.push(share(Quantity::HitProbability(hit.name.clone()), times.count()));
-        all.push(mean(Quantity::MeanTimeGivenHit(hit.name.clone()), &times));
+        all.push(mean(Quantity::MeanTimeGivenHit(hit.name.clone()), &times, clock));
     }
     all
 }
@@ -71,16 +71,17 @@ fn quantile(p: f64, tally: &Tally) -> Option<Estimate> {
     let time = *edges.get(edges.partition_point(|edge| share(*edge).is_some_and(|share| share < p)))?;
     let is_alone = time == 0 || share(time - 1).is_some_and(|share| share < p);
     let quantity = Quantity::TimeQuantile(p);
-    (is_alone && tally.replications() > 0).then_some(Estimate {
+    (is_alone && tally.replications() > 0 && tally.ticks().is_steps()).then_some(Estimate {
         quantity,
         estimate: Some(time as f64),
         standard_error: None,
     })
 }
 
-fn mean(quantity: Quantity, times: &PowerSums) -> Estimate {
-    let standard_error = times.variance().map(|variance| (variance / times.count() as f64).sqrt());
-    Estimate { quantity, estimate: times.mean(), standard_error }
+/// The mean of values that are counted in parts of a unit.
+fn mean(quantity: Quantity, values: &PowerSums, unit: f64) -> Estimate {
+    let standard_error = values.variance().map(|variance| (variance / values.count() as f64).sqrt() / unit);
+    Estimate { quantity, estimate: values.mean().map(|mean| mean / unit), standard_error }
 }
 
 #[cfg(test)]

@@ -5,9 +5,10 @@ use std::sync::Arc;
 use rand_pcg::Lcg128CmDxsm64;
 
 use super::run::{Interrupted, OutcomeSource};
-use super::sampler::{Outcome, Sampler};
+use super::sampler::{Arrival, Outcome, Sampler};
 use super::streams::Streams;
 use super::tally::Tally;
+use super::ticks::Ticks;
 use crate::model::{Model, Progress};
 
 /// Something that is recorded of every replication, as a whole number.
@@ -15,14 +16,24 @@ use crate::model::{Model, Progress};
 pub enum Observable {
     /// Steps spent in a state, by its number in the chain.
     Visits(usize),
-    /// A cost, by its number in [`Model::costs`], times its denominator.
+    /// A cost, by its number in [`Model::costs`], in parts: see [`Observable::unit`].
     Cost(usize),
     /// The time of the first passage to a set, by its number in [`Model::hits`]; nothing when there was none.
     Hit(usize),
 }
 
-/// Which columns a step adds to, and how much.
+/// Which columns a move adds to, and how much.
 type Amounts = Vec<(u32, i64)>;
+
+/// What a visit of a place adds to a column.
+#[derive(Debug, Clone, Copy)]
+struct Visit {
+    column: u32,
+    /// A step, or a tick.
+    each: i64,
+    /// The visit itself, however long.
+    once: i64,
+}
 
 /// A sampler that records observables too. Its outcomes are those of the [`Sampler`], draw for draw.
 ///
@@ -32,14 +43,16 @@ type Amounts = Vec<(u32, i64)>;
 pub struct ObservedSampler<'a> {
     sampler: &'a Sampler,
     observed: Arc<[Observable]>,
-    /// For each place: what a step from it adds to which columns.
-    steps: Vec<Amounts>,
+    /// For each place: what a visit adds to which columns.
+    visits: Vec<Vec<Visit>>,
     /// For each place: targets whose moves add something, with what they add.
     moves: Vec<Vec<(u32, Amounts)>>,
     /// For each place, and for each end after them: columns whose set it belongs to.
     hits: Vec<Vec<u32>>,
     /// Columns that are sums; the others have no value until their set is met.
     is_sum: Vec<bool>,
+    /// What amounts a tick, and amounts a move, are multiplied by, so that both are whole.
+    factors: (i128, i128),
 }
 
 impl<'a> ObservedSampler<'a> {
@@ -50,17 +63,18 @@ impl<'a> ObservedSampler<'a> {
     pub fn new(sampler: &'a Sampler, model: &Model, observed: Arc<[Observable]>) -> Self {
         let chain = model.chain();
         let states = Sampler::states_of_places(chain);
-        let mut steps = vec![Amounts::new(); states.len()];
+        let mut visits: Vec<Vec<Visit>> = vec![Vec::new(); states.len()];
         let mut moves: Vec<Vec<(u32, Amounts)>> = vec![Vec::new(); states.len()];
         let mut hits = vec![Vec::new(); states.len() + chain.ends().len()];
         for (column, observable) in observed.iter().enumerate() {
             let column = column as u32;
             for (place, state) in states.iter().enumerate() {
                 match observable {
-                    Observable::Visits(of) if of == state => steps[place].push((column, 1)),
+                    Observable::Visits(of) if of == state => visits[place].push(Visit { column, each: 0, once: 1 }),
                     Observable::Cost(number) => {
                         let cost = &model.costs()[*number];
-                        steps[place].extend(Some((column, cost.of_visit(*state))).filter(|(_, amount)| *amount != 0));
+                        let each = cost.of_visit(*state);
+                        visits[place].extend((each != 0).then_some(Visit { column, each, once: 0 }));
                         for to in chain.row(*state).targets {
                             let amount = cost.of_move(*state, *to as usize);
                             if amount != 0 {
@@ -82,7 +96,8 @@ impl<'a> ObservedSampler<'a> {
             }
         }
         let is_sum = observed.iter().map(|one| !matches!(one, Observable::Hit(_))).collect();
-        Self { sampler, observed, steps, moves, hits, is_sum }
+        let factors = factors(sampler.ticks());
+        Self { sampler, observed, visits, moves, hits, is_sum, factors }
     }
 
     /// Walks one path and records it; `values` has one cell an observable.
@@ -99,12 +114,16 @@ impl<'a> ObservedSampler<'a> {
             return self.sampler.walk(rng, progress);
         }
         values.iter_mut().zip(&self.is_sum).for_each(|(value, is_sum)| *value = is_sum.then_some(0));
-        self.sampler.follow(rng, progress, |from, to, time| {
+        let (each_tick, each_move) = self.factors;
+        self.sampler.follow(rng, progress, |Arrival { from, held, to, time }| {
             if let Some(from) = from {
+                for visit in &self.visits[from as usize] {
+                    let while_held = i128::from(visit.each).saturating_mul(i128::from(held)).saturating_mul(each_tick);
+                    grow(&mut values[visit.column as usize], while_held.saturating_add(i128::from(visit.once)));
+                }
                 let taken = self.moves[from as usize].iter().find(|(target, _)| *target == to);
-                let of_move = taken.map_or(&[][..], |(_, amounts)| amounts);
-                for (column, amount) in self.steps[from as usize].iter().chain(of_move) {
-                    values[*column as usize] = values[*column as usize].map(|value| value + i128::from(*amount));
+                for (column, amount) in taken.map_or(&[][..], |(_, amounts)| amounts) {
+                    grow(&mut values[*column as usize], i128::from(*amount).saturating_mul(each_move));
                 }
             }
             for column in &self.hits[to as usize] {
@@ -112,6 +131,30 @@ impl<'a> ObservedSampler<'a> {
             }
         })
     }
+}
+
+/// Costs are counted in parts of their denominator and of a clock unit: an amount a clock unit is one a tick there, and an
+/// amount a move is as many as there are ticks in a unit. Where a tick is longer than a unit it is the other way round.
+fn factors(ticks: Ticks) -> (i128, i128) {
+    let power = 1_i128.checked_shl(ticks.exponent().unsigned_abs()).filter(|power| *power > 0).unwrap_or(i128::MAX);
+    if ticks.exponent() < 0 { (power, 1) } else { (1, power) }
+}
+
+impl Observable {
+    /// What the values of a column are divided by to be in the unit of the observable: visits, the cost's unit given its
+    /// denominator, clock units.
+    pub fn unit(self, denominator: u64, ticks: Ticks) -> f64 {
+        match self {
+            Self::Visits(_) => 1.0,
+            Self::Cost(_) => denominator as f64 * ticks.per_unit().max(1.0),
+            Self::Hit(_) => ticks.per_unit(),
+        }
+    }
+}
+
+/// Adds an amount to a sum.
+fn grow(value: &mut Option<i128>, amount: i128) {
+    *value = value.map(|value| value.saturating_add(amount));
 }
 
 /// Adds an amount to the moves to a target.
@@ -129,6 +172,10 @@ impl OutcomeSource for ObservedSampler<'_> {
 
     fn observed(&self) -> Arc<[Observable]> {
         Arc::clone(&self.observed)
+    }
+
+    fn ticks(&self) -> Ticks {
+        self.sampler.ticks()
     }
 
     fn block(
@@ -184,7 +231,7 @@ mod tests {
         let mut hits = 0;
         for _ in 0..3000 {
             let mut path = Vec::new();
-            let followed = sampler.follow(&mut one, &Silent, |_, to, _| path.push(name(to))).unwrap();
+            let followed = sampler.follow(&mut one, &Silent, |arrival| path.push(name(arrival.to))).unwrap();
             let outcome = watching.walk(&mut two, &mut values, &Silent).unwrap();
             assert_eq!(outcome, followed);
             assert_eq!(path.len() as u64, outcome.time + 1);

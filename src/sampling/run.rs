@@ -11,6 +11,7 @@ use super::observed::Observable;
 use super::sampler::Sampler;
 use super::streams::{BLOCK, Streams};
 use super::tally::Tally;
+use super::ticks::Ticks;
 use crate::model::Progress;
 
 /// How much to sample.
@@ -83,6 +84,11 @@ pub trait OutcomeSource: Sync {
         Arc::from([])
     }
 
+    /// The unit in which times are counted.
+    fn ticks(&self) -> Ticks {
+        Ticks::STEPS
+    }
+
     /// Adds the first `replications` outcomes of a block to a tally.
     ///
     /// # Errors
@@ -125,7 +131,8 @@ pub fn sample_with<S: OutcomeSource + ?Sized>(
     let streams = Streams::new(plan.seed);
     let done = AtomicU64::new(0);
     let observed = source.observed();
-    let empty = || Tally::observing(source.ends(), Arc::clone(&plan.grid), Arc::clone(&observed));
+    let empty =
+        || Tally::observing(source.ends(), Arc::clone(&plan.grid), Arc::clone(&observed)).in_ticks(source.ticks());
     let sampled = (0..plan.blocks())
         .into_par_iter()
         // One tally for each run of consecutive blocks that a thread takes, not for each block: tallies may be large.

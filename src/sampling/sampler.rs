@@ -1,23 +1,37 @@
 //! Walks paths of a chain.
 
 use rand_pcg::Lcg128CmDxsm64;
+use rand_pcg::rand_core::Rng;
 
 use super::alias::AliasTables;
 use super::quantise::{Level, quantise};
 use super::run::{Interrupted, OutcomeSource};
 use super::streams::Streams;
 use super::tally::Tally;
-use crate::model::{Chain, Progress, Row};
+use super::ticks::Ticks;
+use crate::model::{Chain, Clock, Progress, Row};
 
 /// Steps of one path between two looks at whether the user asked to stop.
 const STEPS_BETWEEN_CHECKS: u64 = 1 << 16;
+
+/// A place that a path comes to.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Arrival {
+    /// The place before; `None` at the start.
+    pub(super) from: Option<u32>,
+    /// How long that was held: one step, or ticks.
+    pub(super) held: u64,
+    pub(super) to: u32,
+    /// The time of the arrival.
+    pub(super) time: u64,
+}
 
 /// What one replication left.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct Outcome {
     /// Where it finished, as a number into [`Chain::ends`].
     pub end: u32,
-    /// The steps taken until the end was entered; 0 for a start in an end.
+    /// The steps, or ticks, until the end was entered; 0 for a start in an end.
     pub time: u64,
 }
 
@@ -43,14 +57,31 @@ pub struct Sampler {
     /// that a step led somewhere special.
     places: u32,
     ends: u32,
+    /// Mean holding time of each place in ticks; `None` when a step is a step.
+    holding: Option<Vec<f64>>,
+    ticks: Ticks,
 }
 
 impl Sampler {
-    /// Builds the tables of a chain.
+    /// Builds the tables of a chain whose clock counts steps.
+    ///
+    /// # Panics
+    /// When the transient states, ends and escapes of the chain number 2³² or more together, or its clock runs in rates.
+    pub fn new(chain: &Chain) -> Self {
+        assert!(chain.clock() == Clock::Steps, "continuous time is sampled in ticks");
+        Self::in_ticks(chain, Ticks::STEPS)
+    }
+
+    /// Builds the tables of a chain, whose times are counted in ticks if its clock runs in rates.
+    ///
+    /// # Method
+    /// In continuous time the moves are those of the embedded chain; before each move one more draw gives the time that the
+    /// state is held, −θ ln u by inversion with u from the top 53 bits of the draw, rounded to a tick. The logarithm is one
+    /// of pure Rust, the same on every machine.
     ///
     /// # Panics
     /// When the transient states, ends and escapes of the chain number 2³² or more together.
-    pub fn new(chain: &Chain) -> Self {
+    pub fn in_ticks(chain: &Chain, ticks: Ticks) -> Self {
         let is_place = |state: usize| is_place(chain, state);
         let places = (0..chain.states()).filter(|state| is_place(*state)).count() as u32;
         let ends = chain.ends().len() as u32;
@@ -70,7 +101,17 @@ impl Sampler {
         let mut build = Build { numbers, tables: AliasTables::default(), escapes: Vec::new(), first: places + ends };
         (0..chain.states()).filter(|state| is_place(*state)).for_each(|state| build.push(chain.row(state)));
         build.push(chain.start());
-        Self { tables: build.finish(), places, ends }
+        let of_place = |state: usize| {
+            let rate = chain.rate(state)?;
+            // Two roundings of a factor that stands before a random number.
+            Some(ticks.per_unit() / rate.to_f64().value())
+        };
+        let holding = (0..chain.states()).filter(|state| is_place(*state)).map(of_place).collect();
+        let (holding, ticks) = match chain.clock() {
+            Clock::Steps => (None, Ticks::STEPS),
+            Clock::Rates => (holding, ticks),
+        };
+        Self { tables: build.finish(), places, ends, holding, ticks }
     }
 
     /// Number of ends of the chain.
@@ -84,6 +125,9 @@ impl Sampler {
     /// [`Interrupted`] if the user asked to stop within a path of many steps.
     #[inline]
     pub fn walk(&self, rng: &mut Lcg128CmDxsm64, progress: &dyn Progress) -> Result<Outcome, Interrupted> {
+        if self.holding.is_some() {
+            return self.follow(rng, progress, |_| {});
+        }
         let mut place = self.resolve(self.tables.draw(self.places, rng), rng);
         if place >= self.places {
             return Ok(Outcome { end: place - self.places, time: 0 });
@@ -106,8 +150,8 @@ impl Sampler {
         }
     }
 
-    /// Walks one path and shows every place that it comes to, with the place before, if any, and the time. Places number the
-    /// reachable transient states, ends come after them. The outcome and the draws are those of [`Sampler::walk`].
+    /// Walks one path and shows every place that it comes to. Places number the reachable transient states, ends come after
+    /// them. The outcome and the draws are those of [`Sampler::walk`].
     ///
     /// # Errors
     /// [`Interrupted`] if the user asked to stop within a path of many steps.
@@ -115,21 +159,37 @@ impl Sampler {
         &self,
         rng: &mut Lcg128CmDxsm64,
         progress: &dyn Progress,
-        mut visit: impl FnMut(Option<u32>, u32, u64),
+        mut visit: impl FnMut(Arrival),
     ) -> Result<Outcome, Interrupted> {
         let mut place = self.resolve(self.tables.draw(self.places, rng), rng);
-        let mut time = 0_u64;
-        visit(None, place, time);
+        let (mut time, mut steps) = (0_u64, 0_u64);
+        visit(Arrival { from: None, held: 0, to: place, time });
         while place < self.places {
+            let held = self.held(place, rng);
             let next = self.resolve(self.tables.draw(place, rng), rng);
-            time = time.saturating_add(1);
-            visit(Some(place), next, time);
+            time = time.saturating_add(held);
+            steps = steps.wrapping_add(1);
+            visit(Arrival { from: Some(place), held, to: next, time });
             place = next;
-            if time.is_multiple_of(STEPS_BETWEEN_CHECKS) && progress.interrupted() {
+            if steps.is_multiple_of(STEPS_BETWEEN_CHECKS) && progress.interrupted() {
                 return Err(Interrupted { done: 0 });
             }
         }
         Ok(Outcome { end: place - self.places, time })
+    }
+
+    /// How long a place is held.
+    #[inline]
+    fn held(&self, place: u32, rng: &mut Lcg128CmDxsm64) -> u64 {
+        let Some(holding) = &self.holding else { return 1 };
+        // Between 0 and 1, and neither of them.
+        let u = ((rng.next_u64() >> 11) as f64 + 0.5) * 2f64.powi(-53);
+        (-libm::log(u) * holding[place as usize]).round() as u64
+    }
+
+    /// The unit in which times are counted.
+    pub fn ticks(&self) -> Ticks {
+        self.ticks
     }
 
     /// The states of the places, by their numbers in the chain that the sampler was built from.
@@ -163,6 +223,10 @@ fn is_place(chain: &Chain, state: usize) -> bool {
 impl OutcomeSource for Sampler {
     fn ends(&self) -> usize {
         Sampler::ends(self)
+    }
+
+    fn ticks(&self) -> Ticks {
+        Sampler::ticks(self)
     }
 
     fn block(

@@ -9,6 +9,7 @@ use thiserror::Error;
 use super::column::Column;
 use super::grid::Grid;
 use super::observed::Observable;
+use super::ticks::Ticks;
 use crate::model::hexadecimal;
 use crate::statistics::{PowerSums, PowerSumsBlock};
 
@@ -16,6 +17,9 @@ use crate::statistics::{PowerSums, PowerSumsBlock};
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Error)]
 #[non_exhaustive]
 pub enum TallyMismatch {
+    /// They count time in different units.
+    #[error("the tallies count time in different units; sample both with the same one")]
+    Ticks,
     /// They record different things besides end and time.
     #[error("the tallies record different quantities; sample both with the same ones")]
     Observed,
@@ -60,7 +64,8 @@ impl EndTally {
 /// The mergeable sums over replications: per end, how many there were, the exact power sums of their times, and counts
 /// over the cells of a [`Grid`].
 ///
-/// Everything is a whole number, so tallies merge to the same result in any order and grouping. Times are in steps.
+/// Everything is a whole number, so tallies merge to the same result in any order and grouping. Times are in steps, or in
+/// [`Ticks`].
 ///
 /// # Complexity
 /// O(1) to add an outcome whose time the grid looks up; memory 8 bytes × ends × cells.
@@ -86,6 +91,7 @@ pub struct Tally {
     observed: Arc<[Observable]>,
     /// One an observable.
     columns: Vec<Column>,
+    ticks: Ticks,
 }
 
 impl Tally {
@@ -98,7 +104,26 @@ impl Tally {
     pub fn observing(ends: usize, grid: Arc<Grid>, observed: Arc<[Observable]>) -> Self {
         let cells = vec![0; ends * grid.cells()];
         let columns = vec![Column::default(); observed.len()];
-        Self { grid, replications: 0, ends: vec![EndTally::default(); ends], cells, observed, columns }
+        Self {
+            grid,
+            replications: 0,
+            ends: vec![EndTally::default(); ends],
+            cells,
+            observed,
+            columns,
+            ticks: Ticks::STEPS,
+        }
+    }
+
+    /// The same with times counted in another unit.
+    #[must_use]
+    pub fn in_ticks(self, ticks: Ticks) -> Self {
+        Self { ticks, ..self }
+    }
+
+    /// The unit in which times are counted, those of the grid too.
+    pub fn ticks(&self) -> Ticks {
+        self.ticks
     }
 
     /// Adds one outcome with what was recorded of it, one cell an observable; a cell without a value counts nothing.
@@ -163,6 +188,9 @@ impl Tally {
         if self.observed != other.observed {
             return Err(TallyMismatch::Observed);
         }
+        if self.ticks != other.ticks {
+            return Err(TallyMismatch::Ticks);
+        }
         self.replications += other.replications;
         for (end, more) in self.ends.iter_mut().zip(&other.ends) {
             if let Some((smallest, largest)) = more.range {
@@ -192,7 +220,7 @@ impl Tally {
         self.replications
     }
 
-    /// Steps of all replications together: the sum of the times.
+    /// Steps of all replications together: the sum of the times, in ticks where these are counted.
     pub fn steps(&self) -> u128 {
         // Fewer than 2⁶⁴ times below 2⁶⁴ each.
         u128::try_from(&self.all().sums()[0]).unwrap_or(u128::MAX)
@@ -301,6 +329,7 @@ impl PartialEq for Tally {
         self.grid.edges() == other.grid.edges()
             && self.cells == other.cells
             && self.observed == other.observed
+            && self.ticks == other.ticks
             && self.columns == other.columns
             && self.ends.len() == other.ends.len()
             && self.ends.iter().zip(&other.ends).all(|(a, b)| a.range == b.range && a.power_sums() == b.power_sums())
@@ -311,13 +340,17 @@ impl Eq for Tally {}
 
 /// The canonical text: the same for equal tallies, and for no others.
 ///
-/// One line with the edges; then, for each end, one with count, smallest and largest time (`-` for none) and the sums of
+/// One line with the edges, after one with `ticks` k where a tick is 2⁻ᵏ clock units and not a step; then, for each end, one with count, smallest and largest time (`-` for none) and the sums of
 /// the powers 1 to 4, and one with the cells that are not empty as `cell:count`; then one for each observable, with its
 /// number in the model, count, values above zero, smallest and largest value, and the sums of [`JointSums::sums`](crate::statistics::JointSums::sums). Lines end
 /// with a line feed.
 impl fmt::Display for Tally {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        write!(f, "tallystone tally 1\nedges")?;
+        writeln!(f, "tallystone tally 1")?;
+        if !self.ticks.is_steps() {
+            writeln!(f, "ticks {}", self.ticks.exponent())?;
+        }
+        write!(f, "edges")?;
         self.grid.edges().iter().try_for_each(|edge| write!(f, " {edge}"))?;
         for (number, end) in self.ends.iter().enumerate() {
             write!(f, "\nend {number} count {} times ", end.count)?;
