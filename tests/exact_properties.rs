@@ -327,7 +327,7 @@ fn the_law_agrees_with_fractions_step_by_step() {
         }
         let exact = Exact::solve(
             &model,
-            &Request { law: true, levels: vec![0.5, 0.9], times: vec![12], ..Request::default() },
+            &Request { law: true, levels: vec![0.5, 0.9], times: vec![12.0], ..Request::default() },
             &Silent,
         )
         .unwrap();

@@ -5,8 +5,8 @@ use std::sync::Arc;
 
 use crate::compare::{Finding, Study};
 use crate::exact::Exact;
-use crate::model::{did_you_mean, listed, shortened};
-use crate::sampling::{Grid, Tally, Ticks};
+use crate::model::{Ticks, did_you_mean, listed, shortened};
+use crate::sampling::{Grid, Tally};
 
 /// Steps to either side in which the nearest possible time is looked for.
 const NEIGHBOURHOOD: u64 = 10_000;

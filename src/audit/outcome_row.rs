@@ -2,9 +2,7 @@
 
 use csv::ByteRecord;
 
-use crate::model::{Fault, FaultKind, Number, NumberFault, Place, cell, decimal_point, shortened};
-
-use crate::sampling::Ticks;
+use crate::model::{Fault, FaultKind, Number, NumberFault, Place, Ticks, cell, decimal_point, shortened};
 
 use super::Collector;
 

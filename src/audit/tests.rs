@@ -12,8 +12,8 @@ use tempfile::NamedTempFile;
 use super::outcome_file::read;
 use super::{Collector, OutcomeError, OutcomeFile};
 use crate::exact::{Exact, Request};
-use crate::model::{FaultKind, Model, Progress, Silent};
-use crate::sampling::{Grid, Ticks};
+use crate::model::{FaultKind, Model, Progress, Silent, Ticks};
+use crate::sampling::Grid;
 
 fn file(bytes: &[u8]) -> NamedTempFile {
     let mut file = NamedTempFile::new().unwrap();

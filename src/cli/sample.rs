@@ -8,11 +8,9 @@ use std::time::Instant;
 use super::arguments::{Output, Sample};
 use super::failure::{Failure, status};
 use super::{Session, output, steps};
-use crate::model::{Chain, Model, Progress};
+use crate::model::{Chain, Model, Progress, Ticks};
 use crate::report::{Body, Document, ModelSummary, PlanSummary, RunSummary};
-use crate::sampling::{
-    Grid, Observable, ObservedSampler, OutcomeSource, Plan, Streams, Tally, Ticks, estimates, sample_with,
-};
+use crate::sampling::{Grid, Observable, ObservedSampler, OutcomeSource, Plan, Streams, Tally, estimates, sample_with};
 
 /// Replications where none are asked for.
 const REPLICATIONS: u64 = 100_000;

@@ -11,9 +11,9 @@ use super::failure::{Failure, refused};
 use super::{Session, output};
 use crate::compare::{Settings, Study};
 use crate::exact::{Exact, ExactError, Request};
-use crate::model::{Clock, Model, ReadOptions, Silent, Tolerance, ToleranceKey, Tolerances, Warning};
+use crate::model::{Clock, Model, ReadOptions, Silent, Ticks, Tolerance, ToleranceKey, Tolerances, Warning};
 use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary, SeedSource};
-use crate::sampling::{OutcomeSource, Plan, Sampler, Tally, Ticks, sample_with};
+use crate::sampling::{OutcomeSource, Plan, Sampler, Tally, sample_with};
 
 /// Reads a model and says what deserves a look.
 pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {

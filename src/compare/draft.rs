@@ -1,8 +1,8 @@
 //! From a quantity to a row: its exact answer, and the method that fits it.
 
 use crate::exact::{Bounded, Exact, Shape};
-use crate::model::{Quantity, Tolerance};
-use crate::sampling::{Observable, Ticks};
+use crate::model::{Quantity, Ticks, Tolerance};
+use crate::sampling::Observable;
 
 use super::certain::Certain;
 use super::covariance::Covariance;
@@ -109,9 +109,9 @@ fn certainty(exact: &Exact<'_>, quantity: &Quantity, ticks: Ticks) -> Option<(Op
         Quantity::MeanTime | Quantity::TimeQuantile(_) => fixed(exact.only_time(&all)? as f64),
         Quantity::VarianceTime | Quantity::SdTime => fixed(0.0),
         Quantity::SurvivalProbability(time) => {
-            let always = exact.only_time(&all)? > *time;
+            let always = exact.only_time(&all)? as f64 > *time;
             let probability = Bounded::exactly(f64::from(u8::from(always)));
-            Some((Some(probability), Certain::Event { event: Event::LongerThan(*time), always }))
+            Some((Some(probability), Certain::Event { event: Event::LongerThan(*time as u64), always }))
         }
         Quantity::MeanTimeGiven(name) => {
             let ends = named(exact, name);
@@ -183,7 +183,7 @@ fn method<'a>(
 ) -> Result<Chosen<'a>, String> {
     let undefined = || "it is undefined under the model".to_owned();
     if matches!(quantity, Quantity::Law) {
-        let law = exact.law().map_err(ToString::to_string)?;
+        let law = exact.law_in_ticks().map_err(ToString::to_string)?;
         let curves = Curves::new(exact, law);
         let no_tolerance = matches!(given, Some(Tolerance::Absolute(value)) if value == 0.0);
         return Ok(if no_tolerance { Chosen::of(ChiSquare(curves)) } else { Chosen::of(Band(curves)) });
@@ -195,7 +195,9 @@ fn method<'a>(
         Quantity::AbsorptionProbability(name) => {
             Ok(Chosen::of(Share { event: Event::Ends(named(exact, name)), exact: bounds }))
         }
-        Quantity::SurvivalProbability(time) => Ok(Chosen::of(Share { event: Event::LongerThan(*time), exact: bounds })),
+        Quantity::SurvivalProbability(time) => {
+            Ok(Chosen::of(Share { event: Event::LongerThan((*time * clock).round() as u64), exact: bounds }))
+        }
         Quantity::MeanTime => {
             let spread = Spread::of(exact.shape()).ok_or(UNKNOWN_SHAPE)?;
             Ok(Chosen::of(Mean { of: Sample { of: Values::Times, unit: clock }, share: 1.0, exact: bounds, spread }))
@@ -223,8 +225,9 @@ fn method<'a>(
         | Quantity::CovarianceTimeCost(_)
         | Quantity::MeanTimeGivenHit(_) => of_observable(exact, quantity, bounds, ticks),
         Quantity::TimeQuantile(p) => {
-            let law = exact.law().map_err(ToString::to_string)?;
-            let quantile = Quantile { p: *p, exact: bounds, law };
+            let law = exact.law_in_ticks().map_err(ToString::to_string)?;
+            let counted = law.quantile(*p).ok_or(UNKNOWN_SHAPE)?;
+            let quantile = Quantile { p: *p, exact: counted, law, unit: clock };
             let default = tolerance::of_quantile(&quantile);
             Ok(Chosen::with(quantile, default))
         }

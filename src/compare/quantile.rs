@@ -6,7 +6,7 @@ use crate::statistics::{Interval, lower_tail, quantile_p_value, quantile_ranks, 
 
 use super::Guarantee;
 use super::method::{Evidence, Method};
-use super::words::counted;
+use super::words::{counted, rounded};
 
 /// Single times that the tally keeps apart on either side of a quantile, so that interval and estimate can be told.
 const KEPT_APART: u64 = 512;
@@ -15,9 +15,11 @@ const KEPT_APART: u64 = 512;
 #[derive(Debug)]
 pub(super) struct Quantile<'a> {
     pub(super) p: f64,
-    /// One whole number, or two neighbours that the bounds of the law leave.
+    /// One whole number, or two neighbours that the bounds of the law leave, in steps or ticks.
     pub(super) exact: Bounded,
     pub(super) law: &'a Law,
+    /// Steps, or ticks, in the unit of the clock.
+    pub(super) unit: f64,
 }
 
 /// The whole times at which a verdict turns.
@@ -42,6 +44,10 @@ impl Turns {
 }
 
 impl Quantile<'_> {
+    fn turns(&self, tolerance: f64) -> Turns {
+        Turns::of(self.exact, tolerance * self.unit)
+    }
+
     /// P(time ≤ t) from below and from above; nothing is below time 0.
     fn at_most(&self, time: Option<u64>) -> Bounded {
         time.map_or(Bounded::exactly(0.0), |time| self.law.at_or_below(time))
@@ -49,7 +55,7 @@ impl Quantile<'_> {
 
     /// By how much more than p, and by how much less, the law passes both ends of what agrees.
     pub(super) fn margins(&self, tolerance: f64) -> (f64, f64) {
-        let (low, high) = Turns::of(self.exact, tolerance).within_all;
+        let (low, high) = self.turns(tolerance).within_all;
         let above = self.at_most(Some(high)).low - self.p;
         let below = self.p - self.at_most(low.checked_sub(1)).high;
         (above, below)
@@ -66,11 +72,15 @@ impl Method for Quantile<'_> {
     }
 
     fn cuts(&self, tolerance: f64) -> Vec<u64> {
-        let Turns { within_all: all, within_any: any } = Turns::of(self.exact, tolerance);
+        let Turns { within_all: all, within_any: any } = self.turns(tolerance);
         let mut cuts: Vec<u64> = [all.0, any.0].iter().filter_map(|low| low.checked_sub(1)).collect();
         cuts.extend([all.1, any.1]);
         let (low, high) = (self.exact.low as u64, self.exact.high as u64);
-        cuts.extend(low.saturating_sub(KEPT_APART)..=high.saturating_add(KEPT_APART));
+        // Single steps, but no single ticks: nothing depends on one of them.
+        let apart = if self.unit == 1.0 { KEPT_APART } else { 0 };
+        let near = low.saturating_sub(apart)..=high.saturating_add(apart);
+        let apart_at_most = (high - low) / (2 * KEPT_APART) + 1;
+        cuts.extend(near.step_by(apart_at_most as usize));
         // Beyond them, steps that are small against the tolerance.
         let step = ((any.1 - any.0) / KEPT_APART).max(1) as usize;
         cuts.extend((any.0..=any.1).step_by(step));
@@ -79,7 +89,7 @@ impl Method for Quantile<'_> {
 
     fn miss_probability(&self, tolerance: f64, n: u64, alpha: f64) -> f64 {
         let Some(ranks) = quantile_ranks(n, self.p, alpha) else { return 1.0 };
-        let (low, high) = Turns::of(self.exact, tolerance).within_all;
+        let (low, high) = self.turns(tolerance).within_all;
         if low > high {
             return 1.0;
         }
@@ -91,16 +101,16 @@ impl Method for Quantile<'_> {
     }
 
     fn never_agrees(&self, tolerance: f64) -> Option<String> {
-        let Turns { within_all: (low, high), .. } = Turns::of(self.exact, tolerance);
+        let Turns { within_all: (low, high), .. } = self.turns(tolerance);
         if low > high {
-            let Bounded { low, high, .. } = self.exact;
+            let [low, high] = [self.exact.low, self.exact.high].map(|time| time / self.unit);
             return Some(format!(
                 "the law leaves {low} and {high} as the exact answer, which the tolerance tells apart"
             ));
         }
         let (above, below) = self.margins(tolerance);
         (above <= 0.0 || below <= 0.0).then(|| {
-            let end = if above <= 0.0 { high } else { low.saturating_sub(1) };
+            let end = if above <= 0.0 { high } else { low.saturating_sub(1) } as f64 / self.unit;
             format!(
                 "P(time ≤ {end}) is {} itself, so the interval reaches beyond it however many replications there are",
                 self.p
@@ -115,7 +125,7 @@ impl Method for Quantile<'_> {
         let Some(ranks) = quantile_ranks(n, self.p, alpha) else {
             let few = format!("{} replications are too few to enclose this quantile", counted(n));
             return Evidence {
-                estimate: estimate.map(|cell| cell.1 as f64),
+                estimate: estimate.map(|cell| cell.1 as f64 / self.unit),
                 premature: Some(few),
                 ..Evidence::default()
             };
@@ -123,17 +133,25 @@ impl Method for Quantile<'_> {
         // Whoever lies in a cell of several times is taken at its outer end.
         let lower = located.first(|count| count >= ranks.lower).map(|cell| cell.0);
         let upper = located.first(|count| count >= ranks.upper).map(|cell| cell.1);
-        let (low, high) = Turns::of(self.exact, tolerance).within_any;
+        let (low, high) = self.turns(tolerance).within_any;
         let below = low.checked_sub(1).map_or(0, |time| at_or_below(tally, time));
         Evidence {
-            estimate: estimate.map(|cell| cell.1 as f64),
+            estimate: estimate.map(|cell| cell.1 as f64 / self.unit),
             standard_error: None,
-            interval: lower.zip(upper).map(|(low, high)| Interval { low: low as f64, high: high as f64 }),
+            interval: lower
+                .zip(upper)
+                .map(|(low, high)| Interval { low: low as f64 / self.unit, high: high as f64 / self.unit }),
             p_value: Some(quantile_p_value(n, self.p, at_or_below(tally, high), below)),
             premature: None,
             note: estimate
-                .filter(|(from, to)| from < to)
-                .map(|(from, to)| format!("the estimate is located between {from} and {to} only")),
+                // Ticks are many: what matters is how far apart they are against the tolerance.
+                .filter(|(from, to)| {
+                    from < to && (self.unit == 1.0 || (to - from) as f64 > 0.01 * tolerance * self.unit)
+                })
+                .map(|(from, to)| {
+                    let [from, to] = [from, to].map(|time| rounded(time as f64 / self.unit));
+                    format!("the estimate is located between {from} and {to} only")
+                }),
         }
     }
 }
@@ -236,7 +254,7 @@ mod tests {
                 let tally = tally(&times, (0..120).collect());
                 times.sort_unstable();
                 let n = times.len() as u64;
-                let quantile = Quantile { p, exact: law.quantile(p).unwrap(), law };
+                let quantile = Quantile { p, exact: law.quantile(p).unwrap(), law, unit: 1.0 };
                 let evidence = quantile.evaluate(&tally, 1.0, ALPHA);
                 let ranks = quantile_ranks(n, p, ALPHA).unwrap();
                 let of_rank = |rank: u64| times[rank as usize - 1] as f64;
@@ -262,7 +280,7 @@ mod tests {
                 let single = law.quantile(p).unwrap();
                 // Now and then the law leaves two candidates.
                 let exact = if case % 5 == 0 { Bounded { high: single.high + 1.0, ..single } } else { single };
-                let quantile = Quantile { p, exact, law };
+                let quantile = Quantile { p, exact, law, unit: 1.0 };
                 let tolerance = [1.0, 2.5, 7.0, 200.0][case / 3 % 4];
                 let turns = Turns::of(exact, tolerance);
                 let needed = [turns.within_all.0, turns.within_any.0].map(|low| low.wrapping_sub(1));
@@ -287,7 +305,7 @@ mod tests {
     #[test]
     fn the_chance_to_miss_is_that_of_either_count() {
         with_law(|law| {
-            let quantile = Quantile { p: 0.9, exact: law.quantile(0.9).unwrap(), law };
+            let quantile = Quantile { p: 0.9, exact: law.quantile(0.9).unwrap(), law, unit: 1.0 };
             // q = ⌈ln 0.1/ln 0.97⌉ = 76.
             assert_eq!(quantile.exact, Bounded::exactly(76.0));
             let (n, tolerance) = (5000, 8.0);
@@ -306,14 +324,14 @@ mod tests {
     fn what_no_size_decides_is_said() {
         with_law(|law| {
             let two = Bounded { value: 23.0, low: 23.0, high: 24.0 };
-            let quantile = Quantile { p: 0.5, exact: two, law };
+            let quantile = Quantile { p: 0.5, exact: two, law, unit: 1.0 };
             assert!(quantile.never_agrees(0.5).unwrap().contains("23 and 24"));
             assert!(quantile.never_agrees(0.75).unwrap().contains("tells apart"));
             assert_eq!(quantile.miss_probability(0.75, 1 << 40, ALPHA), 1.0);
             assert_eq!(quantile.never_agrees(1.0), None);
             // A level that the law takes: F(23) itself.
             let p = law.at_or_below(23).value;
-            let on_jump = Quantile { p, exact: Bounded::exactly(23.0), law };
+            let on_jump = Quantile { p, exact: Bounded::exactly(23.0), law, unit: 1.0 };
             assert!(on_jump.never_agrees(0.0).unwrap().contains("however many replications"));
         });
     }
@@ -321,7 +339,7 @@ mod tests {
     #[test]
     fn too_few_replications_enclose_nothing() {
         with_law(|law| {
-            let quantile = Quantile { p: 0.9, exact: law.quantile(0.9).unwrap(), law };
+            let quantile = Quantile { p: 0.9, exact: law.quantile(0.9).unwrap(), law, unit: 1.0 };
             for times in [&[][..], &[40], &[80; 50]] {
                 let evidence = quantile.evaluate(&tally(times, quantile.cuts(1.0)), 1.0, ALPHA);
                 assert_eq!((evidence.interval, evidence.p_value), (None, None));
@@ -334,7 +352,7 @@ mod tests {
     #[test]
     fn an_estimate_in_a_wide_cell_says_so() {
         with_law(|law| {
-            let quantile = Quantile { p: 0.5, exact: law.quantile(0.5).unwrap(), law };
+            let quantile = Quantile { p: 0.5, exact: law.quantile(0.5).unwrap(), law, unit: 1.0 };
             let times: Vec<u64> = (0..2000).map(|i| 5000 + i % 100).collect();
             let evidence = quantile.evaluate(&tally(&times, quantile.cuts(1.0)), 1.0, ALPHA);
             assert_eq!(evidence.interval, Some(Interval { low: 5000.0, high: 5099.0 }));

@@ -119,7 +119,7 @@ fn stand_in(name: &str) -> Quantity {
     match name {
         "law" => Quantity::Law,
         "absorption_probability" => Quantity::AbsorptionProbability(String::new()),
-        "survival_probability" => Quantity::SurvivalProbability(0),
+        "survival_probability" => Quantity::SurvivalProbability(0.0),
         _ => Quantity::MeanTime,
     }
 }

@@ -3,8 +3,8 @@
 use std::sync::Arc;
 
 use crate::exact::Exact;
-use crate::model::{Clock, Model, Quantity, Warning};
-use crate::sampling::{Grid, Observable, Tally, Ticks};
+use crate::model::{Model, Quantity, Ticks, Warning};
+use crate::sampling::{Grid, Observable, Tally};
 
 use super::draft::draft;
 use super::evaluate::{Terms, evaluate};
@@ -45,10 +45,7 @@ impl<'a> Study<'a> {
         let model = exact.model();
         settings.check(model)?;
         let selection = select(exact, settings);
-        let ticks = match model.clock() {
-            Clock::Steps => Ticks::STEPS,
-            Clock::Rates => Ticks::for_longest(exact.longest_mean_time()),
-        };
+        let ticks = exact.ticks();
         let mut drafted = Vec::new();
         let mut refused = Vec::new();
         for quantity in selection.rows {

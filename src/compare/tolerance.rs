@@ -72,7 +72,7 @@ fn one_digit(value: f64) -> f64 {
 pub(super) fn of_quantile(quantile: &Quantile<'_>) -> Tolerance {
     let margin = small_for(quantile.p);
     let enough = |steps: u64| {
-        let (above, below) = quantile.margins(steps as f64);
+        let (above, below) = quantile.margins(steps as f64 / quantile.unit);
         above >= margin && below >= margin
     };
     let mut high = (QUANTILE * quantile.exact.high).ceil().max(1.0) as u64;
@@ -90,7 +90,11 @@ pub(super) fn of_quantile(quantile: &Quantile<'_>) -> Tolerance {
             low = middle + 1;
         }
     }
-    Tolerance::Absolute(high as f64)
+    if quantile.unit == 1.0 {
+        return Tolerance::Absolute(high as f64);
+    }
+    // In continuous time a round number above it.
+    Tolerance::Absolute(next_step(high as f64 / quantile.unit))
 }
 
 /// A tolerance in the unit of its quantity. A share is one of the smallest answer that the bounds leave, so that no
@@ -220,7 +224,7 @@ mod tests {
         let levels = [0.5, 0.99];
         let exact = Exact::solve(&model, &Request::of(&model, &levels.map(Quantity::TimeQuantile)), &Silent).unwrap();
         let law = exact.law().unwrap();
-        let quantile = |p| Quantile { p, exact: law.quantile(p).unwrap(), law };
+        let quantile = |p| Quantile { p, exact: law.quantile(p).unwrap(), law, unit: 1.0 };
         assert_eq!(quantile(0.5).exact, Bounded::exactly(69.0));
         assert_eq!(of_quantile(&quantile(0.5)), Tolerance::Absolute(1.0));
         assert_eq!(quantile(0.99).exact, Bounded::exactly(459.0));

@@ -2,7 +2,7 @@
 
 use std::sync::OnceLock;
 
-use crate::model::{Clock, Model, Progress, Quantity};
+use crate::model::{Clock, Model, Progress, Quantity, Ticks};
 
 use super::costs::CostAnswer;
 use super::dd::{Dd, U2};
@@ -18,8 +18,8 @@ pub struct Request {
     pub law: bool,
     /// Probabilities whose quantiles are wanted, which rest on the law of the time.
     pub levels: Vec<f64>,
-    /// Times whose survival probabilities are wanted, likewise.
-    pub times: Vec<u64>,
+    /// Times in clock units whose survival probabilities are wanted, likewise.
+    pub times: Vec<f64>,
     /// Costs whose answers are wanted, as numbers into [`Model::costs`].
     pub costs: Vec<usize>,
     /// Hits, as numbers into [`Model::hits`].
@@ -72,6 +72,9 @@ pub struct Exact<'a> {
     /// Only audits ask for it.
     support: OnceLock<Support>,
     law: Result<Law, LawRefusal>,
+    /// The law of the time as it is counted in ticks.
+    counted: Option<Law>,
+    ticks: Ticks,
     /// Why a quantile is not there, once one was asked for in vain.
     undecided: OnceLock<LawRefusal>,
     shape: Shape,
@@ -94,7 +97,15 @@ impl<'a> Exact<'a> {
     pub fn solve(model: &'a Model, request: &Request, progress: &dyn Progress) -> Result<Self, ExactError> {
         let chain = model.chain();
         let mut linear = Linear::solve(model, request, progress)?;
-        let law = Law::of(chain, linear.mean.value, request, progress)?;
+        let ticks = match model.clock() {
+            Clock::Steps => Ticks::STEPS,
+            Clock::Rates => Ticks::for_longest(linear.longest),
+        };
+        let law = Law::of(chain, linear.mean.value, ticks, request, progress)?;
+        // A rounded time is off by less than half a tick a visit, and a time enters an end at most at the largest rate.
+        let largest = (0..chain.states()).filter_map(|state| chain.rate(state)).map(|rate| rate.to_f64().value());
+        let blur = largest.fold(0.0, f64::max) * linear.moves * ticks.length();
+        let counted = law.as_ref().ok().map(|law| law.blurred(blur));
         let reachable =
             chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
         let all: Vec<usize> = (0..chain.ends().len()).collect();
@@ -112,7 +123,8 @@ impl<'a> Exact<'a> {
         let visits = request.visits.iter().map(|state| Ok((*state, passages::visits(chain, *state, progress)?)));
         let visits = visits.collect::<Result<_, ExactError>>()?;
         let (support, undecided) = (OnceLock::new(), OnceLock::new());
-        let mut exact = Self { model, linear, reachable, only, support, law, undecided, shape, hits, visits };
+        let mut exact =
+            Self { model, linear, reachable, only, support, law, counted, ticks, undecided, shape, hits, visits };
         if let Some(shape) = exact.shape_given(&all) {
             exact.shape = shape;
         }
@@ -200,6 +212,17 @@ impl<'a> Exact<'a> {
         only_time(self.model.chain(), ends).filter(|time| self.is_in_steps() || *time == 0)
     }
 
+    /// A quantile that is a number of ticks, in clock units: the truth lies after the tick before it.
+    fn in_units(&self, ticks: Bounded) -> Bounded {
+        if self.is_in_steps() {
+            return ticks;
+        }
+        let length = self.ticks.length();
+        let scaled =
+            Bounded { value: ticks.value * length, low: (ticks.low - 1.0) * length, high: ticks.high * length };
+        Bounded { low: scaled.low.next_down().max(0.0), high: scaled.high.next_up(), ..scaled }
+    }
+
     fn is_in_steps(&self) -> bool {
         self.model.clock() == Clock::Steps
     }
@@ -282,6 +305,21 @@ impl<'a> Exact<'a> {
         self.law.as_ref()
     }
 
+    /// The law of end and time as a sampler counts them: with a clock in steps the law itself, in continuous time that of
+    /// times rounded to [`Exact::ticks`].
+    ///
+    /// # Errors
+    /// Why it was not computed.
+    pub fn law_in_ticks(&self) -> Result<&Law, &LawRefusal> {
+        let law = self.law.as_ref()?;
+        Ok(self.counted.as_ref().unwrap_or(law))
+    }
+
+    /// The unit in which times are counted: steps, or in continuous time ticks that suit the longest mean time.
+    pub fn ticks(&self) -> Ticks {
+        self.ticks
+    }
+
     /// The answer to a quantity of this model: `Ok(None)` where it is undefined (a mean given what is impossible, an unknown
     /// name), no single number (the law), or was not asked for (visits, costs and hits).
     ///
@@ -300,12 +338,18 @@ impl<'a> Exact<'a> {
                 None => {
                     let law = self.law()?;
                     let undecided = || self.undecided.get_or_init(|| LawRefusal::Undecided { horizon: law.horizon() });
-                    Some(law.quantile(*p).ok_or_else(undecided)?)
+                    Some(self.in_units(law.quantile(*p).ok_or_else(undecided)?))
                 }
             },
             Quantity::SurvivalProbability(time) => Some(match self.only {
-                Some(only) => Bounded::exactly(if *time < only { 1.0 } else { 0.0 }),
-                None => self.law()?.survival(*time),
+                Some(only) => Bounded::exactly(if *time < only as f64 { 1.0 } else { 0.0 }),
+                // From the last tick before the time to the first after it.
+                None if !self.is_in_steps() => {
+                    let (law, at) = (self.law()?, *time * self.ticks.per_unit());
+                    let (early, late) = (law.survival(at.floor() as u64), law.survival(at.ceil() as u64));
+                    Bounded { value: early.value, low: late.low, high: early.high }
+                }
+                None => self.law()?.survival(*time as u64),
             }),
             Quantity::Law => None,
             Quantity::MeanVisits(of) => self.visits_of(of).map(|answer| answer.mean),

@@ -113,9 +113,15 @@ pub enum LawRefusal {
         /// The last time that was computed.
         horizon: u64,
     },
-    /// The clock runs in rates.
-    #[error("this version computes the law of the time, quantiles and survival only for a clock in steps")]
-    ContinuousTime,
+    /// Too many states in continuous time, or rates that differ by too much.
+    #[error(
+        "in continuous time this version computes the law of the time for up to some 150 states, and rates that differ by less \
+         than 1e15; there are {states} states"
+    )]
+    TooManyStates {
+        /// Reachable transient states.
+        states: usize,
+    },
     /// The request did not ask for it.
     #[error("the law of the time was not asked for")]
     NotRequested,

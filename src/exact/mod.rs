@@ -4,9 +4,10 @@
 //! given an end, the joint law of end and time with its quantiles and survival probabilities; and on request the visits of
 //! a state, costs that accumulate on the way, and first passages to sets of states.
 //!
-//! **Limits.** The clock counts steps. A communicating class of transient states may be as large as 2,000 states that all
+//! **Limits.** A communicating class of transient states may be as large as 2,000 states that all
 //! lead to one another, or much larger when moves lead only to states near in the order of the model; larger ones are
-//! refused before any work, by time or by memory (1 GB). The law is refused when it would take more than some seconds. This room knows nothing of the
+//! refused before any work, by time or by memory (1 GB). The law is refused when it would take more than some seconds, and in
+//! continuous time beyond some 150 states. This room knows nothing of the
 //! sampler, so that a comparison does not test code against itself.
 //!
 //! ```
@@ -37,6 +38,9 @@
 //! - Visits and first passages are absorption probabilities and times of the chain that also stops at the state or set
 //!   (`passages.rs`); a cost is `x⁺ − x⁻`, each from a column solve, and its variance and covariance with the time are sums
 //!   over steps of products of deviations like those above (`costs.rs`, `deviations.rs`).
+//!
+//! - In continuous time N is that of the embedded chain, h = N θ with the mean holding times θ, E\[T^j; e\]/j! takes the place
+//!   of binomial moments, and Σ_i y_i θ_i² joins the variance; the law is in `continuous.rs`.
 //!
 //! # Why the bounds hold
 //! Let u = 2⁻⁵³. Sums, products and quotients of double-doubles that are not negative lose at most 3 u², 5 u² and 15 u²
@@ -79,6 +83,7 @@
 
 mod answers;
 mod bounded;
+mod continuous;
 mod costs;
 mod dd;
 mod deviations;
@@ -92,6 +97,7 @@ mod linear;
 mod passages;
 mod reference;
 mod shape;
+mod step_law;
 mod steps;
 mod stopped;
 mod support;

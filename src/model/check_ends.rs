@@ -2,7 +2,6 @@
 
 use std::collections::HashSet;
 
-use super::Group;
 use super::chain::{End, NO_END, Structure};
 use super::check::Checked;
 use super::draft::{Draft, NamedList};
@@ -10,6 +9,7 @@ use super::fault::{Fault, FaultKind, WarningKind, did_you_mean, listed};
 use super::observed::{Cost, Hit};
 use super::quantity::Quantity;
 use super::tolerance::ToleranceKey;
+use super::{Clock, Group};
 
 impl Draft {
     /// The ends: absorbing states as declared, then closed classes in the order of their first state.
@@ -122,6 +122,7 @@ impl Draft {
                 number: &|name| self.known_state(name).map(|state| state as usize),
                 names: &|| self.states.iter().map(|state| state.name.as_str()).collect(),
                 end_of,
+                clock: self.clock,
             };
             if let Some((text, remedy)) = unknown_name(&quantity, ends, groups, costs, hits, &states) {
                 self.fault(Fault::new(FaultKind::UnknownName, place, text, remedy).valued(quantity.to_string()));
@@ -179,6 +180,7 @@ pub(super) struct States<'a> {
     pub(super) number: &'a dyn Fn(&str) -> Option<usize>,
     pub(super) names: &'a dyn Fn() -> Vec<&'a str>,
     pub(super) end_of: &'a [u32],
+    pub(super) clock: Clock,
 }
 
 /// Why a quantity means nothing for this model, and what to write instead.
@@ -211,12 +213,21 @@ pub(super) fn unknown_name(
                 None => (of, (states.names)(), "no state", "name a state of the model"),
             }
         }
+        Quantity::SurvivalProbability(time) if states.clock == Clock::Steps && !is_a_count(*time) => {
+            let text = format!("`{quantity}` speaks of a time of {time}, but the clock counts steps");
+            return Some((text, "give a whole number of steps".to_owned()));
+        }
         _ => return None,
     };
     if known.contains(&of.as_str()) {
         return None;
     }
     Some((format!("`{quantity}` speaks of `{of}`, which is {what}"), did_you_mean(of, known, remedy)))
+}
+
+/// Whether a number is whole and small enough for a double to tell it from its neighbours.
+fn is_a_count(time: f64) -> bool {
+    time.fract() == 0.0 && time < 2f64.powi(53)
 }
 
 fn plural(count: usize) -> &'static str {

@@ -30,6 +30,7 @@ mod records;
 mod row;
 mod source;
 mod table;
+mod ticks;
 mod tolerance;
 mod toml_file;
 mod toml_observed;
@@ -51,6 +52,7 @@ pub(crate) use records::{Records, cell, decimal_point, delimiter};
 pub use row::{LARGEST_CORRECTION, Row, Weights};
 pub use source::ReadOptions;
 pub(crate) use source::hexadecimal;
+pub use ticks::Ticks;
 pub use tolerance::{Tolerance, ToleranceKey, Tolerances};
 
 /// Ends that are also reported together.
@@ -185,6 +187,7 @@ impl Model {
             number: &|name| self.chain.state(name),
             names: &|| (0..self.chain.states()).map(|state| self.chain.name(state)).collect(),
             end_of: &self.chain.end_of,
+            clock: self.clock(),
         };
         let unknown =
             check_ends::unknown_name(quantity, self.chain.ends(), &self.groups, &self.costs, &self.hits, &states);

@@ -20,8 +20,8 @@ pub enum Quantity {
     VarianceTime,
     /// Smallest `t` with P(time ≤ t) ≥ the given probability.
     TimeQuantile(f64),
-    /// P(time > t).
-    SurvivalProbability(u64),
+    /// P(time > t), t in clock units.
+    SurvivalProbability(f64),
     /// Mean time of the replications that finish in an end or group.
     MeanTimeGiven(String),
     /// End and time jointly: P(end = e, time ≤ t) for every end and time.
@@ -132,10 +132,10 @@ impl Quantity {
                     "write for example `time_quantile:0.9`".to_owned(),
                 ),
             },
-            "survival_probability" => match argument.parse::<u64>() {
-                Ok(t) => Ok(Self::SurvivalProbability(t)),
-                Err(_) => fault(
-                    format!("`{argument}` is not a whole number of steps"),
+            "survival_probability" => match argument.parse::<f64>() {
+                Ok(t) if t >= 0.0 && t.is_finite() => Ok(Self::SurvivalProbability(t)),
+                _ => fault(
+                    format!("`{argument}` is not a time from 0 up"),
                     "write for example `survival_probability:100`".to_owned(),
                 ),
             },
@@ -247,7 +247,8 @@ mod tests {
             "sd_time",
             "variance_time",
             "time_quantile:0.999",
-            "survival_probability:18446744073709551615",
+            "survival_probability:100",
+            "survival_probability:0.25",
             "mean_time_given:shipped",
             "law",
             "mean_visits:board",

@@ -4,7 +4,7 @@
 //! of them. The tally depends on the chain, the seed, the number of replications and [`STREAM_VERSION`] alone: the same
 //! bits on any machine and any number of threads.
 //!
-//! **Limits.** A path may take up to 2⁶⁴ − 1 steps, or [`Ticks`] of continuous time. This room knows nothing of
+//! **Limits.** A path may take up to 2⁶⁴ − 1 steps, or [`Ticks`](crate::model::Ticks) of continuous time. This room knows nothing of
 //! the exact answers and takes from the model only its exact rows, so that a comparison does not test code against itself.
 //!
 //! ```
@@ -35,7 +35,7 @@ mod run;
 mod sampler;
 mod streams;
 mod tally;
-mod ticks;
+mod tally_text;
 
 pub use column::Column;
 pub use estimate::{Estimate, estimates};
@@ -45,4 +45,3 @@ pub use run::{Interrupted, OutcomeSource, Plan, sample, sample_with};
 pub use sampler::{Outcome, Sampler};
 pub use streams::{BLOCK, STREAM_VERSION, Streams};
 pub use tally::{Tally, TallyMismatch};
-pub use ticks::Ticks;

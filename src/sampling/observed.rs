@@ -8,8 +8,7 @@ use super::run::{Interrupted, OutcomeSource};
 use super::sampler::{Arrival, Outcome, Sampler};
 use super::streams::Streams;
 use super::tally::Tally;
-use super::ticks::Ticks;
-use crate::model::{Model, Progress};
+use crate::model::{Model, Progress, Ticks};
 
 /// Something that is recorded of every replication, as a whole number.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]

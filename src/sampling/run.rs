@@ -11,8 +11,7 @@ use super::observed::Observable;
 use super::sampler::Sampler;
 use super::streams::{BLOCK, Streams};
 use super::tally::Tally;
-use super::ticks::Ticks;
-use crate::model::Progress;
+use crate::model::{Progress, Ticks};
 
 /// How much to sample.
 #[derive(Debug, Clone)]

@@ -8,8 +8,7 @@ use super::quantise::{Level, quantise};
 use super::run::{Interrupted, OutcomeSource};
 use super::streams::Streams;
 use super::tally::Tally;
-use super::ticks::Ticks;
-use crate::model::{Chain, Clock, Progress, Row};
+use crate::model::{Chain, Clock, Progress, Row, Ticks};
 
 /// Steps of one path between two looks at whether the user asked to stop.
 const STEPS_BETWEEN_CHECKS: u64 = 1 << 16;

@@ -1,6 +1,5 @@
 //! What a run keeps of its replications.
 
-use std::fmt;
 use std::sync::Arc;
 
 use sha2::{Digest, Sha256};
@@ -9,8 +8,7 @@ use thiserror::Error;
 use super::column::Column;
 use super::grid::Grid;
 use super::observed::Observable;
-use super::ticks::Ticks;
-use crate::model::hexadecimal;
+use crate::model::{Ticks, hexadecimal};
 use crate::statistics::{PowerSums, PowerSumsBlock};
 
 /// Why two tallies cannot be merged.
@@ -138,6 +136,11 @@ impl Tally {
                 column.add(*value, time);
             }
         }
+    }
+
+    /// What is recorded besides end and time.
+    pub fn observed(&self) -> &[Observable] {
+        &self.observed
     }
 
     /// What was recorded of an observable; `None` if nothing was.
@@ -337,44 +340,6 @@ impl PartialEq for Tally {
 }
 
 impl Eq for Tally {}
-
-/// The canonical text: the same for equal tallies, and for no others.
-///
-/// One line with the edges, after one with `ticks` k where a tick is 2⁻ᵏ clock units and not a step; then, for each end, one with count, smallest and largest time (`-` for none) and the sums of
-/// the powers 1 to 4, and one with the cells that are not empty as `cell:count`; then one for each observable, with its
-/// number in the model, count, values above zero, smallest and largest value, and the sums of [`JointSums::sums`](crate::statistics::JointSums::sums). Lines end
-/// with a line feed.
-impl fmt::Display for Tally {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        writeln!(f, "tallystone tally 1")?;
-        if !self.ticks.is_steps() {
-            writeln!(f, "ticks {}", self.ticks.exponent())?;
-        }
-        write!(f, "edges")?;
-        self.grid.edges().iter().try_for_each(|edge| write!(f, " {edge}"))?;
-        for (number, end) in self.ends.iter().enumerate() {
-            write!(f, "\nend {number} count {} times ", end.count)?;
-            match end.range {
-                Some((smallest, largest)) => write!(f, "{smallest} {largest}")?,
-                None => f.write_str("- -")?,
-            }
-            f.write_str(" sums")?;
-            end.power_sums().sums().iter().try_for_each(|sum| write!(f, " {sum}"))?;
-            f.write_str("\ncells")?;
-            let mut cells = self.cells(number).iter().enumerate().filter(|(_, count)| **count > 0);
-            cells.try_for_each(|(cell, count)| write!(f, " {cell}:{count}"))?;
-        }
-        for (observable, column) in self.observed.iter().zip(&self.columns) {
-            let (kind, number) = match observable {
-                Observable::Visits(state) => ("visits", state),
-                Observable::Cost(cost) => ("cost", cost),
-                Observable::Hit(hit) => ("hit", hit),
-            };
-            write!(f, "\n{kind} {number} {column}")?;
-        }
-        f.write_str("\n")
-    }
-}
 
 #[cfg(test)]
 mod tests {
