@@ -3,11 +3,14 @@
 //! Golden output stands in tests/snapshots; `TALLYSTONE_REWRITE_SNAPSHOTS=1 cargo test --test cli` writes it anew, to be
 //! read before it is committed.
 
+mod golden;
+
 use std::fs;
 use std::io::{Read, Write};
-use std::path::{Path, PathBuf};
+use std::path::Path;
 use std::process::{Child, Command, Output, Stdio};
 
+use golden::golden;
 use serde_json::Value;
 use tempfile::TempDir;
 
@@ -47,17 +50,6 @@ fn directory(files: &[(&str, &str)]) -> TempDir {
 
 fn within(directory: &TempDir, arguments: &[&str]) -> Output {
     program().current_dir(directory).args(arguments).output().unwrap()
-}
-
-/// Compares with a golden file, or writes it.
-#[track_caller]
-fn golden(name: &str, found: &str) {
-    let path = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("tests/snapshots").join(name);
-    if std::env::var_os("TALLYSTONE_REWRITE_SNAPSHOTS").is_some() {
-        fs::write(&path, found).unwrap();
-    }
-    let expected = fs::read_to_string(&path).unwrap_or_default().replace("\r\n", "\n");
-    assert!(found == expected, "{name} differs; if that is right, set TALLYSTONE_REWRITE_SNAPSHOTS=1 once:\n{found}");
 }
 
 #[test]

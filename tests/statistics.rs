@@ -138,6 +138,41 @@ fn nist_certified_moments() {
 }
 
 #[test]
+fn numacc_through_the_tally() {
+    // The same sets as times of replications, and as a cost that is negative throughout: the sums are exact, so the
+    // standard deviation is 0.1, that is 1 in tenths, wherever the numbers lie.
+    use std::sync::Arc;
+    use tallystone::sampling::{Grid, Observable, Tally};
+    for (base, mean) in [(10_000_000_u64, 10_000_002.0), (100_000_000, 100_000_002.0)] {
+        let observed: Arc<[Observable]> = [Observable::Cost(0)].into();
+        let mut tally = Tally::observing(1, Arc::new(Grid::logarithmic()), observed);
+        let mut second = tally.clone();
+        for i in 0..1001_u64 {
+            let value = if i == 0 { base + 2 } else { base + 1 + 2 * (i % 2) };
+            let half = if i % 3 == 0 { &mut tally } else { &mut second };
+            half.add_observed(0, value, &[Some(-i128::from(value))]);
+        }
+        tally.merge(&second).unwrap();
+        assert_eq!((tally.all().mean(), tally.all().variance()), (Some(mean), Some(1.0)));
+        let cost = tally.column(Observable::Cost(0)).unwrap().sums();
+        assert_eq!((cost.values().mean(), cost.values().variance()), (Some(-mean), Some(1.0)));
+        assert_eq!(cost.covariance(), Some(-1.0));
+    }
+}
+
+#[test]
+fn poisson_truncation_points() {
+    // Fox & Glynn, Comm. ACM 31 (1988) 440 (method); points for 5e-11 in each tail, own, by mpmath. P(N ≤ n) for a Poisson
+    // number of mean λ is the chi-square survival of 2λ with 2(n + 1) degrees of freedom.
+    let at_most = |n: i64, mean: f64| if n < 0 { 0.0 } else { chi_square_survival(2.0 * mean, 2.0 * (n + 1) as f64) };
+    let beyond = |n: i64, mean: f64| 1.0 - at_most(n, mean);
+    for (mean, left, right) in [(10.0, 0, 36), (100.0, 43, 171), (1000.0, 802, 1211)] {
+        assert!(at_most(left - 1, mean) <= 5e-11 && (left == 0 || at_most(left, mean) > 5e-11), "{mean} {left}");
+        assert!(beyond(right, mean) <= 5e-11 * (1.0 + 1e-3) && beyond(right - 1, mean) > 5e-11, "{mean} {right}");
+    }
+}
+
+#[test]
 fn levels_and_intervals_say_the_same() {
     // An interval at alpha misses exactly when the p-value is at most alpha.
     for n in [1u64, 7, 60, 1000] {
