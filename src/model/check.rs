@@ -26,14 +26,15 @@ impl Draft {
         self.check_names();
         let moves = self.moves_by_state();
         let mut checked = Checked::default();
-        let (rows, targets) = self.check_rows(&moves, &mut checked);
+        let rows = self.check_rows(&moves, &mut checked);
+        drop(moves);
         let start = self.check_start(&mut checked);
         if !self.moves_are_there() {
             return Err(self.refused());
         }
         self.check_states_are_known();
         // The structure needs only targets, so names are checked against the ends even when numbers are faulty.
-        let structure = Structure::of(&targets, start.targets(0));
+        let structure = Structure::of(&rows, start.targets(0));
         let ends = self.check_ends(&structure, &mut checked);
         let groups = self.check_groups(&ends);
         self.check_quantities(&ends, &groups);
@@ -85,7 +86,7 @@ impl Draft {
             if let Some(text) = bad_name(&state.name) {
                 let place = self.place(state.file, state.line);
                 let fault = Fault::new(FaultKind::BadName, place, text, "rename it");
-                faults.push(fault.about(state.name.clone()));
+                faults.push(fault.about(&*state.name));
             }
         }
         let mut taken: HashSet<&str> = HashSet::new();
@@ -103,47 +104,36 @@ impl Draft {
         self.faults.extend(faults);
     }
 
-    /// The moves of each state, in the order in which they are written.
-    fn moves_by_state(&mut self) -> Vec<Vec<DraftMove>> {
-        let mut by_state: Vec<Vec<DraftMove>> = vec![Vec::new(); self.states.len()];
-        for one in std::mem::take(&mut self.moves) {
-            by_state[one.from as usize].push(one);
-        }
-        by_state
+    /// The moves, sorted by the state that they leave; those of one state stay in the order in which they are written.
+    fn moves_by_state(&mut self) -> Vec<DraftMove> {
+        let mut moves = std::mem::take(&mut self.moves);
+        moves.sort_by_key(|one| one.from);
+        moves
     }
 
-    /// The exact rows, and the rows of targets alone, which exist for faulty rows too.
-    fn check_rows(&mut self, moves: &[Vec<DraftMove>], checked: &mut Checked) -> (Rows, Rows) {
-        let total = moves.iter().map(Vec::len).sum();
-        let (mut rows, mut targets) =
-            (Rows::with_capacity(moves.len(), total), Rows::with_capacity(moves.len(), total));
-        for (state, moves) in moves.iter().enumerate() {
-            let lone_stay = matches!(moves.as_slice(), [one] if one.to as usize == state && one.is_certain());
+    /// The exact rows; faulty ones hold at least their targets.
+    fn check_rows(&mut self, moves: &[DraftMove], checked: &mut Checked) -> Rows {
+        let mut rows = Rows::with_capacity(self.states.len(), moves.len());
+        let mut left = moves;
+        for state in 0..self.states.len() {
+            let (moves, others) = left.split_at(left.iter().take_while(|one| one.from as usize == state).count());
+            left = others;
+            let lone_stay = matches!(moves, [one] if one.to as usize == state && one.is_certain());
             if lone_stay && (self.lone_stay_is_absorbing || self.states[state].absorbing.is_some()) {
                 self.states[state].absorbing = Some(moves[0].line);
                 rows.push(ExactRow::none());
-                targets.push(ExactRow::none());
                 continue;
             }
-            match self.check_row(state, moves, checked) {
-                Some(row) => {
-                    targets.push(row.clone());
-                    rows.push(row);
-                }
-                None => {
-                    rows.push(ExactRow::none());
-                    targets.push(ExactRow::targets_only(moves.iter().map(|one| one.to)));
-                }
-            }
+            let row = self.check_row(state, moves, checked);
+            rows.push(row.unwrap_or_else(|| ExactRow::targets_only(moves.iter().map(|one| one.to))));
         }
-        (rows, targets)
+        rows
     }
 
     fn check_row(&mut self, state: usize, moves: &[DraftMove], checked: &mut Checked) -> Option<ExactRow> {
         let DraftState { name, row, absorbing, faulty, .. } = self.states[state].clone();
         let place = self.place(self.moves_file, moves.first().map_or(row.unwrap_or(0), |one| one.line));
-        let fault =
-            |kind, text: String, remedy: &str| Fault::new(kind, place.clone(), text, remedy).about(name.clone());
+        let fault = |kind, text: String, remedy: &str| Fault::new(kind, place.clone(), text, remedy).about(&*name);
         if absorbing.is_some() {
             if !moves.is_empty() {
                 let text = format!("`{name}` is declared absorbing but has moves");
@@ -195,11 +185,12 @@ impl Draft {
     }
 
     fn check_duplicates(&mut self, name: &str, moves: &[DraftMove]) -> bool {
-        if moves.len() < 2 {
+        let mut targets: Vec<u32> = moves.iter().map(|one| one.to).collect();
+        targets.sort_unstable();
+        if targets.windows(2).all(|pair| pair[0] != pair[1]) {
             return true;
         }
         let mut seen: HashMap<u32, u64> = HashMap::with_capacity(moves.len());
-        let mut clean = true;
         for one in moves {
             if let Some(first) = seen.insert(one.to, one.line) {
                 let to = self.states[one.to as usize].name.clone();
@@ -207,11 +198,10 @@ impl Draft {
                 let text = format!("the move from `{name}` to `{to}` is listed twice{before}");
                 let place = self.place(self.moves_file, one.line);
                 let remedy = "join the two into one";
-                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, remedy).about(name).valued(to));
-                clean = false;
+                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, remedy).about(name).valued(&*to));
             }
         }
-        clean
+        false
     }
 
     /// Whether there are moves to speak of. Without them every other fault would follow from that one.
@@ -231,8 +221,7 @@ impl Draft {
     fn check_states_are_known(&mut self) {
         let known = |state: &DraftState| state.row.is_some() || state.absorbing.is_some();
         let unknown = |state: &&DraftState| !known(state) && bad_name(&state.name).is_none();
-        let names: Vec<&str> =
-            self.states.iter().filter(|state| known(state)).map(|state| state.name.as_str()).collect();
+        let names: Vec<&str> = self.states.iter().filter(|state| known(state)).map(|state| &*state.name).collect();
         let suggested = SUGGESTION_WORK / names.len().max(1);
         let faults: Vec<Fault> = self
             .states
@@ -245,7 +234,7 @@ impl Draft {
                 let remedy = did_you_mean(&state.name, names.iter().copied(), otherwise);
                 let text = format!("the state `{}` has no moves and is not declared absorbing", state.name);
                 let place = self.place(state.file, state.line);
-                Fault::new(FaultKind::UnknownState, place, text, remedy).about(state.name.clone())
+                Fault::new(FaultKind::UnknownState, place, text, remedy).about(&*state.name)
             })
             .collect();
         self.faults.extend(faults);
@@ -266,7 +255,7 @@ impl Draft {
                 let name = self.states[*state as usize].name.clone();
                 let text = format!("`{name}` is listed twice in the start");
                 let place = self.place(0, *line);
-                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, "join the two into one").about(name));
+                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, "join the two into one").about(&*name));
                 self.start_faulty = true;
             }
         }

@@ -41,7 +41,7 @@ impl DraftMove {
 /// What is known of a state before the check.
 #[derive(Debug, Clone)]
 pub(super) struct DraftState {
-    pub(super) name: String,
+    pub(super) name: Arc<str>,
     /// Line of the first mention; 0 when made in code.
     pub(super) line: u64,
     /// The file of the first mention, as an index into the draft's files.
@@ -81,7 +81,7 @@ pub struct Draft {
     pub(super) clock_unit: Option<String>,
     pub(super) files: Vec<Arc<str>>,
     pub(super) states: Vec<DraftState>,
-    index: HashMap<String, u32>,
+    index: HashMap<Arc<str>, u32>,
     pub(super) starts: Vec<(u32, Written, u64)>,
     /// Something is wrong with the start already, so nothing is said of its sum.
     pub(super) start_faulty: bool,
@@ -120,7 +120,7 @@ impl Draft {
     /// Starts a share of the replications in a state; shares are numbers as in a model file, or `rest`.
     pub fn start_with(&mut self, state: &str, share: &str) {
         let number = self.state(state, 0, 0);
-        if let Some(share) = self.written(share, None, Place::default()) {
+        if let Some(share) = self.written(share, None, 0, 0) {
             self.starts.push((number, share, 0));
         }
     }
@@ -135,7 +135,7 @@ impl Draft {
     pub fn moves(&mut self, from: &str, to: &str, probability: &str) {
         let (from_number, to_number) = (self.state(from, 0, 0), self.state(to, 0, 0));
         self.states[from_number as usize].row = Some(0);
-        let value = self.written(probability, Some(from_number), Place::default());
+        let value = self.written(probability, Some(from_number), 0, 0);
         self.moves.push(DraftMove { from: from_number, to: to_number, value, line: 0 });
     }
 
@@ -176,9 +176,38 @@ impl Draft {
             return *number;
         }
         let number = self.states.len() as u32;
-        self.index.insert(name.to_owned(), number);
-        self.states.push(DraftState { name: name.to_owned(), line, file, row: None, absorbing: None, faulty: false });
+        let name: Arc<str> = Arc::from(name);
+        self.index.insert(Arc::clone(&name), number);
+        self.states.push(DraftState { name, line, file, row: None, absorbing: None, faulty: false });
         number
+    }
+
+    /// Numbers the states anew: first those that have moves, in the given order, then the declared absorbing ones, then all
+    /// other targets, as a reader does that knows the states with moves before it looks at targets.
+    pub(super) fn renumber(&mut self, leaving: &[u32]) {
+        let declared: Vec<String> = self.declared.iter().map(|(name, _)| name.clone()).collect();
+        self.declare();
+        let declared = declared.iter().filter_map(|name| self.known_state(name));
+        let mut number_of = vec![u32::MAX; self.states.len()];
+        let mut next = 0;
+        for state in leaving.iter().copied().chain(declared).chain(0..self.states.len() as u32) {
+            let number = &mut number_of[state as usize];
+            if *number == u32::MAX {
+                *number = next;
+                next += 1;
+            }
+        }
+        if number_of.is_sorted() {
+            return;
+        }
+        let mut states: Vec<(u32, DraftState)> =
+            number_of.iter().copied().zip(std::mem::take(&mut self.states)).collect();
+        states.sort_unstable_by_key(|(number, _)| *number);
+        self.states = states.into_iter().map(|(_, state)| state).collect();
+        self.index.values_mut().for_each(|state| *state = number_of[*state as usize]);
+        for one in &mut self.moves {
+            (one.from, one.to) = (number_of[one.from as usize], number_of[one.to as usize]);
+        }
     }
 
     pub(super) fn known_state(&self, name: &str) -> Option<u32> {
@@ -194,7 +223,7 @@ impl Draft {
     }
 
     /// Reads the probability of a move of a state, or a share of the start; what is wrong with it becomes a fault.
-    pub(super) fn written(&mut self, text: &str, state: Option<u32>, place: Place) -> Option<Written> {
+    pub(super) fn written(&mut self, text: &str, state: Option<u32>, file: usize, line: u64) -> Option<Written> {
         let text = text.trim();
         if text == "rest" {
             return Some(Written::Rest);
@@ -207,6 +236,7 @@ impl Draft {
             Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), IN_RANGE),
             Err(reason) => (FaultKind::NotANumber, reason.to_string(), HOW_TO_WRITE),
         };
+        let place = self.place(file, line);
         let shown = shortened(text);
         let what = if text.is_empty() { "a value".to_owned() } else { format!("`{shown}`") };
         let fault = match state {
@@ -214,7 +244,7 @@ impl Draft {
                 let state = &mut self.states[state as usize];
                 state.faulty = true;
                 let said = format!("{what} among the moves of `{}` {reason}", state.name);
-                Fault::new(kind, place, said, remedy).about(state.name.clone())
+                Fault::new(kind, place, said, remedy).about(&*state.name)
             }
             None => {
                 self.start_faulty = true;

@@ -21,6 +21,7 @@ mod check_ends;
 mod classes;
 mod draft;
 mod fault;
+mod input;
 mod number;
 mod progress;
 mod quantity;

@@ -196,6 +196,9 @@ impl ExactRow {
     /// A row that is off by at most [`LARGEST_CORRECTION`] keeps its leaves when it has a stay that can absorb the
     /// difference, and is divided by its sum otherwise: no stay and no exit is ever created.
     pub(super) fn normalise(moves: &[(u32, Number)], stay: Option<u32>, rest: Option<Rest>) -> RowOutcome {
+        if let Some(row) = Self::short(moves, rest) {
+            return RowOutcome::Exact(row);
+        }
         let common = moves.iter().fold(UBig::ONE, |common, (_, value)| lcm(common, &denominator(value)));
         let mut targets: Vec<u32> = moves.iter().map(|(to, _)| *to).collect();
         let mut numerators: Vec<UBig> = moves.iter().map(|(_, value)| numerator_over(value, &common)).collect();
@@ -227,6 +230,42 @@ impl ExactRow {
             }
         }
         RowOutcome::Corrected { row: Self::reduced(targets, numerators, total), sum }
+    }
+
+    /// A row of short decimals that sums to one as written: nearly every row, so it is worth its own arithmetic.
+    fn short(moves: &[(u32, Number)], rest: Option<Rest>) -> Option<Self> {
+        let short = |number: &Number| match number {
+            Number::Decimal { mantissa, scale } => Some((*mantissa, *scale)),
+            Number::Ratio(_) => None,
+        };
+        let (mut largest, mut total) = (0, 0u64);
+        for (_, number) in moves {
+            largest = largest.max(short(number)?.1);
+        }
+        let mut denominator = 10u64.pow(u32::from(largest));
+        let (mut targets, mut numerators) = (Vec::with_capacity(moves.len() + 1), Vec::with_capacity(moves.len() + 1));
+        for (to, number) in moves {
+            let (mantissa, scale) = short(number)?;
+            let numerator = mantissa.checked_mul(10u64.pow(u32::from(largest - scale)))?;
+            total = total.checked_add(numerator)?;
+            targets.push(*to);
+            numerators.push(numerator);
+        }
+        if let Some(rest) = rest {
+            targets.insert(rest.place, rest.to);
+            numerators.insert(rest.place, denominator.checked_sub(total)?);
+        } else if total != denominator {
+            return None;
+        }
+        let common = numerators.iter().fold(denominator, |common, numerator| common.gcd(*numerator));
+        denominator /= common;
+        numerators.iter_mut().for_each(|numerator| *numerator /= common);
+        if numerators.contains(&0) {
+            let mut kept = numerators.iter().map(|numerator| *numerator != 0);
+            targets.retain(|_| kept.next() == Some(true));
+            numerators.retain(|numerator| *numerator != 0);
+        }
+        Some(Self { targets, values: Values::Narrow { numerators, denominator } })
     }
 
     fn reduced(targets: Vec<u32>, numerators: Vec<UBig>, denominator: UBig) -> Self {

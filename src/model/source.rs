@@ -1,7 +1,6 @@
 //! From a path or a text to a checked model.
 
 use std::ffi::OsStr;
-use std::fs;
 use std::path::Path;
 use std::sync::Arc;
 
@@ -9,7 +8,8 @@ use sha2::{Digest, Sha256};
 
 use super::draft::Draft;
 use super::fault::{Fault, FaultKind, ModelError, Place};
-use super::{InputFile, Model, table, toml_file};
+use super::input::Input;
+use super::{Model, table, toml_file};
 
 /// What a table cannot say of itself.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
@@ -26,23 +26,21 @@ impl Model {
     /// # Errors
     /// [`ModelError::Read`] when a file cannot be read, [`ModelError::Faulty`] with every fault otherwise.
     pub fn read(path: &Path, options: &ReadOptions) -> Result<Self, ModelError> {
-        let (bytes, input) = read_bytes(path)?;
-        let shown = path.display().to_string();
+        let mut input = Input::open(path)?;
         let is_toml = path.extension().and_then(OsStr::to_str).is_some_and(|end| end.eq_ignore_ascii_case("toml"));
-        let mut inputs = vec![input];
-        let mut draft = if is_toml {
-            let text = std::str::from_utf8(&bytes).map_err(|error| not_text(&shown, &bytes, error.valid_up_to()))?;
-            let directory = path.parent().unwrap_or(Path::new(""));
-            let (draft, more) = toml_file::read(text, Some(&shown), directory)?;
-            inputs.extend(more);
-            draft
+        let (mut draft, more) = if is_toml {
+            let bytes = input.whole();
+            let text = std::str::from_utf8(&bytes).map_err(|error| not_text(input.name(), &bytes, error.valid_up_to()));
+            toml_file::read(text?, Some(input.name()), path.parent().unwrap_or(Path::new("")))?
         } else {
             let mut draft = Draft::new(path.file_stem().and_then(OsStr::to_str).unwrap_or_default());
-            draft.files.push(Arc::from(shown.as_str()));
+            draft.files.push(Arc::from(input.name()));
             draft.declare_all(options);
-            table::read(&bytes, &mut draft);
-            draft
+            table::read(&mut input, &mut draft);
+            (draft, Vec::new())
         };
+        let mut inputs = vec![input.finish()?];
+        inputs.extend(more);
         draft.apply(options);
         let mut model = draft.check()?;
         model.inputs = inputs;
@@ -64,7 +62,7 @@ impl Model {
     pub fn from_table(text: &str, options: &ReadOptions) -> Result<Self, ModelError> {
         let mut draft = Draft::default();
         draft.declare_all(options);
-        table::read(text.as_bytes(), &mut draft);
+        table::read(&mut Input::new(text.as_bytes(), String::new()), &mut draft);
         draft.apply(options);
         draft.check()
     }
@@ -83,13 +81,6 @@ impl Draft {
             self.start(start);
         }
     }
-}
-
-/// The bytes of a file and its entry among the inputs.
-pub(super) fn read_bytes(path: &Path) -> Result<(Vec<u8>, InputFile), ModelError> {
-    let bytes = fs::read(path).map_err(|source| ModelError::Read { path: path.to_owned(), source })?;
-    let sha256 = hexadecimal(Sha256::new_with_prefix(&bytes));
-    Ok((bytes, InputFile { file: path.display().to_string(), sha256 }))
 }
 
 /// A hash as it is shown.

@@ -2,10 +2,11 @@
 
 use std::collections::HashMap;
 
-use csv::{ByteRecord, StringRecord};
+use csv::ByteRecord;
 
 use super::draft::{Draft, DraftMove, Written};
 use super::fault::{Fault, FaultKind, did_you_mean, nearest, shortened};
+use super::input::Input;
 use super::number::Number;
 use super::records::{self, Records, decimal_point};
 
@@ -15,39 +16,44 @@ const COLUMNS: [&str; 3] = ["from", "to", "probability"];
 /// Lines that begin with it are comments.
 const COMMENT: Option<u8> = Some(b'#');
 
-/// The rows of a table as text.
-struct Table<'a> {
-    records: Records<&'a [u8]>,
+/// The rows of a table as text, one at a time.
+struct Table<'i, 's> {
+    records: Records<&'i mut Input<'s>>,
     delimiter: u8,
     row: ByteRecord,
 }
 
-impl<'a> Table<'a> {
-    fn of(bytes: &'a [u8]) -> Self {
-        let delimiter = records::delimiter(bytes, COMMENT);
-        Self { records: Records::new(bytes, delimiter, COMMENT), delimiter, row: ByteRecord::new() }
+impl<'i, 's> Table<'i, 's> {
+    fn of(input: &'i mut Input<'s>) -> Self {
+        let delimiter = records::delimiter(input.head(), COMMENT);
+        Self { records: Records::new(input, delimiter, COMMENT), delimiter, row: ByteRecord::new() }
     }
 
-    /// The next row that is not blank, and its line. Rows that are not text become faults.
-    fn next(&mut self, draft: &mut Draft) -> Option<(StringRecord, u64)> {
-        // Memory can always be read.
+    /// Reads the next row that is not blank; gives its line. Rows that are not text become faults.
+    fn next(&mut self, draft: &mut Draft) -> Option<u64> {
+        // An input always reads; see there.
         while self.records.read(&mut self.row).unwrap_or(false) {
             let line = self.records.line(&self.row);
-            match StringRecord::from_byte_record(self.row.clone()) {
-                Ok(mut row) => {
-                    row.trim();
-                    if !row.iter().all(str::is_empty) {
-                        return Some((row, line));
-                    }
-                }
-                Err(_) => {
-                    let place = draft.place(draft.moves_file, line);
-                    let said = "the line is not UTF-8 text";
-                    draft.fault(Fault::new(FaultKind::Syntax, place, said, "save the file as UTF-8"));
-                }
+            let is_text = |cell| std::str::from_utf8(cell).is_ok();
+            if !self.row.as_slice().is_ascii() && !self.row.iter().all(is_text) {
+                let place = draft.place(draft.moves_file, line);
+                let said = "the line is not UTF-8 text";
+                draft.fault(Fault::new(FaultKind::Syntax, place, said, "save the file as UTF-8"));
+            } else if !self.cells().all(str::is_empty) {
+                return Some(line);
             }
         }
         None
+    }
+
+    /// A cell of the row that was read last, without the blanks around it.
+    fn cell(&self, column: usize) -> Option<&str> {
+        // Rows that are not text never get here.
+        self.row.get(column).map(|cell| std::str::from_utf8(cell).unwrap_or_default().trim())
+    }
+
+    fn cells(&self) -> impl Iterator<Item = &str> {
+        (0..self.row.len()).filter_map(|column| self.cell(column))
     }
 
     /// The first row, the line that the table is known by.
@@ -59,15 +65,15 @@ impl<'a> Table<'a> {
             draft.fault(Fault::new(FaultKind::Shape, place, "the table is empty", "give it a header and a row a move"));
         }
         draft.moves_unread = draft.faults.len() > faults;
-        let (row, line) = header.filter(|_| !draft.moves_unread)?;
-        Some((row.iter().map(str::to_owned).collect(), line))
+        let line = header.filter(|_| !draft.moves_unread)?;
+        Some((self.cells().map(str::to_owned).collect(), line))
     }
 }
 
 /// Reads a table that is a model by itself: a list of moves if its header says so, a square table otherwise.
-pub(super) fn read(bytes: &[u8], draft: &mut Draft) {
+pub(super) fn read(input: &mut Input<'_>, draft: &mut Draft) {
     draft.lone_stay_is_absorbing = true;
-    let mut table = Table::of(bytes);
+    let mut table = Table::of(input);
     let Some((header, line)) = table.header(draft) else { return };
     // Two of the three names show what is meant, so that a misspelt third is told.
     if COLUMNS.iter().filter(|name| header.iter().any(|known| known.eq_ignore_ascii_case(name))).count() >= 2 {
@@ -78,13 +84,13 @@ pub(super) fn read(bytes: &[u8], draft: &mut Draft) {
 }
 
 /// Reads a list of moves into the draft.
-pub(super) fn read_moves(bytes: &[u8], draft: &mut Draft) {
-    let mut table = Table::of(bytes);
+pub(super) fn read_moves(input: &mut Input<'_>, draft: &mut Draft) {
+    let mut table = Table::of(input);
     let Some((header, line)) = table.header(draft) else { return };
     list_of_moves(table, &header, line, draft);
 }
 
-fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
+fn list_of_moves(mut table: Table<'_, '_>, header: &[String], header_line: u64, draft: &mut Draft) {
     let file = draft.moves_file;
     let is_column = |known: &str| COLUMNS.iter().any(|name| name.eq_ignore_ascii_case(known));
     let mut columns = [None; 3];
@@ -103,37 +109,42 @@ fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draf
         draft.moves_unread = true;
         return;
     };
-    let mut pending: Vec<(u32, String, String, u64)> = Vec::new();
-    while let Some((row, line)) = table.next(draft) {
-        let from_state = row.get(from).map(|name| draft.state(name, file, line));
-        if let Some(state) = from_state {
-            draft.states[state as usize].row.get_or_insert(line);
+    // States are numbered as they are met, and anew when it is known which of them have moves.
+    let mut leaving: Vec<u32> = Vec::new();
+    while let Some(line) = table.next(draft) {
+        let from_state = table.cell(from).map(|name| match leaving.last() {
+            // Lists are mostly sorted by the state that is left.
+            Some(last) if *draft.states[*last as usize].name == *name => *last,
+            _ => draft.state(name, file, line),
+        });
+        if let Some(state) = from_state
+            && draft.states[state as usize].row.is_none()
+        {
+            draft.states[state as usize].row = Some(line);
+            leaving.push(state);
         }
-        let too_long = row.iter().skip(header.len()).any(|cell| !cell.is_empty());
-        match (from_state, row.get(to), row.get(probability)) {
+        let too_long = (header.len()..table.row.len()).any(|column| table.cell(column) != Some(""));
+        match (from_state, table.cell(to), table.cell(probability)) {
             (Some(from), Some(to), Some(value)) if !too_long => {
-                pending.push((from, to.to_owned(), decimal_point(value, table.delimiter), line));
+                let to = draft.state(to, file, line);
+                add_move(draft, from, to, &decimal_point(value, table.delimiter), line);
             }
             _ => {
-                let said = format!("the line has {} cells, the header {}", row.len(), header.len());
+                let said = format!("the line has {} cells, the header {}", table.row.len(), header.len());
                 let remedy = "give every line the cells of the header; put quotes around a cell with a comma in it";
                 let mut fault = Fault::new(FaultKind::Shape, draft.place(file, line), said, remedy);
-                fault.state = row.get(from).map(str::to_owned);
+                fault.state = table.cell(from).map(str::to_owned);
                 if let Some(state) = from_state {
                     draft.states[state as usize].faulty = true;
                 }
-                draft.fault(fault.valued(shortened(&row.iter().collect::<Vec<_>>().join(","))));
+                draft.fault(fault.valued(shortened(&table.cells().collect::<Vec<_>>().join(","))));
             }
         }
     }
-    draft.declare();
-    for (from, to, value, line) in pending {
-        let to = draft.state(&to, file, line);
-        add_move(draft, from, to, &value, line);
-    }
+    draft.renumber(&leaving);
 }
 
-fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
+fn square(mut table: Table<'_, '_>, header: &[String], header_line: u64, draft: &mut Draft) {
     let file = draft.moves_file;
     let names = &header[1..];
     let mut refused = |kind, said: String, remedy: &str| {
@@ -160,8 +171,8 @@ fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut
     }
     let mut seen: HashMap<String, u64> = HashMap::new();
     let mut column_sums = vec![0.0; names.len()];
-    while let Some((row, line)) = table.next(draft) {
-        let name = &row[0];
+    while let Some(line) = table.next(draft) {
+        let name = table.cell(0).unwrap_or_default();
         let place = draft.place(file, line);
         if !column_of.contains_key(name) {
             let remedy = did_you_mean(name, names.iter().map(String::as_str), "every row needs a column of its name");
@@ -176,14 +187,14 @@ fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut
         }
         let from = draft.state(name, file, line);
         draft.states[from as usize].row = Some(line);
-        if row.len() != header.len() {
-            let said = format!("the row of `{name}` has {} cells, the header {}", row.len(), header.len());
+        if table.row.len() != header.len() {
+            let said = format!("the row of `{name}` has {} cells, the header {}", table.row.len(), header.len());
             draft
                 .fault(Fault::new(FaultKind::Shape, place, said, "give every row the cells of the header").about(name));
             draft.states[from as usize].faulty = true;
             continue;
         }
-        for (column, written) in row.iter().skip(1).enumerate().filter(|(_, written)| !written.is_empty()) {
+        for (column, written) in table.cells().skip(1).enumerate().filter(|(_, written)| !written.is_empty()) {
             let written = decimal_point(written, table.delimiter);
             if let Ok(number) = Number::parse(&written) {
                 if number.is_zero() {
@@ -225,7 +236,6 @@ fn hint_at_transposition(draft: &mut Draft, column_sums: &[f64]) {
 }
 
 fn add_move(draft: &mut Draft, from: u32, to: u32, value: &str, line: u64) {
-    let place = draft.place(draft.moves_file, line);
-    let value = draft.written(value, Some(from), place);
+    let value = draft.written(value, Some(from), draft.moves_file, line);
     draft.moves.push(DraftMove { from, to, value, line });
 }

@@ -10,10 +10,11 @@ use toml::de::{DeTable, DeValue};
 
 use super::draft::{Draft, DraftMove, NamedList, Written};
 use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean, shortened};
+use super::input::Input;
 use super::number::Number;
 use super::quantity::Quantity;
+use super::table;
 use super::tolerance::{Tolerance, ToleranceKey};
-use super::{source, table};
 
 const KEYS: [&str; 11] = [
     "title",
@@ -187,7 +188,7 @@ impl Reader<'_> {
             for (to, value) in row {
                 let line = self.line(&to.span());
                 let to = self.draft.state(to.get_ref(), 0, line);
-                let value = self.draft.written(&self.as_written(value), Some(from), self.draft.place(0, line));
+                let value = self.draft.written(&self.as_written(value), Some(from), 0, line);
                 self.draft.moves.push(DraftMove { from, to, value, line });
             }
         }
@@ -199,11 +200,11 @@ impl Reader<'_> {
             return Ok(());
         };
         let path = directory.join(&name);
-        let (bytes, input) = source::read_bytes(&path)?;
-        self.inputs.push(input);
-        self.draft.files.push(path.display().to_string().into());
+        let mut input = Input::open(&path)?;
+        self.draft.files.push(input.name().into());
         self.draft.moves_file = self.draft.files.len() - 1;
-        table::read_moves(&bytes, &mut self.draft);
+        table::read_moves(&mut input, &mut self.draft);
+        self.inputs.push(input.finish()?);
         Ok(())
     }
 
@@ -219,8 +220,7 @@ impl Reader<'_> {
                 for (name, share) in shares {
                     let line = self.line(&name.span());
                     let state = self.draft.state(name.get_ref(), 0, line);
-                    let place = self.draft.place(0, line);
-                    if let Some(share) = self.draft.written(&self.as_written(share), None, place) {
+                    if let Some(share) = self.draft.written(&self.as_written(share), None, 0, line) {
                         self.draft.starts.push((state, share, line));
                     }
                 }
