@@ -16,7 +16,8 @@ use crate::sampling::{Plan, Sampler, Tally, sample};
 
 /// Reads a model and says what deserves a look.
 pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
-    let options = ReadOptions { start: reading.start.clone(), absorbing: reading.absorbing.clone() };
+    let options =
+        ReadOptions { start: reading.start.clone(), absorbing: reading.absorbing.clone(), ..ReadOptions::default() };
     let model = Model::read(path, &options)?;
     look_at(model.warnings(), reading)?;
     Ok(model)

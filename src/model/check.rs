@@ -7,11 +7,15 @@ use super::chain::{Chain, NO_END, Structure};
 use super::draft::{Draft, DraftMove, DraftState, Written};
 use super::fault::{Fault, FaultKind, LISTED, ModelError, Place, Warning, WarningKind, did_you_mean};
 use super::number::Number;
-use super::row::{ExactRow, Rest, RowOutcome, Rows};
+use super::row::{ExactRow, LARGEST_CORRECTION, Rest, RowOutcome, Rows};
 use super::tolerance::Tolerances;
 
 /// Names that are compared, at most, in search of those that were meant.
 const SUGGESTION_WORK: usize = 1_000_000;
+/// What a matrix can do about a wrong sum.
+const CORRECT: &str = "correct one";
+/// A row sum that is off by no more than this may come from rounding.
+const ROUNDED: f64 = 0.01;
 const CORRECT_ONE: &str = "correct one, or give one of them as \"rest\"";
 
 impl Draft {
@@ -26,7 +30,8 @@ impl Draft {
         self.check_names();
         let moves = self.moves_by_state();
         let mut checked = Checked::default();
-        let rows = self.check_rows(&moves, &mut checked);
+        // Rows that were not read whole would be told for what is missing.
+        let rows = if self.moves_unread { Rows::default() } else { self.check_rows(&moves, &mut checked) };
         drop(moves);
         let start = self.check_start(&mut checked);
         if !self.moves_are_there() {
@@ -127,7 +132,27 @@ impl Draft {
             let row = self.check_row(state, moves, checked);
             rows.push(row.unwrap_or_else(|| ExactRow::targets_only(moves.iter().map(|one| one.to))));
         }
+        self.hint_at_transposition(moves);
         rows
+    }
+
+    /// When every column of a matrix sums to one and some row does not, it is most likely written the other way round.
+    fn hint_at_transposition(&mut self, moves: &[DraftMove]) {
+        let Some(remedy) = self.turn_hint else { return };
+        if !self.faults.iter().any(|fault| fault.kind == FaultKind::RowSum) {
+            return;
+        }
+        let mut column_sums = vec![0.0; self.states.len()];
+        for one in moves {
+            if let Some(Written::Number(number)) = &one.value {
+                column_sums[one.to as usize] += number.to_f64();
+            }
+        }
+        if column_sums.iter().all(|sum| (sum - 1.0).abs() <= LARGEST_CORRECTION) {
+            let said = "every column sums to 1, but not every row: the table seems to be meant the other way round";
+            let place = self.place(self.moves_file, 0);
+            self.fault(Fault::new(FaultKind::RowSum, place, said, remedy));
+        }
     }
 
     fn check_row(&mut self, state: usize, moves: &[DraftMove], checked: &mut Checked) -> Option<ExactRow> {
@@ -163,7 +188,8 @@ impl Draft {
             self.fault(fault(FaultKind::RowSum, format!("the row of `{name}` holds no moves"), remedy));
             return None;
         }
-        match ExactRow::normalise(&numbers, Some(state as u32), rests.first().copied()) {
+        let rescale = self.rescale_rows.as_ref();
+        match ExactRow::normalise(&numbers, Some(state as u32), rests.first().copied(), rescale) {
             RowOutcome::Exact(row) => Some(row),
             RowOutcome::Corrected { row, sum } => {
                 checked.correct(&place, &format!("moves of `{name}`"), sum.to_f64().value());
@@ -172,7 +198,11 @@ impl Draft {
             RowOutcome::WrongSum { sum } => {
                 let sum = sum.to_f64().value();
                 let text = format!("the moves of `{name}` sum to {sum}, not 1");
-                self.fault(fault(FaultKind::RowSum, text, CORRECT_ONE).valued(sum.to_string()));
+                let mut remedy = if self.turn_hint.is_some() { CORRECT.to_owned() } else { CORRECT_ONE.to_owned() };
+                if (sum - 1.0).abs() <= ROUNDED {
+                    remedy.push_str("; if the numbers were rounded, --rescale-rows LIMIT divides rows by their sum");
+                }
+                self.fault(fault(FaultKind::RowSum, text, &remedy).valued(sum.to_string()));
                 None
             }
             RowOutcome::NothingLeft { sum } => {
@@ -267,7 +297,7 @@ impl Draft {
         }
         let mut row = ExactRow::targets_only(starts.iter().map(|(state, ..)| *state));
         if !self.start_faulty {
-            match ExactRow::normalise(&numbers, None, rests.first().copied()) {
+            match ExactRow::normalise(&numbers, None, rests.first().copied(), None) {
                 RowOutcome::Exact(exact) => row = exact,
                 RowOutcome::Corrected { row: exact, sum } => {
                     checked.correct(&place, "shares of the start", sum.to_f64().value());

@@ -92,6 +92,10 @@ pub struct Draft {
     pub(super) moves_file: usize,
     /// The moves could not be read, so nothing is known of states that seem to lack them.
     pub(super) moves_unread: bool,
+    /// What to do when every column of the table sums to one and not every row; `None` for what is no matrix.
+    pub(super) turn_hint: Option<&'static str>,
+    /// Rows whose sum is off by no more than this are divided by it, as an option allows.
+    pub(super) rescale_rows: Option<Number>,
     /// A row with only a stay of one is an end without a word, as tables have no other way to say it.
     pub(super) lone_stay_is_absorbing: bool,
     pub(super) classes: Vec<NamedList>,
@@ -228,14 +232,18 @@ impl Draft {
         if text == "rest" {
             return Some(Written::Rest);
         }
-        let (kind, reason, remedy) = match Number::parse(text) {
-            _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), HOW_TO_WRITE),
-            Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), IN_RANGE),
-            Ok(number) if number.exceeds_one() => (FaultKind::AboveOne, "is above 1".to_owned(), IN_RANGE),
-            Ok(number) => return Some(Written::Number(number)),
-            Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), IN_RANGE),
-            Err(reason) => (FaultKind::NotANumber, reason.to_string(), HOW_TO_WRITE),
-        };
+        match probability(text, HOW_TO_WRITE) {
+            Ok(number) => Some(Written::Number(number)),
+            Err(bad) => {
+                self.refuse_value(text, bad, state, file, line);
+                None
+            }
+        }
+    }
+
+    /// Tells of a value among the moves of a state, or among the shares of the start, that is no probability.
+    pub(super) fn refuse_value(&mut self, text: &str, bad: BadValue, state: Option<u32>, file: usize, line: u64) {
+        let BadValue { kind, reason, remedy } = bad;
         let place = self.place(file, line);
         let shown = shortened(text);
         let what = if text.is_empty() { "a value".to_owned() } else { format!("`{shown}`") };
@@ -252,6 +260,26 @@ impl Draft {
             }
         };
         self.fault(fault.valued(shown));
-        None
     }
+}
+
+/// Why a text is no probability.
+#[derive(Debug)]
+pub(super) struct BadValue {
+    pub(super) kind: FaultKind,
+    pub(super) reason: String,
+    pub(super) remedy: &'static str,
+}
+
+/// Reads a probability; `how_to_write` is the remedy if it is no number at all.
+pub(super) fn probability(text: &str, how_to_write: &'static str) -> Result<Number, BadValue> {
+    let (kind, reason, remedy) = match Number::parse(text) {
+        _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), how_to_write),
+        Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), IN_RANGE),
+        Ok(number) if number.exceeds_one() => (FaultKind::AboveOne, "is above 1".to_owned(), IN_RANGE),
+        Ok(number) => return Ok(number),
+        Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), IN_RANGE),
+        Err(reason) => (FaultKind::NotANumber, reason.to_string(), how_to_write),
+    };
+    Err(BadValue { kind, reason, remedy })
 }

@@ -3,11 +3,12 @@
 use std::fs::File;
 use std::io::{self, Read};
 use std::path::Path;
+use std::sync::Arc;
 
 use sha2::{Digest, Sha256};
 
 use super::InputFile;
-use super::fault::ModelError;
+use super::fault::{Fault, FaultKind, ModelError, Place};
 use super::source::hexadecimal;
 
 /// Bytes at the beginning that can be looked at before they are read.
@@ -97,6 +98,19 @@ impl Read for Input<'_> {
     }
 }
 
+/// Bytes as text.
+///
+/// # Errors
+/// The line that is none.
+pub(super) fn as_text<'b>(bytes: &'b [u8], file: &str) -> Result<&'b str, ModelError> {
+    std::str::from_utf8(bytes).map_err(|error| {
+        let line = bytes[..error.valid_up_to()].iter().filter(|byte| **byte == b'\n').count() as u64 + 1;
+        let place = Place { file: Some(Arc::from(file)), line: Some(line) };
+        let remedy = "save the file as UTF-8";
+        ModelError::Faulty(vec![Fault::new(FaultKind::Syntax, place, "the file is not UTF-8 text", remedy)])
+    })
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -110,7 +124,7 @@ mod tests {
     impl Read for Failing {
         fn read(&mut self, buffer: &mut [u8]) -> io::Result<usize> {
             self.calls += 1;
-            if self.calls % 2 == 0 {
+            if self.calls.is_multiple_of(2) {
                 return Err(io::ErrorKind::Interrupted.into());
             }
             if self.given > 100_000 {

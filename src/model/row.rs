@@ -169,7 +169,7 @@ pub(super) struct Rest {
 pub(super) enum RowOutcome {
     /// As written, it sums to one.
     Exact(ExactRow),
-    /// It summed to `sum`, within [`LARGEST_CORRECTION`] of one, and was corrected.
+    /// It summed to `sum`, near enough to one, and was corrected.
     Corrected { row: ExactRow, sum: RBig },
     /// It does not sum to one.
     WrongSum { sum: RBig },
@@ -195,7 +195,13 @@ impl ExactRow {
     ///
     /// A row that is off by at most [`LARGEST_CORRECTION`] keeps its leaves when it has a stay that can absorb the
     /// difference, and is divided by its sum otherwise: no stay and no exit is ever created.
-    pub(super) fn normalise(moves: &[(u32, Number)], stay: Option<u32>, rest: Option<Rest>) -> RowOutcome {
+    /// Where `rescale` allows a larger difference, the row is divided by its sum as well.
+    pub(super) fn normalise(
+        moves: &[(u32, Number)],
+        stay: Option<u32>,
+        rest: Option<Rest>,
+        rescale: Option<&Number>,
+    ) -> RowOutcome {
         if let Some(row) = Self::short(moves, rest) {
             return RowOutcome::Exact(row);
         }
@@ -217,8 +223,11 @@ impl ExactRow {
         }
         let sum = as_sum(&total);
         let off = if total > common { &total - &common } else { &common - &total };
-        if total == UBig::ZERO || off * UBig::from(CORRECTION_PARTS) > common {
-            return RowOutcome::WrongSum { sum };
+        if &off * UBig::from(CORRECTION_PARTS) > common {
+            if total == UBig::ZERO || rescale.is_none_or(|limit| as_sum(&off) > limit.to_ratio()) {
+                return RowOutcome::WrongSum { sum };
+            }
+            return RowOutcome::Corrected { row: Self::reduced(targets, numerators, total), sum };
         }
         let at_stay = stay.and_then(|stay| targets.iter().position(|to| *to == stay));
         // A stay written as zero is none, and none is created.
@@ -332,7 +341,7 @@ mod tests {
     #[test]
     fn fractions_and_decimals_meet_exactly_and_rest_takes_what_is_left() {
         let RowOutcome::Exact(row) =
-            ExactRow::normalise(&written(&[(1, "5/12"), (2, "0.25")]), Some(0), Some(Rest { place: 1, to: 3 }))
+            ExactRow::normalise(&written(&[(1, "5/12"), (2, "0.25")]), Some(0), Some(Rest { place: 1, to: 3 }), None)
         else {
             panic!("sums below one with a rest");
         };
@@ -342,7 +351,7 @@ mod tests {
     #[test]
     fn a_written_stay_absorbs_the_difference_and_leaves_are_untouched() {
         let moves = written(&[(0, "0.9999999999"), (1, "0.00000000005")]);
-        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None, None) else {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(0, "19999999999/20000000000"), (1, "1/20000000000")]));
@@ -351,7 +360,7 @@ mod tests {
     #[test]
     fn a_correction_creates_no_stay() {
         let moves = written(&[(0, "0"), (1, "0.9999999999")]);
-        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None, None) else {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(1, "1")]));
@@ -360,7 +369,7 @@ mod tests {
     #[test]
     fn without_a_stay_every_entry_is_divided_by_the_sum() {
         let moves = written(&[(1, "0.3333333333"), (2, "0.3333333333"), (3, "0.3333333333")]);
-        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None, None) else {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(1, "1/3"), (2, "1/3"), (3, "1/3")]));
@@ -368,16 +377,16 @@ mod tests {
 
     #[test]
     fn a_sum_far_from_one_or_nothing_left_is_said() {
-        let off = ExactRow::normalise(&written(&[(1, "0.5"), (2, "0.4")]), None, None);
+        let off = ExactRow::normalise(&written(&[(1, "0.5"), (2, "0.4")]), None, None, None);
         assert!(matches!(off, RowOutcome::WrongSum { sum } if sum.to_string() == "9/10"));
-        let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(Rest { place: 2, to: 3 }));
+        let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(Rest { place: 2, to: 3 }), None);
         assert!(matches!(full, RowOutcome::NothingLeft { sum } if sum.to_string() == "6/5"));
     }
 
     #[test]
     fn long_decimals_stay_exact_in_the_side_table() {
         let moves = written(&[(1, "1e-30")]);
-        let RowOutcome::Exact(row) = ExactRow::normalise(&moves, Some(0), Some(Rest { place: 1, to: 0 })) else {
+        let RowOutcome::Exact(row) = ExactRow::normalise(&moves, Some(0), Some(Rest { place: 1, to: 0 }), None) else {
             panic!("has a rest")
         };
         let row = shown(row);

@@ -4,7 +4,7 @@ use std::collections::HashMap;
 
 use csv::ByteRecord;
 
-use super::draft::{Draft, DraftMove, Written};
+use super::draft::{Draft, DraftMove};
 use super::fault::{Fault, FaultKind, did_you_mean, nearest, shortened};
 use super::input::Input;
 use super::number::Number;
@@ -70,27 +70,19 @@ impl<'i, 's> Table<'i, 's> {
     }
 }
 
-/// Reads a table that is a model by itself: a list of moves if its header says so, a square table otherwise.
-pub(super) fn read(input: &mut Input<'_>, draft: &mut Draft) {
-    draft.lone_stay_is_absorbing = true;
+/// Reads a table into the draft: a list of moves if its header says so, a square table otherwise.
+pub(super) fn read(input: &mut Input<'_>, transpose: bool, draft: &mut Draft) {
     let mut table = Table::of(input);
     let Some((header, line)) = table.header(draft) else { return };
     // Two of the three names show what is meant, so that a misspelt third is told.
     if COLUMNS.iter().filter(|name| header.iter().any(|known| known.eq_ignore_ascii_case(name))).count() >= 2 {
-        list_of_moves(table, &header, line, draft);
+        list_of_moves(table, &header, line, transpose, draft);
     } else {
-        square(table, &header, line, draft);
+        square(table, &header, line, transpose, draft);
     }
 }
 
-/// Reads a list of moves into the draft.
-pub(super) fn read_moves(input: &mut Input<'_>, draft: &mut Draft) {
-    let mut table = Table::of(input);
-    let Some((header, line)) = table.header(draft) else { return };
-    list_of_moves(table, &header, line, draft);
-}
-
-fn list_of_moves(mut table: Table<'_, '_>, header: &[String], header_line: u64, draft: &mut Draft) {
+fn list_of_moves(mut table: Table<'_, '_>, header: &[String], header_line: u64, transpose: bool, draft: &mut Draft) {
     let file = draft.moves_file;
     let is_column = |known: &str| COLUMNS.iter().any(|name| name.eq_ignore_ascii_case(known));
     let mut columns = [None; 3];
@@ -109,6 +101,7 @@ fn list_of_moves(mut table: Table<'_, '_>, header: &[String], header_line: u64, 
         draft.moves_unread = true;
         return;
     };
+    let (from, to) = if transpose { (to, from) } else { (from, to) };
     // States are numbered as they are met, and anew when it is known which of them have moves.
     let mut leaving: Vec<u32> = Vec::new();
     while let Some(line) = table.next(draft) {
@@ -144,7 +137,7 @@ fn list_of_moves(mut table: Table<'_, '_>, header: &[String], header_line: u64, 
     draft.renumber(&leaving);
 }
 
-fn square(mut table: Table<'_, '_>, header: &[String], header_line: u64, draft: &mut Draft) {
+fn square(mut table: Table<'_, '_>, header: &[String], header_line: u64, transpose: bool, draft: &mut Draft) {
     let file = draft.moves_file;
     let names = &header[1..];
     let mut refused = |kind, said: String, remedy: &str| {
@@ -166,47 +159,47 @@ fn square(mut table: Table<'_, '_>, header: &[String], header_line: u64, draft: 
             return refused(FaultKind::DuplicateName, said, "give every state one column");
         }
     }
-    for name in names {
-        draft.state(name, file, header_line);
+    let states: Vec<u32> = names.iter().map(|name| draft.state(name, file, header_line)).collect();
+    draft.turn_hint = Some(turn_hint(transpose));
+    if transpose {
+        draft.states.iter_mut().for_each(|state| state.row = Some(header_line));
     }
     let mut seen: HashMap<String, u64> = HashMap::new();
-    let mut column_sums = vec![0.0; names.len()];
     while let Some(line) = table.next(draft) {
         let name = table.cell(0).unwrap_or_default();
         let place = draft.place(file, line);
-        if !column_of.contains_key(name) {
+        let Some(own) = column_of.get(name).map(|column| states[*column]) else {
             let remedy = did_you_mean(name, names.iter().map(String::as_str), "every row needs a column of its name");
             let said = format!("the row `{name}` has no column");
             draft.fault(Fault::new(FaultKind::UnknownState, place, said, remedy).about(name));
             continue;
-        }
+        };
         if let Some(first) = seen.insert(name.to_owned(), line) {
             let said = format!("the row of `{name}` is there twice (first on line {first})");
             draft.fault(Fault::new(FaultKind::DuplicateName, place, said, "keep one").about(name));
             continue;
         }
-        let from = draft.state(name, file, line);
-        draft.states[from as usize].row = Some(line);
+        if !transpose {
+            draft.states[own as usize].row = Some(line);
+        }
         if table.row.len() != header.len() {
             let said = format!("the row of `{name}` has {} cells, the header {}", table.row.len(), header.len());
-            draft
-                .fault(Fault::new(FaultKind::Shape, place, said, "give every row the cells of the header").about(name));
-            draft.states[from as usize].faulty = true;
+            let remedy = "give every row the cells of the header";
+            draft.fault(Fault::new(FaultKind::Shape, place, said, remedy).about(name));
+            // The states that lack a move then.
+            let lacking = if transpose { states.as_slice() } else { &[own] };
+            lacking.iter().for_each(|state| draft.states[*state as usize].faulty = true);
             continue;
         }
-        for (column, written) in table.cells().skip(1).enumerate().filter(|(_, written)| !written.is_empty()) {
+        for (written, other) in table.cells().skip(1).zip(&states).filter(|(written, _)| !written.is_empty()) {
             let written = decimal_point(written, table.delimiter);
-            if let Ok(number) = Number::parse(&written) {
-                if number.is_zero() {
-                    continue;
-                }
-                column_sums[column] += number.to_f64();
+            if Number::parse(&written).is_ok_and(|number| number.is_zero()) {
+                continue;
             }
-            let to = draft.state(&names[column], file, header_line);
+            let (from, to) = if transpose { (*other, own) } else { (own, *other) };
             add_move(draft, from, to, &written, line);
         }
     }
-    hint_at_transposition(draft, &column_sums);
 }
 
 /// Whether a line is one of a list of moves, such as `a,b,0.5`, which a header never is.
@@ -216,22 +209,12 @@ fn is_a_move(line: &[String]) -> bool {
     !from.is_empty() && !is_number(from) && !is_number(to) && is_number(probability)
 }
 
-/// When every column sums to one and some row does not, the table is most likely written the other way round.
-fn hint_at_transposition(draft: &mut Draft, column_sums: &[f64]) {
-    let is_one = |sum: &f64| (sum - 1.0).abs() <= 1e-9;
-    if column_sums.is_empty() || !column_sums.iter().all(is_one) {
-        return;
-    }
-    let mut row_sums = vec![0.0; draft.states.len()];
-    for one in &draft.moves {
-        if let Some(Written::Number(number)) = &one.value {
-            row_sums[one.from as usize] += number.to_f64();
-        }
-    }
-    if !row_sums.iter().all(is_one) {
-        let said = "every column sums to 1, but not every row: the table seems to list moves from column to row";
-        let place = draft.place(draft.moves_file, 0);
-        draft.fault(Fault::new(FaultKind::RowSum, place, said, "transpose the table: one row for each state left"));
+/// What to do about a table of which every column sums to one and not every row.
+pub(super) fn turn_hint(is_turned: bool) -> &'static str {
+    if is_turned {
+        "read it without --transpose"
+    } else {
+        "transpose the table, or read it with --transpose: one row for each state left"
     }
 }
 
