@@ -1,5 +1,6 @@
 //! Models cut short and mutated at random: whatever the bytes, an answer or faults with remedies, and never a panic.
 
+mod arrays;
 mod models;
 
 use std::fs;
@@ -11,20 +12,28 @@ use tallystone::model::{Model, ModelError, ReadOptions};
 
 /// Reads bytes as every kind of model; a panic fails the test, an answer of either kind is fine.
 fn read_all(bytes: &[u8], directory: &Path) {
-    let options = ReadOptions { start: Some("intake".to_owned()), absorbing: vec!["shipped".to_owned()] };
-    let answers = match std::str::from_utf8(bytes) {
-        Ok(text) => [Model::from_toml(text), Model::from_table(text, &options)],
+    let options = ReadOptions {
+        start: Some("intake".to_owned()),
+        absorbing: vec!["shipped".to_owned()],
+        ..ReadOptions::default()
+    };
+    let turned = ReadOptions { transpose: true, ..options.clone() };
+    let mut answers: Vec<_> = [&options, &turned].map(|options| Model::read_from(bytes, "model", options)).into();
+    match std::str::from_utf8(bytes) {
+        Ok(text) => answers.extend([Model::from_toml(text), Model::from_table(text, &options)]),
+        Err(_) if bytes.starts_with(b"\x93NUMPY") => {}
         // Only a file can hold what is no text.
-        Err(_) => ["model.toml", "model.csv"].map(|name| {
+        Err(_) => answers.extend(["model.toml", "model.csv"].map(|name| {
             let path = directory.join(name);
             fs::write(&path, bytes).unwrap();
             let answer = Model::read(&path, &options);
             fs::remove_file(&path).unwrap();
             answer
-        }),
-    };
+        })),
+    }
     for error in answers.into_iter().filter_map(Result::err) {
-        assert!(!error.faults().is_empty() || matches!(error, ModelError::Read { .. }));
+        let is_whole = matches!(error, ModelError::Read { .. } | ModelError::Option { .. });
+        assert!(!error.faults().is_empty() || is_whole);
         assert!(error.faults().iter().all(|fault| !fault.remedy.is_empty() && !fault.text.is_empty()), "{error}");
     }
 }
@@ -51,8 +60,9 @@ fn mutated_models_never_panic() {
         b"\xff",
         b"\xef\xbb\xbf",
     ];
-    for (seed, good) in [models::TOML, models::MOVES, models::SQUARE].into_iter().enumerate() {
-        let good = good.as_bytes();
+    let array = arrays::bench();
+    let goods = [models::TOML, models::MOVES, models::SQUARE, arrays::MATRIX_MARKET].map(str::as_bytes);
+    for (seed, good) in goods.into_iter().chain([array.as_slice()]).enumerate() {
         for end in 0..=good.len() {
             read_all(&good[..end], directory.path());
         }

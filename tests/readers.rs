@@ -9,7 +9,7 @@ use tallystone::model::{Draft, Model, ReadOptions, WarningKind};
 
 fn options(start: &str, absorbing: &[&str]) -> ReadOptions {
     let absorbing = absorbing.iter().map(|name| (*name).to_owned()).collect();
-    ReadOptions { start: Some(start.to_owned()), absorbing }
+    ReadOptions { start: Some(start.to_owned()), absorbing, ..ReadOptions::default() }
 }
 
 fn windows(text: &str) -> String {

@@ -5,7 +5,7 @@ use std::path::PathBuf;
 use clap::{ArgGroup, Args, Parser, Subcommand, ValueEnum};
 
 use crate::compare::MOST_LOOKS;
-use crate::model::{Quantity, Tolerance, ToleranceKey};
+use crate::model::{Number, Quantity, Tolerance, ToleranceKey};
 
 /// More threads than any machine has cores only stand in each other's way.
 const MOST_THREADS: i64 = 1024;
@@ -57,12 +57,13 @@ pub(super) enum Command {
 #[derive(Debug, Args)]
 #[command(group(ArgGroup::new("what").required(true).args(["models", "demo"])))]
 pub(super) struct Check {
-    /// Model files: TOML, or a table of moves (CSV); one after the other, the worst verdict counts
+    /// Model files: TOML, a table of moves (CSV) or a matrix (.mtx, .npy); "-" is standard input. One is checked after the
+    /// other, and the worst verdict counts
     #[arg(value_name = "MODEL")]
     pub(super) models: Vec<PathBuf>,
     /// Check the built-in example model, a field-radio refurbishing bench
     // The example has its own start and ends; what would be ignored is refused.
-    #[arg(long, conflicts_with_all = ["start", "absorbing"])]
+    #[arg(long, conflicts_with_all = ["start", "absorbing", "state_names", "transpose", "rescale_rows"])]
     pub(super) demo: bool,
     #[command(flatten)]
     pub(super) reading: Reading,
@@ -79,7 +80,7 @@ pub(super) struct Check {
 
 #[derive(Debug, Args)]
 pub(super) struct Exact {
-    /// The model file: TOML, or a table of moves (CSV)
+    /// The model file: TOML, a table of moves (CSV) or a matrix (.mtx, .npy); "-" is standard input
     #[arg(value_name = "MODEL")]
     pub(super) model: PathBuf,
     #[command(flatten)]
@@ -93,7 +94,7 @@ pub(super) struct Exact {
 
 #[derive(Debug, Args)]
 pub(super) struct Sample {
-    /// The model file: TOML, or a table of moves (CSV)
+    /// The model file: TOML, a table of moves (CSV) or a matrix (.mtx, .npy); "-" is standard input
     #[arg(value_name = "MODEL")]
     pub(super) model: PathBuf,
     #[command(flatten)]
@@ -112,7 +113,7 @@ pub(super) struct Sample {
 
 #[derive(Debug, Args)]
 pub(super) struct Audit {
-    /// The model file: TOML, or a table of moves (CSV)
+    /// The model file: TOML, a table of moves (CSV) or a matrix (.mtx, .npy); "-" is standard input
     #[arg(value_name = "MODEL")]
     pub(super) model: PathBuf,
     /// Outcomes of your simulator: CSV with the columns end and time, optionally replication; "-" is standard input
@@ -143,6 +144,16 @@ pub(super) struct Reading {
     /// A state that is absorbing although the table has no row for it; repeatable
     #[arg(long, value_name = "STATE")]
     pub(super) absorbing: Vec<String>,
+    /// File with the names of the states of a matrix, one a line [default: the numbers of its rows]
+    #[arg(long, value_name = "FILE")]
+    pub(super) state_names: Option<PathBuf>,
+    /// The table lists moves from column to row; in a list of moves, from and to change places
+    #[arg(long)]
+    pub(super) transpose: bool,
+    /// Divide rows by their sum, with a warning, where it differs from 1 by no more than this, such as 1e-6; rows that differ
+    /// by no more than 1e-9 are corrected without it
+    #[arg(long, value_name = "LIMIT", value_parser = number)]
+    pub(super) rescale_rows: Option<Number>,
     /// Whether warnings about the model let the work go on
     #[arg(long, value_name = "WHAT", default_value = "allow")]
     pub(super) warnings: Warnings,
@@ -249,6 +260,10 @@ fn tolerance(text: &str) -> Result<(ToleranceKey, Tolerance), String> {
     let key = ToleranceKey::parse(name).map_err(|fault| fault.to_string())?;
     let value = Tolerance::parse(value).map_err(|text| format!("{text}; write 0.005 or \"1 %\""))?;
     Ok((key, value))
+}
+
+fn number(text: &str) -> Result<Number, String> {
+    Number::parse(text).map_err(|fault| format!("it {fault}; give a number such as 1e-6"))
 }
 
 fn probability(text: &str) -> Result<f64, String> {

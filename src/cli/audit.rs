@@ -3,7 +3,7 @@
 use std::time::Instant;
 
 use super::arguments::Audit;
-use super::failure::{Failure, of_verdict};
+use super::failure::{Failure, of_verdict, refused};
 use super::{Session, output, steps};
 use crate::audit::read_outcomes;
 use crate::compare::{Settings, Study};
@@ -12,7 +12,11 @@ use crate::report::{Body, Input};
 
 /// Reads the model, solves, reads the outcomes, compares, writes.
 pub(super) fn run(arguments: &Audit, session: &Session) -> Result<u8, Failure> {
-    let model = steps::read(&arguments.model, &arguments.reading)?;
+    if steps::is_standard_input(&arguments.model) && steps::is_standard_input(&arguments.outcomes) {
+        let text = "standard input, `-`, is named for the model and for the outcomes";
+        return Err(Failure::Usage(refused("usage", text, "give one of them as a file")));
+    }
+    let model = steps::read(&arguments.model, &arguments.reading, session)?;
     let mut inputs = steps::files_of(&model);
     inputs.push(&arguments.outcomes);
     output::look_at_destinations(&[arguments.output.json.as_deref()], &inputs)?;

@@ -20,6 +20,10 @@ pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
         let text = format!("--json holds one result, and {} models are given", arguments.models.len());
         return Err(Failure::Usage(refused("usage", text, "run one model at a time")));
     }
+    if arguments.models.iter().filter(|path| steps::is_standard_input(path)).count() > 1 {
+        let text = "standard input, `-`, is named for two models";
+        return Err(Failure::Usage(refused("usage", text, "give one of them as a file")));
+    }
     if arguments.demo {
         let model = demo::model()?;
         steps::look_at(model.warnings(), &arguments.reading)?;
@@ -32,7 +36,7 @@ pub(super) fn run(arguments: &Check, session: &Session) -> Result<u8, Failure> {
         if number > 0 && !arguments.output.quiet {
             output::print(|out| out.write_all(b"\n"))?;
         }
-        match steps::read(path, &arguments.reading).and_then(|model| one(&model, arguments, session)) {
+        match steps::read(path, &arguments.reading, session).and_then(|model| one(&model, arguments, session)) {
             Ok(verdict) => worst = worst.max(verdict),
             Err(failure @ (Failure::Data(_) | Failure::Io(_) | Failure::Undecided(_)))
                 if arguments.models.len() > 1 =>

@@ -12,7 +12,7 @@ use crate::report::{Answer, Body, Document, ModelSummary, RunSummary};
 
 /// Reads, solves, writes.
 pub(super) fn run(arguments: &Arguments, session: &Session) -> Result<u8, Failure> {
-    let model = steps::read(&arguments.model, &arguments.reading)?;
+    let model = steps::read(&arguments.model, &arguments.reading, session)?;
     let quantities = quantities(arguments, &model)?;
     output::look_at_destinations(&[arguments.output.json.as_deref()], &steps::files_of(&model))?;
     let started = Instant::now();

@@ -120,6 +120,7 @@ impl From<ModelError> for Failure {
     fn from(error: ModelError) -> Self {
         match &error {
             ModelError::Read { path, source } => Self::io(path, source),
+            ModelError::Option { said, remedy } => Self::Usage(refused("usage", said, remedy)),
             _ => Self::Data(error.faults().iter().map(of_fault).collect()),
         }
     }

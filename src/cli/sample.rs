@@ -17,7 +17,7 @@ const REPLICATIONS: u64 = 100_000;
 
 /// Reads, samples, writes.
 pub(super) fn run(arguments: &Sample, session: &Session) -> Result<u8, Failure> {
-    let model = steps::read(&arguments.model, &arguments.reading)?;
+    let model = steps::read(&arguments.model, &arguments.reading, session)?;
     let (seed, seed_source) = steps::seed(&arguments.sampling)?;
     let replications = arguments.sampling.replications.unwrap_or(REPLICATIONS);
     let plan = Plan { replications, seed, grid: Arc::new(Grid::logarithmic()) };

@@ -1,5 +1,6 @@
 //! The steps that commands share.
 
+use std::io;
 use std::path::Path;
 use std::time::{Instant, SystemTime, UNIX_EPOCH};
 
@@ -11,14 +12,34 @@ use super::failure::{Failure, refused};
 use super::{Session, output};
 use crate::compare::{Settings, Study};
 use crate::exact::{Exact, ExactError, Request};
-use crate::model::{Clock, Model, ReadOptions, Silent, Ticks, Tolerance, ToleranceKey, Tolerances, Warning};
+use crate::model::{Clock, Model, Progress, ReadOptions, Silent, Ticks, Tolerance, ToleranceKey, Tolerances, Warning};
 use crate::report::{Body, Document, Input, ModelSummary, PlanSummary, RunSummary, SeedSource};
 use crate::sampling::{OutcomeSource, Plan, Sampler, Tally, sample_with};
 
+/// Whether a path stands for standard input.
+pub(super) fn is_standard_input(path: &Path) -> bool {
+    path.as_os_str() == "-"
+}
+
 /// Reads a model and says what deserves a look.
-pub(super) fn read(path: &Path, reading: &Reading) -> Result<Model, Failure> {
-    let options = ReadOptions { start: reading.start.clone(), absorbing: reading.absorbing.clone() };
-    let model = Model::read(path, &options)?;
+pub(super) fn read(path: &Path, reading: &Reading, session: &Session) -> Result<Model, Failure> {
+    let options = ReadOptions {
+        start: reading.start.clone(),
+        absorbing: reading.absorbing.clone(),
+        state_names: reading.state_names.clone(),
+        transpose: reading.transpose,
+        rescale_rows: reading.rescale_rows.clone(),
+    };
+    let model = if is_standard_input(path) {
+        Model::read_from(io::stdin().lock(), "standard input", &options)
+    } else {
+        Model::read(path, &options)
+    };
+    // The program at the other end of a pipe stops by the same signal, and what it wrote until then is no whole model.
+    if session.watch.interrupted() {
+        return Err(Failure::Interrupted("interrupted while reading the model; no result was written".to_owned()));
+    }
+    let model = model?;
     look_at(model.warnings(), reading)?;
     Ok(model)
 }

@@ -1,6 +1,8 @@
 //! The checked chain: states, exact moves, ends, and the order in which classes are left.
 
 use std::collections::HashMap;
+use std::fmt::{self, Write};
+use std::sync::Arc;
 
 use dashu_ratio::RBig;
 use sha2::{Digest, Sha256};
@@ -26,7 +28,7 @@ pub struct End {
 /// none, since what happens inside an end is no part of a replication.
 #[derive(Debug, Clone)]
 pub struct Chain {
-    pub(super) names: Vec<String>,
+    pub(super) names: Vec<Arc<str>>,
     pub(super) rows: Rows,
     pub(super) start: Rows,
     pub(super) ends: Vec<End>,
@@ -62,7 +64,7 @@ impl Chain {
 
     /// The number of a named state, by a linear search.
     pub fn state(&self, name: &str) -> Option<usize> {
-        self.names.iter().position(|known| known == name)
+        self.names.iter().position(|known| **known == *name)
     }
 
     /// What time means.
@@ -130,6 +132,7 @@ impl Chain {
             hash.update((part.len() as u64).to_le_bytes());
             hash.update(part.as_bytes());
         };
+        let mut part = String::new();
         text(&format!("tallystone chain 1, {}", self.clock.name()));
         for name in &self.names {
             text(name);
@@ -137,14 +140,20 @@ impl Chain {
         let rows = std::iter::once(self.start()).chain((0..self.states()).map(|state| self.row(state)));
         for row in rows {
             text("row");
+            // Written into one buffer, since there can be millions; writing to a text cannot fail.
+            let mut written = |what: fmt::Arguments<'_>| {
+                part.clear();
+                let _written = part.write_fmt(what);
+                text(&part);
+            };
             match row.weights {
                 Weights::Narrow { numerators, denominator } => {
-                    text(&denominator.to_string());
-                    row.targets.iter().zip(numerators).for_each(|(to, weight)| text(&format!("{to} {weight}")));
+                    written(format_args!("{denominator}"));
+                    row.targets.iter().zip(numerators).for_each(|(to, weight)| written(format_args!("{to} {weight}")));
                 }
                 Weights::Wide { numerators, denominator } => {
-                    text(&denominator.to_string());
-                    row.targets.iter().zip(numerators).for_each(|(to, weight)| text(&format!("{to} {weight}")));
+                    written(format_args!("{denominator}"));
+                    row.targets.iter().zip(numerators).for_each(|(to, weight)| written(format_args!("{to} {weight}")));
                 }
             }
         }

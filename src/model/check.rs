@@ -8,12 +8,16 @@ use super::chain::{Chain, NO_END, Structure};
 use super::draft::{Draft, DraftMove, DraftState, Written};
 use super::fault::{Fault, FaultKind, LISTED, ModelError, Place, Warning, WarningKind, did_you_mean};
 use super::number::Number;
-use super::row::{ExactRow, Rest, RowOutcome, Rows};
+use super::row::{ExactRow, LARGEST_CORRECTION, Rest, RowOutcome, Rows};
 use super::tolerance::Tolerances;
 use super::{Clock, Model};
 
 /// Names that are compared, at most, in search of those that were meant.
 const SUGGESTION_WORK: usize = 1_000_000;
+/// What a matrix can do about a wrong sum.
+const CORRECT: &str = "correct one";
+/// A row sum that is off by no more than this may come from rounding.
+const ROUNDED: f64 = 0.01;
 const CORRECT_ONE: &str = "correct one, or give one of them as \"rest\"";
 
 impl Draft {
@@ -28,21 +32,23 @@ impl Draft {
         self.check_names();
         let moves = self.moves_by_state();
         let mut checked = Checked::default();
-        let (rows, targets) = self.check_rows(&moves, &mut checked);
+        // Rows that were not read whole would be told for what is missing.
+        let rows = if self.moves_unread { Rows::default() } else { self.check_rows(&moves, &mut checked) };
+        drop(moves);
         let start = self.check_start(&mut checked);
         if !self.moves_are_there() {
             return Err(self.refused());
         }
         self.check_states_are_known();
         // The structure needs only targets, so names are checked against the ends even when numbers are faulty.
-        let structure = Structure::of(&targets, start.targets(0));
+        let structure = Structure::of(&rows, start.targets(0));
         let ends = self.check_ends(&structure, &mut checked);
         let groups = self.check_groups(&ends);
         let mut end_of = vec![NO_END; self.states.len()];
         for (number, end) in ends.iter().enumerate() {
             end.states.iter().for_each(|state| end_of[*state] = number as u32);
         }
-        let costs = self.check_costs(&targets, &end_of);
+        let costs = self.check_costs(&rows, &end_of);
         let hits = self.check_hits(&ends);
         self.check_quantities(&ends, &groups, &costs, &hits, &end_of);
         if self.faults.is_empty() {
@@ -96,7 +102,7 @@ impl Draft {
             if let Some(text) = bad_name(&state.name) {
                 let place = self.place(state.file, state.line);
                 let fault = Fault::new(FaultKind::BadName, place, text, "rename it");
-                faults.push(fault.about(state.name.clone()));
+                faults.push(fault.about(&*state.name));
             }
         }
         let mut taken: HashSet<&str> = HashSet::new();
@@ -121,52 +127,61 @@ impl Draft {
         self.faults.extend(faults);
     }
 
-    /// The moves of each state, in the order in which they are written.
-    fn moves_by_state(&mut self) -> Vec<Vec<DraftMove>> {
-        let mut by_state: Vec<Vec<DraftMove>> = vec![Vec::new(); self.states.len()];
-        for one in std::mem::take(&mut self.moves) {
-            by_state[one.from as usize].push(one);
-        }
-        by_state
+    /// The moves, sorted by the state that they leave; those of one state stay in the order in which they are written.
+    fn moves_by_state(&mut self) -> Vec<DraftMove> {
+        let mut moves = std::mem::take(&mut self.moves);
+        moves.sort_by_key(|one| one.from);
+        moves
     }
 
-    /// The exact rows, and the rows of targets alone, which exist for faulty rows too.
-    fn check_rows(&mut self, moves: &[Vec<DraftMove>], checked: &mut Checked) -> (Rows, Rows) {
-        let total = moves.iter().map(Vec::len).sum();
-        let (mut rows, mut targets) =
-            (Rows::with_capacity(moves.len(), total), Rows::with_capacity(moves.len(), total));
-        for (state, moves) in moves.iter().enumerate() {
-            let lone_stay = matches!(moves.as_slice(), [one] if one.to as usize == state && one.is_certain());
+    /// The exact rows; faulty ones hold at least their targets.
+    fn check_rows(&mut self, moves: &[DraftMove], checked: &mut Checked) -> Rows {
+        let mut rows = Rows::with_capacity(self.states.len(), moves.len());
+        let mut left = moves;
+        for state in 0..self.states.len() {
+            let (moves, others) = left.split_at(left.iter().take_while(|one| one.from as usize == state).count());
+            left = others;
+            let lone_stay = matches!(moves, [one] if one.to as usize == state && one.is_certain());
             if lone_stay && (self.lone_stay_is_absorbing || self.states[state].absorbing.is_some()) {
                 self.states[state].absorbing = Some(moves[0].line);
                 rows.push(ExactRow::none());
-                targets.push(ExactRow::none());
                 checked.no_rate(self.clock);
                 continue;
             }
             let known = checked.rates.len();
-            match self.check_row(state, moves, checked) {
-                Some(row) => {
-                    targets.push(row.clone());
-                    rows.push(row);
-                }
-                None => {
-                    rows.push(ExactRow::none());
-                    targets.push(ExactRow::targets_only(moves.iter().map(|one| one.to)));
-                }
-            }
+            let row = self.check_row(state, moves, checked);
+            rows.push(row.unwrap_or_else(|| ExactRow::targets_only(moves.iter().map(|one| one.to))));
             if checked.rates.len() == known {
                 checked.no_rate(self.clock);
             }
         }
-        (rows, targets)
+        self.hint_at_transposition(moves);
+        rows
+    }
+
+    /// When every column of a matrix sums to one and some row does not, it is most likely written the other way round.
+    fn hint_at_transposition(&mut self, moves: &[DraftMove]) {
+        let Some(remedy) = self.turn_hint else { return };
+        if !self.faults.iter().any(|fault| fault.kind == FaultKind::RowSum) {
+            return;
+        }
+        let mut column_sums = vec![0.0; self.states.len()];
+        for one in moves {
+            if let Some(Written::Number(number)) = &one.value {
+                column_sums[one.to as usize] += number.to_f64();
+            }
+        }
+        if column_sums.iter().all(|sum| (sum - 1.0).abs() <= LARGEST_CORRECTION) {
+            let said = "every column sums to 1, but not every row: the table seems to be meant the other way round";
+            let place = self.place(self.moves_file, 0);
+            self.fault(Fault::new(FaultKind::RowSum, place, said, remedy));
+        }
     }
 
     fn check_row(&mut self, state: usize, moves: &[DraftMove], checked: &mut Checked) -> Option<ExactRow> {
         let DraftState { name, row, absorbing, faulty, .. } = self.states[state].clone();
         let place = self.place(self.moves_file, moves.first().map_or(row.unwrap_or(0), |one| one.line));
-        let fault =
-            |kind, text: String, remedy: &str| Fault::new(kind, place.clone(), text, remedy).about(name.clone());
+        let fault = |kind, text: String, remedy: &str| Fault::new(kind, place.clone(), text, remedy).about(&*name);
         if absorbing.is_some() {
             if !moves.is_empty() {
                 let text = format!("`{name}` is declared absorbing but has moves");
@@ -199,7 +214,8 @@ impl Draft {
         if self.clock == Clock::Rates {
             return self.check_rates(state, &numbers, &rests, &place, checked);
         }
-        match ExactRow::normalise(&numbers, Some(state as u32), rests.first().copied()) {
+        let rescale = self.rescale_rows.as_ref();
+        match ExactRow::normalise(&numbers, Some(state as u32), rests.first().copied(), rescale) {
             RowOutcome::Exact(row) => Some(row),
             RowOutcome::Corrected { row, sum } => {
                 checked.correct(&place, &format!("moves of `{name}`"), sum.to_f64().value());
@@ -208,7 +224,11 @@ impl Draft {
             RowOutcome::WrongSum { sum } => {
                 let sum = sum.to_f64().value();
                 let text = format!("the moves of `{name}` sum to {sum}, not 1");
-                self.fault(fault(FaultKind::RowSum, text, CORRECT_ONE).valued(sum.to_string()));
+                let mut remedy = if self.turn_hint.is_some() { CORRECT.to_owned() } else { CORRECT_ONE.to_owned() };
+                if (sum - 1.0).abs() <= ROUNDED {
+                    remedy.push_str("; if the numbers were rounded, --rescale-rows LIMIT divides rows by their sum");
+                }
+                self.fault(fault(FaultKind::RowSum, text, &remedy).valued(sum.to_string()));
                 None
             }
             RowOutcome::NothingLeft { sum } => {
@@ -249,16 +269,17 @@ impl Draft {
                 }
             }
         };
-        self.fault(fault.about(name));
+        self.fault(fault.about(&*name));
         None
     }
 
     fn check_duplicates(&mut self, name: &str, moves: &[DraftMove]) -> bool {
-        if moves.len() < 2 {
+        let mut targets: Vec<u32> = moves.iter().map(|one| one.to).collect();
+        targets.sort_unstable();
+        if targets.windows(2).all(|pair| pair[0] != pair[1]) {
             return true;
         }
         let mut seen: HashMap<u32, u64> = HashMap::with_capacity(moves.len());
-        let mut clean = true;
         for one in moves {
             if let Some(first) = seen.insert(one.to, one.line) {
                 let to = self.states[one.to as usize].name.clone();
@@ -266,11 +287,10 @@ impl Draft {
                 let text = format!("the move from `{name}` to `{to}` is listed twice{before}");
                 let place = self.place(self.moves_file, one.line);
                 let remedy = "join the two into one";
-                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, remedy).about(name).valued(to));
-                clean = false;
+                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, remedy).about(name).valued(&*to));
             }
         }
-        clean
+        false
     }
 
     /// Whether there are moves to speak of. Without them every other fault would follow from that one.
@@ -290,8 +310,7 @@ impl Draft {
     fn check_states_are_known(&mut self) {
         let known = |state: &DraftState| state.row.is_some() || state.absorbing.is_some();
         let unknown = |state: &&DraftState| !known(state) && bad_name(&state.name).is_none();
-        let names: Vec<&str> =
-            self.states.iter().filter(|state| known(state)).map(|state| state.name.as_str()).collect();
+        let names: Vec<&str> = self.states.iter().filter(|state| known(state)).map(|state| &*state.name).collect();
         let suggested = SUGGESTION_WORK / names.len().max(1);
         let faults: Vec<Fault> = self
             .states
@@ -304,7 +323,7 @@ impl Draft {
                 let remedy = did_you_mean(&state.name, names.iter().copied(), otherwise);
                 let text = format!("the state `{}` has no moves and is not declared absorbing", state.name);
                 let place = self.place(state.file, state.line);
-                Fault::new(FaultKind::UnknownState, place, text, remedy).about(state.name.clone())
+                Fault::new(FaultKind::UnknownState, place, text, remedy).about(&*state.name)
             })
             .collect();
         self.faults.extend(faults);
@@ -325,7 +344,7 @@ impl Draft {
                 let name = self.states[*state as usize].name.clone();
                 let text = format!("`{name}` is listed twice in the start");
                 let place = self.place(0, *line);
-                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, "join the two into one").about(name));
+                self.fault(Fault::new(FaultKind::DuplicateMove, place, text, "join the two into one").about(&*name));
                 self.start_faulty = true;
             }
         }
@@ -337,7 +356,7 @@ impl Draft {
         }
         let mut row = ExactRow::targets_only(starts.iter().map(|(state, ..)| *state));
         if !self.start_faulty {
-            match ExactRow::normalise(&numbers, None, rests.first().copied()) {
+            match ExactRow::normalise(&numbers, None, rests.first().copied(), None) {
                 RowOutcome::Exact(exact) => row = exact,
                 RowOutcome::Corrected { row: exact, sum } => {
                     checked.correct(&place, "shares of the start", sum.to_f64().value());

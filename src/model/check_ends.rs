@@ -30,7 +30,7 @@ impl Draft {
                 continue;
             }
             let first = states[0];
-            let name = self.states[first].name.clone();
+            let name = self.states[first].name.to_string();
             if self.states[first].absorbing.is_none() && self.states[first].row.is_some() {
                 undeclared.push((name.clone(), states.len()));
             }
@@ -56,7 +56,7 @@ impl Draft {
             if let Some(state) = self.known_state(member) {
                 members.push(state as usize);
             } else {
-                let names: Vec<&str> = self.states.iter().map(|state| state.name.as_str()).collect();
+                let names: Vec<&str> = self.states.iter().map(|state| &*state.name).collect();
                 let remedy = did_you_mean(member, names, "name a state of the model");
                 let text = format!("the class `{}` lists `{member}`, which is no state", declared.name);
                 let fault = Fault::new(FaultKind::UnknownState, place.clone(), text, remedy);
@@ -120,7 +120,7 @@ impl Draft {
             let place = self.place(0, line);
             let states = States {
                 number: &|name| self.known_state(name).map(|state| state as usize),
-                names: &|| self.states.iter().map(|state| state.name.as_str()).collect(),
+                names: &|| self.states.iter().map(|state| &*state.name).collect(),
                 end_of,
                 clock: self.clock,
             };
@@ -150,7 +150,7 @@ impl Draft {
             );
             let remedy = "start in a transient state, or declare absorbing states that the start can reach";
             let place = self.place(0, self.starts.first().map_or(0, |(_, _, line)| *line));
-            self.fault(Fault::new(FaultKind::NoEndReachable, place, text, remedy).about(name));
+            self.fault(Fault::new(FaultKind::NoEndReachable, place, text, remedy).about(&*name));
             return;
         }
         if !inside.is_empty() {

@@ -51,7 +51,7 @@ impl Draft {
             if !rows.targets(from_state as usize).contains(&to_state) {
                 let text =
                     format!("the cost `{name}` is given for a move from `{from}` to `{to}`, which the model lacks");
-                let others = rows.targets(from_state as usize).iter().map(|to| self.states[*to as usize].name.as_str());
+                let others = rows.targets(from_state as usize).iter().map(|to| &*self.states[*to as usize].name);
                 let remedy = did_you_mean(&to, others, "name a move of the model");
                 self.fault(Fault::new(FaultKind::UnknownState, place, text, remedy).about(from).valued(to));
             } else if moves.insert((from_state, to_state), amount).is_some() {
@@ -119,7 +119,7 @@ impl Draft {
     fn listed_state(&mut self, state: &str, place: &Place, owner: &str) -> Option<u32> {
         let known = self.known_state(state);
         if known.is_none() {
-            let names: Vec<&str> = self.states.iter().map(|state| state.name.as_str()).collect();
+            let names: Vec<&str> = self.states.iter().map(|state| &*state.name).collect();
             let remedy = did_you_mean(state, names, "name a state of the model");
             let text = format!("{owner} lists `{state}`, which is no state");
             self.fault(Fault::new(FaultKind::UnknownState, place.clone(), text, remedy).about(state));

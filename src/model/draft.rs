@@ -44,7 +44,7 @@ impl DraftMove {
 /// What is known of a state before the check.
 #[derive(Debug, Clone)]
 pub(super) struct DraftState {
-    pub(super) name: String,
+    pub(super) name: Arc<str>,
     /// Line of the first mention; 0 when made in code.
     pub(super) line: u64,
     /// The file of the first mention, as an index into the draft's files.
@@ -95,7 +95,7 @@ pub struct Draft {
     pub(super) clock_unit: Option<String>,
     pub(super) files: Vec<Arc<str>>,
     pub(super) states: Vec<DraftState>,
-    index: HashMap<String, u32>,
+    index: HashMap<Arc<str>, u32>,
     pub(super) starts: Vec<(u32, Written, u64)>,
     /// Something is wrong with the start already, so nothing is said of its sum.
     pub(super) start_faulty: bool,
@@ -106,6 +106,10 @@ pub struct Draft {
     pub(super) moves_file: usize,
     /// The moves could not be read, so nothing is known of states that seem to lack them.
     pub(super) moves_unread: bool,
+    /// What to do when every column of the table sums to one and not every row; `None` for what is no matrix.
+    pub(super) turn_hint: Option<&'static str>,
+    /// Rows whose sum is off by no more than this are divided by it, as an option allows.
+    pub(super) rescale_rows: Option<Number>,
     /// A row with only a stay of one is an end without a word, as tables have no other way to say it.
     pub(super) lone_stay_is_absorbing: bool,
     pub(super) classes: Vec<NamedList>,
@@ -141,7 +145,7 @@ impl Draft {
     /// Starts a share of the replications in a state; shares are numbers as in a model file, or `rest`.
     pub fn start_with(&mut self, state: &str, share: &str) {
         let number = self.state(state, 0, 0);
-        if let Some(share) = self.written(share, None, Place::default()) {
+        if let Some(share) = self.written(share, None, 0, 0) {
             self.starts.push((number, share, 0));
         }
     }
@@ -156,7 +160,7 @@ impl Draft {
     pub fn moves(&mut self, from: &str, to: &str, probability: &str) {
         let (from_number, to_number) = (self.state(from, 0, 0), self.state(to, 0, 0));
         self.states[from_number as usize].row = Some(0);
-        let value = self.written(probability, Some(from_number), Place::default());
+        let value = self.written(probability, Some(from_number), 0, 0);
         self.moves.push(DraftMove { from: from_number, to: to_number, value, line: 0 });
     }
 
@@ -233,9 +237,38 @@ impl Draft {
             return *number;
         }
         let number = self.states.len() as u32;
-        self.index.insert(name.to_owned(), number);
-        self.states.push(DraftState { name: name.to_owned(), line, file, row: None, absorbing: None, faulty: false });
+        let name: Arc<str> = Arc::from(name);
+        self.index.insert(Arc::clone(&name), number);
+        self.states.push(DraftState { name, line, file, row: None, absorbing: None, faulty: false });
         number
+    }
+
+    /// Numbers the states anew: first those that have moves, in the given order, then the declared absorbing ones, then all
+    /// other targets, as a reader does that knows the states with moves before it looks at targets.
+    pub(super) fn renumber(&mut self, leaving: &[u32]) {
+        let declared: Vec<String> = self.declared.iter().map(|(name, _)| name.clone()).collect();
+        self.declare();
+        let declared = declared.iter().filter_map(|name| self.known_state(name));
+        let mut number_of = vec![u32::MAX; self.states.len()];
+        let mut next = 0;
+        for state in leaving.iter().copied().chain(declared).chain(0..self.states.len() as u32) {
+            let number = &mut number_of[state as usize];
+            if *number == u32::MAX {
+                *number = next;
+                next += 1;
+            }
+        }
+        if number_of.is_sorted() {
+            return;
+        }
+        let mut states: Vec<(u32, DraftState)> =
+            number_of.iter().copied().zip(std::mem::take(&mut self.states)).collect();
+        states.sort_unstable_by_key(|(number, _)| *number);
+        self.states = states.into_iter().map(|(_, state)| state).collect();
+        self.index.values_mut().for_each(|state| *state = number_of[*state as usize]);
+        for one in &mut self.moves {
+            (one.from, one.to) = (number_of[one.from as usize], number_of[one.to as usize]);
+        }
     }
 
     pub(super) fn known_state(&self, name: &str) -> Option<u32> {
@@ -264,22 +297,26 @@ impl Draft {
     }
 
     /// Reads the probability of a move of a state, or a share of the start; what is wrong with it becomes a fault.
-    pub(super) fn written(&mut self, text: &str, state: Option<u32>, place: Place) -> Option<Written> {
+    pub(super) fn written(&mut self, text: &str, state: Option<u32>, file: usize, line: u64) -> Option<Written> {
         let text = text.trim();
         if text == "rest" {
             return Some(Written::Rest);
         }
-        let is_rate = state.is_some() && self.clock == Clock::Rates;
-        let (in_range, how_to_write) =
-            if is_rate { (RATE_IN_RANGE, HOW_TO_WRITE_A_RATE) } else { (IN_RANGE, HOW_TO_WRITE) };
-        let (kind, reason, remedy) = match Number::parse(text) {
-            _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), how_to_write),
-            Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), in_range),
-            Ok(number) if number.exceeds_one() && !is_rate => (FaultKind::AboveOne, "is above 1".to_owned(), in_range),
-            Ok(number) => return Some(Written::Number(number)),
-            Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), in_range),
-            Err(reason) => (FaultKind::NotANumber, reason.to_string(), how_to_write),
-        };
+        // Shares of the start are probabilities whatever the clock.
+        let clock = if state.is_some() { self.clock } else { Clock::Steps };
+        match probability_or_rate(text, clock, HOW_TO_WRITE) {
+            Ok(number) => Some(Written::Number(number)),
+            Err(bad) => {
+                self.refuse_value(text, bad, state, file, line);
+                None
+            }
+        }
+    }
+
+    /// Tells of a value among the moves of a state, or among the shares of the start, that is no probability.
+    pub(super) fn refuse_value(&mut self, text: &str, bad: BadValue, state: Option<u32>, file: usize, line: u64) {
+        let BadValue { kind, reason, remedy } = bad;
+        let place = self.place(file, line);
         let shown = shortened(text);
         let what = if text.is_empty() { "a value".to_owned() } else { format!("`{shown}`") };
         let fault = match state {
@@ -287,7 +324,7 @@ impl Draft {
                 let state = &mut self.states[state as usize];
                 state.faulty = true;
                 let said = format!("{what} among the moves of `{}` {reason}", state.name);
-                Fault::new(kind, place, said, remedy).about(state.name.clone())
+                Fault::new(kind, place, said, remedy).about(&*state.name)
             }
             None => {
                 self.start_faulty = true;
@@ -295,6 +332,44 @@ impl Draft {
             }
         };
         self.fault(fault.valued(shown));
-        None
     }
+}
+
+/// Why a text is no probability.
+#[derive(Debug)]
+pub(super) struct BadValue {
+    pub(super) kind: FaultKind,
+    pub(super) reason: String,
+    pub(super) remedy: &'static str,
+}
+
+/// Reads the probability or the rate of a move; `how_to_write` is the remedy if a probability is no number at all.
+pub(super) fn probability_or_rate(text: &str, clock: Clock, how_to_write: &'static str) -> Result<Number, BadValue> {
+    match clock {
+        Clock::Steps => probability(text, how_to_write),
+        Clock::Rates => rate(text),
+    }
+}
+
+fn probability(text: &str, how_to_write: &'static str) -> Result<Number, BadValue> {
+    let (kind, reason, remedy) = match Number::parse(text) {
+        _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), how_to_write),
+        Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), IN_RANGE),
+        Ok(number) if number.exceeds_one() => (FaultKind::AboveOne, "is above 1".to_owned(), IN_RANGE),
+        Ok(number) => return Ok(number),
+        Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), IN_RANGE),
+        Err(reason) => (FaultKind::NotANumber, reason.to_string(), how_to_write),
+    };
+    Err(BadValue { kind, reason, remedy })
+}
+
+fn rate(text: &str) -> Result<Number, BadValue> {
+    let (kind, reason, remedy) = match Number::parse(text) {
+        _ if text.is_empty() => (FaultKind::NotANumber, "is empty".to_owned(), HOW_TO_WRITE_A_RATE),
+        Ok(number) if number.is_negative() => (FaultKind::Negative, "is negative".to_owned(), RATE_IN_RANGE),
+        Ok(number) => return Ok(number),
+        Err(reason @ NumberFault::NotFinite) => (FaultKind::NonFinite, reason.to_string(), RATE_IN_RANGE),
+        Err(reason) => (FaultKind::NotANumber, reason.to_string(), HOW_TO_WRITE_A_RATE),
+    };
+    Err(BadValue { kind, reason, remedy })
 }

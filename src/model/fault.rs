@@ -76,7 +76,7 @@ pub enum FaultKind {
     Shape,
     /// A number that should be whole.
     NotWhole,
-    /// A number that is too large, or written too long, to be counted.
+    /// A number that is too large or written too long, or that lies outside its range.
     OutOfRange,
     /// A replication listed twice.
     DuplicateReplication,
@@ -139,6 +139,14 @@ pub enum ModelError {
         /// The system's reason.
         source: io::Error,
     },
+    /// An option that does not fit what is read.
+    #[error("{said}; {remedy}")]
+    Option {
+        /// What is wrong, naming the option.
+        said: String,
+        /// What to do about it.
+        remedy: String,
+    },
     /// The model is faulty; every fault is listed.
     #[error("{}", shown(.0))]
     Faulty(Vec<Fault>),
@@ -149,11 +157,11 @@ fn shown(faults: &[Fault]) -> String {
 }
 
 impl ModelError {
-    /// The faults found; empty when a file could not be read at all.
+    /// The faults found; empty when a file could not be read at all, or an option does not fit.
     pub fn faults(&self) -> &[Fault] {
         match self {
             Self::Faulty(faults) => faults,
-            Self::Read { .. } => &[],
+            Self::Read { .. } | Self::Option { .. } => &[],
         }
     }
 }

@@ -60,6 +60,9 @@ impl Number {
     /// ```
     pub fn parse(text: &str) -> Result<Self, NumberFault> {
         let text = text.trim();
+        if let Some(number) = plain(text.as_bytes()) {
+            return Ok(number);
+        }
         if text.len() > LONGEST {
             return Err(NumberFault::TooExtreme);
         }
@@ -87,7 +90,13 @@ impl Number {
 
     /// The nearest double, for messages.
     pub fn to_f64(&self) -> f64 {
-        self.to_ratio().to_f64().value()
+        match self {
+            // Both are doubles exactly, so their quotient is rounded once.
+            Self::Decimal { mantissa, scale } if *mantissa <= 1 << f64::MANTISSA_DIGITS => {
+                *mantissa as f64 / 10u64.pow(u32::from(*scale)) as f64
+            }
+            _ => self.to_ratio().to_f64().value(),
+        }
     }
 
     /// Whether the number is exactly zero.
@@ -127,6 +136,30 @@ impl Number {
             Self::Ratio(value) => **value > RBig::ONE,
         }
     }
+}
+
+/// A short decimal of digits and a point alone: nearly every number of a large model.
+fn plain(text: &[u8]) -> Option<Number> {
+    let (mut mantissa, mut behind_point, mut digits) = (0u64, None, 0);
+    for byte in text {
+        match byte {
+            b'0'..=b'9' => {
+                mantissa = mantissa.checked_mul(10)?.checked_add(u64::from(byte - b'0'))?;
+                digits += 1;
+                behind_point = behind_point.map(|count: u8| count + 1);
+            }
+            b'.' if behind_point.is_none() => behind_point = Some(0),
+            _ => return None,
+        }
+        if digits > NARROW_DIGITS {
+            return None;
+        }
+    }
+    let mut scale = behind_point.unwrap_or(0);
+    while scale > 0 && mantissa % 10 == 0 {
+        (mantissa, scale) = (mantissa / 10, scale - 1);
+    }
+    (digits > 0).then_some(Number::Decimal { mantissa, scale })
 }
 
 fn decimal(text: &str) -> Result<Number, NumberFault> {

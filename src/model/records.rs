@@ -1,5 +1,6 @@
 //! Rows of CSV text, as spreadsheets and programs save them, each with the line that it stands on.
 
+use std::borrow::Cow;
 use std::io::{self, Chain, Read};
 
 use csv::{ByteRecord, Position, ReaderBuilder, Terminator};
@@ -71,11 +72,11 @@ pub(crate) fn delimiter(text: &[u8], comment: Option<u8>) -> u8 {
 }
 
 /// A number with a decimal point: spreadsheets that separate by semicolon or tab often write a decimal comma.
-pub(crate) fn decimal_point(cell: &str, delimiter: u8) -> String {
+pub(crate) fn decimal_point(cell: &str, delimiter: u8) -> Cow<'_, str> {
     if delimiter != b',' && cell.matches(',').count() == 1 && !cell.contains('.') {
-        cell.replace(',', ".")
+        cell.replace(',', ".").into()
     } else {
-        cell.to_owned()
+        cell.into()
     }
 }
 

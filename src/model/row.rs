@@ -169,7 +169,7 @@ pub(super) struct Rest {
 pub(super) enum RowOutcome {
     /// As written, it sums to one.
     Exact(ExactRow),
-    /// It summed to `sum`, within [`LARGEST_CORRECTION`] of one, and was corrected.
+    /// It summed to `sum`, near enough to one, and was corrected.
     Corrected { row: ExactRow, sum: RBig },
     /// It does not sum to one.
     WrongSum { sum: RBig },
@@ -195,7 +195,16 @@ impl ExactRow {
     ///
     /// A row that is off by at most [`LARGEST_CORRECTION`] keeps its leaves when it has a stay that can absorb the
     /// difference, and is divided by its sum otherwise: no stay and no exit is ever created.
-    pub(super) fn normalise(moves: &[(u32, Number)], stay: Option<u32>, rest: Option<Rest>) -> RowOutcome {
+    /// Where `rescale` allows a larger difference, the row is divided by its sum as well.
+    pub(super) fn normalise(
+        moves: &[(u32, Number)],
+        stay: Option<u32>,
+        rest: Option<Rest>,
+        rescale: Option<&Number>,
+    ) -> RowOutcome {
+        if let Some(row) = Self::short(moves, rest) {
+            return RowOutcome::Exact(row);
+        }
         let common = moves.iter().fold(UBig::ONE, |common, (_, value)| lcm(common, &denominator(value)));
         let mut targets: Vec<u32> = moves.iter().map(|(to, _)| *to).collect();
         let mut numerators: Vec<UBig> = moves.iter().map(|(_, value)| numerator_over(value, &common)).collect();
@@ -214,8 +223,11 @@ impl ExactRow {
         }
         let sum = as_sum(&total);
         let off = if total > common { &total - &common } else { &common - &total };
-        if total == UBig::ZERO || off * UBig::from(CORRECTION_PARTS) > common {
-            return RowOutcome::WrongSum { sum };
+        if &off * UBig::from(CORRECTION_PARTS) > common {
+            if total == UBig::ZERO || rescale.is_none_or(|limit| as_sum(&off) > limit.to_ratio()) {
+                return RowOutcome::WrongSum { sum };
+            }
+            return RowOutcome::Corrected { row: Self::reduced(targets, numerators, total), sum };
         }
         let at_stay = stay.and_then(|stay| targets.iter().position(|to| *to == stay));
         // A stay written as zero is none, and none is created.
@@ -239,6 +251,42 @@ impl ExactRow {
         }
         let rate = RBig::from_parts(IBig::from(total.clone()), common);
         Some((Self::reduced(moves.iter().map(|(to, _)| *to).collect(), numerators, total), rate))
+    }
+
+    /// A row of short decimals that sums to one as written: nearly every row, so it is worth its own arithmetic.
+    fn short(moves: &[(u32, Number)], rest: Option<Rest>) -> Option<Self> {
+        let short = |number: &Number| match number {
+            Number::Decimal { mantissa, scale } => Some((*mantissa, *scale)),
+            Number::Ratio(_) => None,
+        };
+        let (mut largest, mut total) = (0, 0u64);
+        for (_, number) in moves {
+            largest = largest.max(short(number)?.1);
+        }
+        let mut denominator = 10u64.pow(u32::from(largest));
+        let (mut targets, mut numerators) = (Vec::with_capacity(moves.len() + 1), Vec::with_capacity(moves.len() + 1));
+        for (to, number) in moves {
+            let (mantissa, scale) = short(number)?;
+            let numerator = mantissa.checked_mul(10u64.pow(u32::from(largest - scale)))?;
+            total = total.checked_add(numerator)?;
+            targets.push(*to);
+            numerators.push(numerator);
+        }
+        if let Some(rest) = rest {
+            targets.insert(rest.place, rest.to);
+            numerators.insert(rest.place, denominator.checked_sub(total)?);
+        } else if total != denominator {
+            return None;
+        }
+        let common = numerators.iter().fold(denominator, |common, numerator| common.gcd(*numerator));
+        denominator /= common;
+        numerators.iter_mut().for_each(|numerator| *numerator /= common);
+        if numerators.contains(&0) {
+            let mut kept = numerators.iter().map(|numerator| *numerator != 0);
+            targets.retain(|_| kept.next() == Some(true));
+            numerators.retain(|numerator| *numerator != 0);
+        }
+        Some(Self { targets, values: Values::Narrow { numerators, denominator } })
     }
 
     fn reduced(targets: Vec<u32>, numerators: Vec<UBig>, denominator: UBig) -> Self {
@@ -305,7 +353,7 @@ mod tests {
     #[test]
     fn fractions_and_decimals_meet_exactly_and_rest_takes_what_is_left() {
         let RowOutcome::Exact(row) =
-            ExactRow::normalise(&written(&[(1, "5/12"), (2, "0.25")]), Some(0), Some(Rest { place: 1, to: 3 }))
+            ExactRow::normalise(&written(&[(1, "5/12"), (2, "0.25")]), Some(0), Some(Rest { place: 1, to: 3 }), None)
         else {
             panic!("sums below one with a rest");
         };
@@ -315,7 +363,7 @@ mod tests {
     #[test]
     fn a_written_stay_absorbs_the_difference_and_leaves_are_untouched() {
         let moves = written(&[(0, "0.9999999999"), (1, "0.00000000005")]);
-        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None, None) else {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(0, "19999999999/20000000000"), (1, "1/20000000000")]));
@@ -324,7 +372,7 @@ mod tests {
     #[test]
     fn a_correction_creates_no_stay() {
         let moves = written(&[(0, "0"), (1, "0.9999999999")]);
-        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None, None) else {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(1, "1")]));
@@ -333,7 +381,7 @@ mod tests {
     #[test]
     fn without_a_stay_every_entry_is_divided_by_the_sum() {
         let moves = written(&[(1, "0.3333333333"), (2, "0.3333333333"), (3, "0.3333333333")]);
-        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None) else {
+        let RowOutcome::Corrected { row, .. } = ExactRow::normalise(&moves, Some(0), None, None) else {
             panic!("within the largest correction");
         };
         assert_eq!(shown(row), pairs(&[(1, "1/3"), (2, "1/3"), (3, "1/3")]));
@@ -341,9 +389,9 @@ mod tests {
 
     #[test]
     fn a_sum_far_from_one_or_nothing_left_is_said() {
-        let off = ExactRow::normalise(&written(&[(1, "0.5"), (2, "0.4")]), None, None);
+        let off = ExactRow::normalise(&written(&[(1, "0.5"), (2, "0.4")]), None, None, None);
         assert!(matches!(off, RowOutcome::WrongSum { sum } if sum.to_string() == "9/10"));
-        let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(Rest { place: 2, to: 3 }));
+        let full = ExactRow::normalise(&written(&[(1, "0.8"), (2, "0.4")]), None, Some(Rest { place: 2, to: 3 }), None);
         assert!(matches!(full, RowOutcome::NothingLeft { sum } if sum.to_string() == "6/5"));
     }
 
@@ -358,7 +406,7 @@ mod tests {
     #[test]
     fn long_decimals_stay_exact_in_the_side_table() {
         let moves = written(&[(1, "1e-30")]);
-        let RowOutcome::Exact(row) = ExactRow::normalise(&moves, Some(0), Some(Rest { place: 1, to: 0 })) else {
+        let RowOutcome::Exact(row) = ExactRow::normalise(&moves, Some(0), Some(Rest { place: 1, to: 0 }), None) else {
             panic!("has a rest")
         };
         let row = shown(row);

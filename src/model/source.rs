@@ -1,52 +1,70 @@
-//! From a path or a text to a checked model.
+//! From a path, a stream or a text to a checked model.
 
 use std::ffi::OsStr;
-use std::fs;
-use std::path::Path;
+use std::io::Read;
+use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
 use sha2::{Digest, Sha256};
 
 use super::draft::Draft;
-use super::fault::{Fault, FaultKind, ModelError, Place};
-use super::{InputFile, Model, table, toml_file};
+use super::fault::ModelError;
+use super::input::{Input, as_text};
+use super::kind::Kind;
+use super::matrix::{Names, Reading};
+use super::number::Number;
+use super::{InputFile, LARGEST_CORRECTION, Model, matrix_market, npy, table, toml_file};
 
-/// What a table cannot say of itself.
+/// What a file cannot say of itself, and how it is to be taken.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
 pub struct ReadOptions {
     /// The state in which every replication starts; it replaces the start of a model file.
     pub start: Option<String>,
     /// States that are absorbing although they have no row.
     pub absorbing: Vec<String>,
+    /// A file that names the states of a matrix (`.mtx`, `.npy`), one a line; they keep the numbers of the matrix otherwise.
+    pub state_names: Option<PathBuf>,
+    /// The table lists moves from column to row; in a list of moves, `from` and `to` change places.
+    pub transpose: bool,
+    /// Rows whose sum differs from 1 by more than [`LARGEST_CORRECTION`], but by no more than this, are divided by their
+    /// sum, with a warning.
+    pub rescale_rows: Option<Number>,
 }
 
 impl Model {
-    /// Reads a model: TOML if the name ends in `.toml`, a table (CSV) otherwise.
+    /// Reads a model. A file that begins as one is a matrix (Matrix Market, or a NumPy array); otherwise the end of its name
+    /// says what it is: `.toml` a model file, `.mtx` and `.npy` a matrix, anything else a table (CSV).
     ///
     /// # Errors
-    /// [`ModelError::Read`] when a file cannot be read, [`ModelError::Faulty`] with every fault otherwise.
+    /// [`ModelError::Read`] when a file cannot be read, [`ModelError::Option`] when an option does not fit what is read,
+    /// [`ModelError::Faulty`] with every fault otherwise.
     pub fn read(path: &Path, options: &ReadOptions) -> Result<Self, ModelError> {
-        let (bytes, input) = read_bytes(path)?;
-        let shown = path.display().to_string();
-        let is_toml = path.extension().and_then(OsStr::to_str).is_some_and(|end| end.eq_ignore_ascii_case("toml"));
-        let mut inputs = vec![input];
-        let mut draft = if is_toml {
-            let text = std::str::from_utf8(&bytes).map_err(|error| not_text(&shown, &bytes, error.valid_up_to()))?;
-            let directory = path.parent().unwrap_or(Path::new(""));
-            let (draft, more) = toml_file::read(text, Some(&shown), directory)?;
-            inputs.extend(more);
-            draft
-        } else {
-            let mut draft = Draft::new(path.file_stem().and_then(OsStr::to_str).unwrap_or_default());
-            draft.files.push(Arc::from(shown.as_str()));
-            draft.declare_all(options);
-            table::read(&bytes, &mut draft);
-            draft
-        };
-        draft.apply(options);
-        let mut model = draft.check()?;
-        model.inputs = inputs;
-        Ok(model)
+        let input = Input::open(path)?;
+        let title = path.file_stem().and_then(OsStr::to_str).unwrap_or_default();
+        let kind = Kind::of_file(path, input.head());
+        Source { input, kind, title, directory: path.parent().unwrap_or(Path::new("")) }.model(options)
+    }
+
+    /// Reads a model from a stream, such as standard input, by a name for messages. Its beginning says what it is: a matrix
+    /// begins as one; `[` at the beginning of the first line that is neither blank nor a comment, or an `=` in it before any
+    /// comma and semicolon, makes a model file; anything else is a table. A `moves_file` is looked for in the working
+    /// directory.
+    ///
+    /// # Errors
+    /// As [`Model::read`].
+    ///
+    /// ```
+    /// use tallystone::model::{Model, ReadOptions};
+    /// let matrix = "%%MatrixMarket matrix coordinate real general\n2 2 3\n1 1 0.75\n1 2 0.25\n2 2 1\n";
+    /// let options = ReadOptions { start: Some("1".to_owned()), ..ReadOptions::default() };
+    /// let model = Model::read_from(matrix.as_bytes(), "matrix", &options)?;
+    /// assert_eq!(model.chain().ends()[0].name, "2");
+    /// # Ok::<(), tallystone::model::ModelError>(())
+    /// ```
+    pub fn read_from(source: impl Read, name: &str, options: &ReadOptions) -> Result<Self, ModelError> {
+        let input = Input::new(source, name.to_owned());
+        let kind = Kind::of_stream(input.head());
+        Source { input, kind, title: "", directory: Path::new("") }.model(options)
     }
 
     /// Reads a model from the text of a TOML file; a `moves_file` is looked for in the working directory.
@@ -54,29 +72,120 @@ impl Model {
     /// # Errors
     /// [`ModelError::Faulty`] with every fault.
     pub fn from_toml(text: &str) -> Result<Self, ModelError> {
-        toml_file::read(text, None, Path::new(""))?.0.check()
+        toml_file::read(text, None, Path::new(""), &ReadOptions::default())?.0.check()
     }
 
     /// Reads a model from the text of a table: moves (`from,to,probability`) or a square table with names.
     ///
     /// # Errors
-    /// [`ModelError::Faulty`] with every fault.
+    /// As [`Model::read`].
     pub fn from_table(text: &str, options: &ReadOptions) -> Result<Self, ModelError> {
+        let input = Input::new(text.as_bytes(), String::new());
         let mut draft = Draft::default();
-        draft.declare_all(options);
-        table::read(text.as_bytes(), &mut draft);
-        draft.apply(options);
+        options.look()?;
+        draft.read_whole(Kind::Table, input, options)?;
         draft.check()
     }
 }
 
-impl Draft {
-    fn declare_all(&mut self, options: &ReadOptions) {
-        self.declared.extend(options.absorbing.iter().map(|name| (name.clone(), 0)));
+/// What a model is read from.
+struct Source<'a> {
+    input: Input<'a>,
+    kind: Kind,
+    title: &'a str,
+    /// Where a `moves_file` is looked for.
+    directory: &'a Path,
+}
+
+impl Source<'_> {
+    fn model(mut self, options: &ReadOptions) -> Result<Model, ModelError> {
+        options.look()?;
+        let (draft, inputs) = if self.kind == Kind::Toml {
+            let (bytes, file) = (self.input.whole(), self.input.name().to_owned());
+            let mut inputs = vec![self.input.finish()?];
+            let (mut draft, more) = toml_file::read(as_text(&bytes, &file)?, Some(&file), self.directory, options)?;
+            draft.apply(options);
+            inputs.extend(more);
+            (draft, inputs)
+        } else {
+            let mut draft = Draft::new(self.title);
+            draft.files.push(Arc::from(self.input.name()));
+            let inputs = draft.read_whole(self.kind, self.input, options)?;
+            (draft, inputs)
+        };
+        let mut model = draft.check()?;
+        model.inputs = inputs;
+        Ok(model)
+    }
+}
+
+impl ReadOptions {
+    /// Whether the options make sense by themselves.
+    fn look(&self) -> Result<(), ModelError> {
+        let Some(limit) = &self.rescale_rows else { return Ok(()) };
+        if limit.to_f64() > LARGEST_CORRECTION && !limit.exceeds_one() && !limit.is_one() {
+            return Ok(());
+        }
+        let said = format!("--rescale-rows {} is not between {LARGEST_CORRECTION} and 1", limit.to_f64());
+        let remedy = "give a number such as 1e-6; smaller differences are corrected without it";
+        Err(ModelError::Option { said, remedy: remedy.to_owned() })
     }
 
+    /// Refuses the options of tables where there is none.
+    pub(super) fn look_without_table(&self) -> Result<(), ModelError> {
+        let given = [("--transpose", self.transpose), ("--state-names", self.state_names.is_some())];
+        let Some((option, _)) = given.iter().find(|(_, is_given)| *is_given) else { return Ok(()) };
+        let said = format!("{option} is for tables, and the moves of this model stand under [moves]");
+        Err(ModelError::Option { said, remedy: format!("leave {option} out") })
+    }
+}
+
+impl Draft {
+    /// Reads a table or matrix that is a model by itself.
+    fn read_whole(
+        &mut self,
+        kind: Kind,
+        input: Input<'_>,
+        options: &ReadOptions,
+    ) -> Result<Vec<InputFile>, ModelError> {
+        self.lone_stay_is_absorbing = true;
+        self.declared.extend(options.absorbing.iter().map(|name| (name.clone(), 0)));
+        let inputs = self.read_moves(kind, input, options)?;
+        self.apply(options);
+        Ok(inputs)
+    }
+
+    /// Reads a table or matrix of moves; gives the files that it was read from.
+    pub(super) fn read_moves(
+        &mut self,
+        kind: Kind,
+        mut input: Input<'_>,
+        options: &ReadOptions,
+    ) -> Result<Vec<InputFile>, ModelError> {
+        let is_matrix = matches!(kind, Kind::MatrixMarket | Kind::Npy);
+        let (names, more) = match &options.state_names {
+            Some(_) if !is_matrix => {
+                let said =
+                    format!("--state-names is for matrices, and {} names its states itself", shown(input.name()));
+                let remedy = "leave it out, or rename the states in the file";
+                return Err(ModelError::Option { said, remedy: remedy.to_owned() });
+            }
+            Some(path) => Names::read(path).map(|(names, file)| (Some(names), Some(file)))?,
+            None => (None, None),
+        };
+        let reading = Reading { names, transpose: options.transpose };
+        match kind {
+            Kind::MatrixMarket => matrix_market::read(&mut input, reading, self),
+            Kind::Npy => npy::read(&mut input, reading, self),
+            Kind::Toml | Kind::Table => table::read(&mut input, options.transpose, self),
+        }
+        Ok(std::iter::once(input.finish()?).chain(more).collect())
+    }
+
+    /// What the options say beside the file.
     fn apply(&mut self, options: &ReadOptions) {
-        self.declare_all(options);
+        self.rescale_rows.clone_from(&options.rescale_rows);
+        self.declared.extend(options.absorbing.iter().map(|name| (name.clone(), 0)));
         self.declare();
         if let Some(start) = &options.start {
             self.starts.clear();
@@ -85,21 +194,12 @@ impl Draft {
     }
 }
 
-/// The bytes of a file and its entry among the inputs.
-pub(super) fn read_bytes(path: &Path) -> Result<(Vec<u8>, InputFile), ModelError> {
-    let bytes = fs::read(path).map_err(|source| ModelError::Read { path: path.to_owned(), source })?;
-    let sha256 = hexadecimal(Sha256::new_with_prefix(&bytes));
-    Ok((bytes, InputFile { file: path.display().to_string(), sha256 }))
+/// The name of an input in a sentence.
+fn shown(name: &str) -> &str {
+    if name.is_empty() { "the table" } else { name }
 }
 
 /// A hash as it is shown.
 pub(crate) fn hexadecimal(hash: Sha256) -> String {
     hash.finalize().iter().fold(String::with_capacity(64), |hex, byte| hex + &format!("{byte:02x}"))
-}
-
-fn not_text(file: &str, bytes: &[u8], valid: usize) -> ModelError {
-    let line = bytes[..valid].iter().filter(|b| **b == b'\n').count() as u64 + 1;
-    let place = Place { file: Some(Arc::from(file)), line: Some(line) };
-    let remedy = "save the file as UTF-8";
-    ModelError::Faulty(vec![Fault::new(FaultKind::Syntax, place, "the file is not UTF-8 text", remedy)])
 }

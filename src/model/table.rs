@@ -2,11 +2,12 @@
 
 use std::collections::HashMap;
 
-use csv::{ByteRecord, StringRecord};
+use csv::ByteRecord;
 
 use super::Clock;
-use super::draft::{Draft, DraftMove, Written};
+use super::draft::{Draft, DraftMove};
 use super::fault::{Fault, FaultKind, did_you_mean, nearest, shortened};
+use super::input::Input;
 use super::number::Number;
 use super::records::{self, Records, decimal_point};
 
@@ -18,39 +19,44 @@ const RATE: &str = "rate";
 /// Lines that begin with it are comments.
 const COMMENT: Option<u8> = Some(b'#');
 
-/// The rows of a table as text.
-struct Table<'a> {
-    records: Records<&'a [u8]>,
+/// The rows of a table as text, one at a time.
+struct Table<'i, 's> {
+    records: Records<&'i mut Input<'s>>,
     delimiter: u8,
     row: ByteRecord,
 }
 
-impl<'a> Table<'a> {
-    fn of(bytes: &'a [u8]) -> Self {
-        let delimiter = records::delimiter(bytes, COMMENT);
-        Self { records: Records::new(bytes, delimiter, COMMENT), delimiter, row: ByteRecord::new() }
+impl<'i, 's> Table<'i, 's> {
+    fn of(input: &'i mut Input<'s>) -> Self {
+        let delimiter = records::delimiter(input.head(), COMMENT);
+        Self { records: Records::new(input, delimiter, COMMENT), delimiter, row: ByteRecord::new() }
     }
 
-    /// The next row that is not blank, and its line. Rows that are not text become faults.
-    fn next(&mut self, draft: &mut Draft) -> Option<(StringRecord, u64)> {
-        // Memory can always be read.
+    /// Reads the next row that is not blank; gives its line. Rows that are not text become faults.
+    fn next(&mut self, draft: &mut Draft) -> Option<u64> {
+        // An input always reads; see there.
         while self.records.read(&mut self.row).unwrap_or(false) {
             let line = self.records.line(&self.row);
-            match StringRecord::from_byte_record(self.row.clone()) {
-                Ok(mut row) => {
-                    row.trim();
-                    if !row.iter().all(str::is_empty) {
-                        return Some((row, line));
-                    }
-                }
-                Err(_) => {
-                    let place = draft.place(draft.moves_file, line);
-                    let said = "the line is not UTF-8 text";
-                    draft.fault(Fault::new(FaultKind::Syntax, place, said, "save the file as UTF-8"));
-                }
+            let is_text = |cell| std::str::from_utf8(cell).is_ok();
+            if !self.row.as_slice().is_ascii() && !self.row.iter().all(is_text) {
+                let place = draft.place(draft.moves_file, line);
+                let said = "the line is not UTF-8 text";
+                draft.fault(Fault::new(FaultKind::Syntax, place, said, "save the file as UTF-8"));
+            } else if !self.cells().all(str::is_empty) {
+                return Some(line);
             }
         }
         None
+    }
+
+    /// A cell of the row that was read last, without the blanks around it.
+    fn cell(&self, column: usize) -> Option<&str> {
+        // Rows that are not text never get here.
+        self.row.get(column).map(|cell| std::str::from_utf8(cell).unwrap_or_default().trim())
+    }
+
+    fn cells(&self) -> impl Iterator<Item = &str> {
+        (0..self.row.len()).filter_map(|column| self.cell(column))
     }
 
     /// The first row, the line that the table is known by.
@@ -62,35 +68,28 @@ impl<'a> Table<'a> {
             draft.fault(Fault::new(FaultKind::Shape, place, "the table is empty", "give it a header and a row a move"));
         }
         draft.moves_unread = draft.faults.len() > faults;
-        let (row, line) = header.filter(|_| !draft.moves_unread)?;
-        Some((row.iter().map(str::to_owned).collect(), line))
+        let line = header.filter(|_| !draft.moves_unread)?;
+        Some((self.cells().map(str::to_owned).collect(), line))
     }
 }
 
-/// Reads a table that is a model by itself: a list of moves if its header says so, a square table otherwise.
-pub(super) fn read(bytes: &[u8], draft: &mut Draft) {
-    draft.lone_stay_is_absorbing = true;
-    let mut table = Table::of(bytes);
+/// Reads a table into the draft: a list of moves if its header says so, a square table otherwise.
+pub(super) fn read(input: &mut Input<'_>, transpose: bool, draft: &mut Draft) {
+    let mut table = Table::of(input);
     let Some((header, line)) = table.header(draft) else { return };
-    if header.iter().any(|name| name.eq_ignore_ascii_case(RATE)) {
+    // A table that is a model by itself has no other way to say it.
+    if draft.moves_file == 0 && header.iter().any(|name| name.eq_ignore_ascii_case(RATE)) {
         draft.clock = Clock::Rates;
     }
     // Two of the three names show what is meant, so that a misspelt third is told.
     if COLUMNS.iter().filter(|name| header.iter().any(|known| known.eq_ignore_ascii_case(name))).count() >= 2 {
-        list_of_moves(table, &header, line, draft);
+        list_of_moves(table, &header, line, transpose, draft);
     } else {
-        square(table, &header, line, draft);
+        square(table, &header, line, transpose, draft);
     }
 }
 
-/// Reads a list of moves into the draft.
-pub(super) fn read_moves(bytes: &[u8], draft: &mut Draft) {
-    let mut table = Table::of(bytes);
-    let Some((header, line)) = table.header(draft) else { return };
-    list_of_moves(table, &header, line, draft);
-}
-
-fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
+fn list_of_moves(mut table: Table<'_, '_>, header: &[String], header_line: u64, transpose: bool, draft: &mut Draft) {
     let file = draft.moves_file;
     let [first, second, last] = COLUMNS;
     let names = [first, second, if draft.clock == Clock::Rates { RATE } else { last }];
@@ -117,37 +116,43 @@ fn list_of_moves(mut table: Table<'_>, header: &[String], header_line: u64, draf
         draft.moves_unread = true;
         return;
     };
-    let mut pending: Vec<(u32, String, String, u64)> = Vec::new();
-    while let Some((row, line)) = table.next(draft) {
-        let from_state = row.get(from).map(|name| draft.state(name, file, line));
-        if let Some(state) = from_state {
-            draft.states[state as usize].row.get_or_insert(line);
+    let (from, to) = if transpose { (to, from) } else { (from, to) };
+    // States are numbered as they are met, and anew when it is known which of them have moves.
+    let mut leaving: Vec<u32> = Vec::new();
+    while let Some(line) = table.next(draft) {
+        let from_state = table.cell(from).map(|name| match leaving.last() {
+            // Lists are mostly sorted by the state that is left.
+            Some(last) if *draft.states[*last as usize].name == *name => *last,
+            _ => draft.state(name, file, line),
+        });
+        if let Some(state) = from_state
+            && draft.states[state as usize].row.is_none()
+        {
+            draft.states[state as usize].row = Some(line);
+            leaving.push(state);
         }
-        let too_long = row.iter().skip(header.len()).any(|cell| !cell.is_empty());
-        match (from_state, row.get(to), row.get(probability)) {
+        let too_long = (header.len()..table.row.len()).any(|column| table.cell(column) != Some(""));
+        match (from_state, table.cell(to), table.cell(probability)) {
             (Some(from), Some(to), Some(value)) if !too_long => {
-                pending.push((from, to.to_owned(), decimal_point(value, table.delimiter), line));
+                let to = draft.state(to, file, line);
+                add_move(draft, from, to, &decimal_point(value, table.delimiter), line);
             }
             _ => {
-                let said = format!("the line has {} cells, the header {}", row.len(), header.len());
+                let said = format!("the line has {} cells, the header {}", table.row.len(), header.len());
                 let remedy = "give every line the cells of the header; put quotes around a cell with a comma in it";
                 let mut fault = Fault::new(FaultKind::Shape, draft.place(file, line), said, remedy);
-                fault.state = row.get(from).map(str::to_owned);
+                fault.state = table.cell(from).map(str::to_owned);
                 if let Some(state) = from_state {
                     draft.states[state as usize].faulty = true;
                 }
-                draft.fault(fault.valued(shortened(&row.iter().collect::<Vec<_>>().join(","))));
+                draft.fault(fault.valued(shortened(&table.cells().collect::<Vec<_>>().join(","))));
             }
         }
     }
-    draft.declare();
-    for (from, to, value, line) in pending {
-        let to = draft.state(&to, file, line);
-        add_move(draft, from, to, &value, line);
-    }
+    draft.renumber(&leaving);
 }
 
-fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut Draft) {
+fn square(mut table: Table<'_, '_>, header: &[String], header_line: u64, transpose: bool, draft: &mut Draft) {
     let file = draft.moves_file;
     let names = &header[1..];
     let mut refused = |kind, said: String, remedy: &str| {
@@ -169,47 +174,47 @@ fn square(mut table: Table<'_>, header: &[String], header_line: u64, draft: &mut
             return refused(FaultKind::DuplicateName, said, "give every state one column");
         }
     }
-    for name in names {
-        draft.state(name, file, header_line);
+    let states: Vec<u32> = names.iter().map(|name| draft.state(name, file, header_line)).collect();
+    draft.turn_hint = Some(turn_hint(transpose));
+    if transpose {
+        draft.states.iter_mut().for_each(|state| state.row = Some(header_line));
     }
     let mut seen: HashMap<String, u64> = HashMap::new();
-    let mut column_sums = vec![0.0; names.len()];
-    while let Some((row, line)) = table.next(draft) {
-        let name = &row[0];
+    while let Some(line) = table.next(draft) {
+        let name = table.cell(0).unwrap_or_default();
         let place = draft.place(file, line);
-        if !column_of.contains_key(name) {
+        let Some(own) = column_of.get(name).map(|column| states[*column]) else {
             let remedy = did_you_mean(name, names.iter().map(String::as_str), "every row needs a column of its name");
             let said = format!("the row `{name}` has no column");
             draft.fault(Fault::new(FaultKind::UnknownState, place, said, remedy).about(name));
             continue;
-        }
+        };
         if let Some(first) = seen.insert(name.to_owned(), line) {
             let said = format!("the row of `{name}` is there twice (first on line {first})");
             draft.fault(Fault::new(FaultKind::DuplicateName, place, said, "keep one").about(name));
             continue;
         }
-        let from = draft.state(name, file, line);
-        draft.states[from as usize].row = Some(line);
-        if row.len() != header.len() {
-            let said = format!("the row of `{name}` has {} cells, the header {}", row.len(), header.len());
-            draft
-                .fault(Fault::new(FaultKind::Shape, place, said, "give every row the cells of the header").about(name));
-            draft.states[from as usize].faulty = true;
+        if !transpose {
+            draft.states[own as usize].row = Some(line);
+        }
+        if table.row.len() != header.len() {
+            let said = format!("the row of `{name}` has {} cells, the header {}", table.row.len(), header.len());
+            let remedy = "give every row the cells of the header";
+            draft.fault(Fault::new(FaultKind::Shape, place, said, remedy).about(name));
+            // The states that lack a move then.
+            let lacking = if transpose { states.as_slice() } else { &[own] };
+            lacking.iter().for_each(|state| draft.states[*state as usize].faulty = true);
             continue;
         }
-        for (column, written) in row.iter().skip(1).enumerate().filter(|(_, written)| !written.is_empty()) {
+        for (written, other) in table.cells().skip(1).zip(&states).filter(|(written, _)| !written.is_empty()) {
             let written = decimal_point(written, table.delimiter);
-            if let Ok(number) = Number::parse(&written) {
-                if number.is_zero() {
-                    continue;
-                }
-                column_sums[column] += number.to_f64();
+            if Number::parse(&written).is_ok_and(|number| number.is_zero()) {
+                continue;
             }
-            let to = draft.state(&names[column], file, header_line);
+            let (from, to) = if transpose { (*other, own) } else { (own, *other) };
             add_move(draft, from, to, &written, line);
         }
     }
-    hint_at_transposition(draft, &column_sums);
 }
 
 /// Whether a line is one of a list of moves, such as `a,b,0.5`, which a header never is.
@@ -219,27 +224,16 @@ fn is_a_move(line: &[String]) -> bool {
     !from.is_empty() && !is_number(from) && !is_number(to) && is_number(probability)
 }
 
-/// When every column sums to one and some row does not, the table is most likely written the other way round.
-fn hint_at_transposition(draft: &mut Draft, column_sums: &[f64]) {
-    let is_one = |sum: &f64| (sum - 1.0).abs() <= 1e-9;
-    if column_sums.is_empty() || !column_sums.iter().all(is_one) {
-        return;
-    }
-    let mut row_sums = vec![0.0; draft.states.len()];
-    for one in &draft.moves {
-        if let Some(Written::Number(number)) = &one.value {
-            row_sums[one.from as usize] += number.to_f64();
-        }
-    }
-    if !row_sums.iter().all(is_one) {
-        let said = "every column sums to 1, but not every row: the table seems to list moves from column to row";
-        let place = draft.place(draft.moves_file, 0);
-        draft.fault(Fault::new(FaultKind::RowSum, place, said, "transpose the table: one row for each state left"));
+/// What to do about a table of which every column sums to one and not every row.
+pub(super) fn turn_hint(is_turned: bool) -> &'static str {
+    if is_turned {
+        "read it without --transpose"
+    } else {
+        "transpose the table, or read it with --transpose: one row for each state left"
     }
 }
 
 fn add_move(draft: &mut Draft, from: u32, to: u32, value: &str, line: u64) {
-    let place = draft.place(draft.moves_file, line);
-    let value = draft.written(value, Some(from), place);
+    let value = draft.written(value, Some(from), draft.moves_file, line);
     draft.moves.push(DraftMove { from, to, value, line });
 }

@@ -11,10 +11,12 @@ use toml::de::{DeTable, DeValue};
 use super::Clock;
 use super::draft::{Draft, DraftMove, NamedList, Written};
 use super::fault::{Fault, FaultKind, ModelError, Place, did_you_mean, shortened};
+use super::input::Input;
+use super::kind::Kind;
 use super::number::Number;
 use super::quantity::Quantity;
 use super::tolerance::{Tolerance, ToleranceKey};
-use super::{source, table};
+use super::{InputFile, ReadOptions};
 
 const KEYS: [&str; 13] = [
     "title",
@@ -36,7 +38,8 @@ pub(super) fn read(
     text: &str,
     file: Option<&str>,
     directory: &Path,
-) -> Result<(Draft, Vec<super::InputFile>), ModelError> {
+    options: &ReadOptions,
+) -> Result<(Draft, Vec<InputFile>), ModelError> {
     let text = text.strip_prefix('\u{feff}').unwrap_or(text);
     let mut reader = Reader { draft: Draft::default(), text, lines: Lines::of(text), inputs: Vec::new() };
     reader.draft.files.extend(file.map(Arc::from));
@@ -47,7 +50,7 @@ pub(super) fn read(
     if !reader.draft.faults.is_empty() {
         return Err(ModelError::Faulty(reader.draft.faults));
     }
-    reader.model(document.get_ref(), directory)?;
+    reader.model(document.get_ref(), directory, options)?;
     Ok((reader.draft, reader.inputs))
 }
 
@@ -55,7 +58,7 @@ pub(super) struct Reader<'t> {
     pub(super) draft: Draft,
     text: &'t str,
     lines: Lines,
-    inputs: Vec<super::InputFile>,
+    inputs: Vec<InputFile>,
 }
 
 impl Reader<'_> {
@@ -85,7 +88,7 @@ impl Reader<'_> {
         self.draft.place(0, self.line(span))
     }
 
-    fn model(&mut self, document: &DeTable<'_>, directory: &Path) -> Result<(), ModelError> {
+    fn model(&mut self, document: &DeTable<'_>, directory: &Path, options: &ReadOptions) -> Result<(), ModelError> {
         let entries: HashMap<&str, &Spanned<DeValue<'_>>> =
             document.iter().map(|(key, value)| (key.get_ref().as_ref(), value)).collect();
         self.check_keys(document);
@@ -94,16 +97,18 @@ impl Reader<'_> {
             self.draft.declared = self.names(absorbing, "absorbing");
         }
         match (entries.get("moves"), entries.get("moves_file")) {
-            (Some(moves), file) => {
-                if let Some(file) = file {
+            (None, Some(file)) => self.moves_file(file, directory, options)?,
+            (moves, file) => {
+                options.look_without_table()?;
+                if let (Some(_), Some(file)) = (moves, file) {
                     let said = "the model has both [moves] and moves_file";
                     let fault = Fault::new(FaultKind::Shape, self.place(&file.span()), said, "keep one of the two");
                     self.draft.fault(fault);
                 }
-                self.moves(moves);
+                if let Some(moves) = moves {
+                    self.moves(moves);
+                }
             }
-            (None, Some(file)) => self.moves_file(file, directory)?,
-            (None, None) => {}
         }
         self.draft.declare();
         if let Some(start) = entries.get("start") {
@@ -188,23 +193,28 @@ impl Reader<'_> {
             for (to, value) in row {
                 let line = self.line(&to.span());
                 let to = self.draft.state(to.get_ref(), 0, line);
-                let value = self.draft.written(&self.as_written(value), Some(from), self.draft.place(0, line));
+                let value = self.draft.written(&self.as_written(value), Some(from), 0, line);
                 self.draft.moves.push(DraftMove { from, to, value, line });
             }
         }
     }
 
-    fn moves_file(&mut self, value: &Spanned<DeValue<'_>>, directory: &Path) -> Result<(), ModelError> {
+    fn moves_file(
+        &mut self,
+        value: &Spanned<DeValue<'_>>,
+        directory: &Path,
+        options: &ReadOptions,
+    ) -> Result<(), ModelError> {
         let Some(name) = self.text(value, "moves_file") else {
             self.draft.moves_unread = true;
             return Ok(());
         };
         let path = directory.join(&name);
-        let (bytes, input) = source::read_bytes(&path)?;
-        self.inputs.push(input);
-        self.draft.files.push(path.display().to_string().into());
+        let input = Input::open(&path)?;
+        self.draft.files.push(input.name().into());
         self.draft.moves_file = self.draft.files.len() - 1;
-        table::read_moves(&bytes, &mut self.draft);
+        let kind = Kind::of_file(&path, input.head());
+        self.inputs.extend(self.draft.read_moves(kind, input, options)?);
         Ok(())
     }
 
@@ -220,8 +230,7 @@ impl Reader<'_> {
                 for (name, share) in shares {
                     let line = self.line(&name.span());
                     let state = self.draft.state(name.get_ref(), 0, line);
-                    let place = self.draft.place(0, line);
-                    if let Some(share) = self.draft.written(&self.as_written(share), None, place) {
+                    if let Some(share) = self.draft.written(&self.as_written(share), None, 0, line) {
                         self.draft.starts.push((state, share, line));
                     }
                 }

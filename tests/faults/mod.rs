@@ -37,5 +37,6 @@ pub(crate) fn options(start: &str, absorbing: &[&str]) -> ReadOptions {
     ReadOptions {
         start: (!start.is_empty()).then(|| start.to_owned()),
         absorbing: absorbing.iter().map(|name| (*name).to_owned()).collect(),
+        ..ReadOptions::default()
     }
 }
