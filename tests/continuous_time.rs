@@ -7,7 +7,7 @@ use std::sync::Arc;
 use studies::{asking, quantity, row, with_study};
 use tallystone::compare::{Comparison, Settings, Study, Verdict};
 use tallystone::exact::{Exact, Request};
-use tallystone::model::{Model, Silent, Ticks, Tolerance, ToleranceKey};
+use tallystone::model::{Model, ReadOptions, Silent, Ticks, Tolerance, ToleranceKey};
 use tallystone::sampling::{BLOCK, Grid, ObservedSampler, Plan, Sampler, Tally, sample, sample_with};
 use tallystone::statistics::pooled_chi_square;
 
@@ -110,6 +110,92 @@ fn stiff_rates_are_sampled_as_they_are_solved() {
         let comparison = run(model, study, study.plan().replications.unwrap(), 1);
         assert_eq!(comparison.verdict, Verdict::Agree, "{:?} {:?}", verdicts(&comparison), comparison.not_compared);
     });
+}
+
+/// What is left and what has entered each end at a time, by the textbook series with hundreds of terms in doubles.
+fn by_series(model: &Model, time: f64) -> (f64, Vec<f64>) {
+    let chain = model.chain();
+    let rate = |state: usize| chain.rate(state).map_or(0.0, |rate| rate.to_f64().value());
+    let largest = (0..chain.states()).map(rate).fold(0.0, f64::max);
+    let mut power = vec![0.0; chain.states()];
+    let start = chain.start();
+    start.targets.iter().enumerate().for_each(|(i, to)| power[*to as usize] += start.probability(i).to_f64().value());
+    let mut weight = (-largest * time).exp();
+    let mut mass = vec![0.0; chain.states()];
+    for k in 1..2000 {
+        mass.iter_mut().zip(&power).for_each(|(sum, mass)| *sum += weight * mass);
+        weight *= largest * time / f64::from(k);
+        let mut next = vec![0.0; chain.states()];
+        for state in 0..chain.states() {
+            let leaves = rate(state) / largest;
+            next[state] += power[state] * (1.0 - leaves);
+            let row = chain.row(state);
+            for (i, to) in row.targets.iter().enumerate() {
+                next[*to as usize] += power[state] * leaves * row.probability(i).to_f64().value();
+            }
+        }
+        power = next;
+    }
+    let of_ends = chain.ends().iter().map(|end| end.states.iter().map(|state| mass[*state]).sum());
+    let left = (0..chain.states()).filter(|state| chain.end_of(*state).is_none()).map(|state| mass[state]).sum();
+    (left, of_ends.collect())
+}
+
+#[test]
+fn the_law_agrees_with_the_textbook_series() {
+    let model = Model::from_toml(LOOP).unwrap();
+    let request = Request { law: true, levels: vec![0.01, 0.2, 0.9], times: vec![0.5], ..Request::default() };
+    let exact = Exact::solve(&model, &request, &Silent).unwrap();
+    let (law, ticks) = (exact.law().unwrap(), exact.ticks());
+    let edges = law.edges();
+    let mut looked = 0;
+    for (edge, count) in edges.iter().enumerate().step_by(edges.len() / 40) {
+        let time = ticks.time(*count);
+        // Beyond some hundreds of expected terms the weight of the first would vanish.
+        if time * 3.8 > 600.0 {
+            break;
+        }
+        looked += 1;
+        let (left, ends) = by_series(&model, time);
+        assert!((law.survival(*count).value - left).abs() < 1e-12, "{time}");
+        for (end, entered) in ends.iter().enumerate() {
+            assert!((law.at_edge(end, edge).value - entered).abs() < 1e-12, "{time} {end}");
+        }
+    }
+    assert!(looked > 5, "{looked} of {}", edges.len());
+    for p in [0.01, 0.2] {
+        let quantile = exact.answer(&quantity(&format!("time_quantile:{p}"))).unwrap().unwrap();
+        assert!(quantile.high - quantile.low < 1e-9 * quantile.value, "{quantile:?}");
+        let (before, after) = (by_series(&model, quantile.low).0, by_series(&model, quantile.high).0);
+        assert!(1.0 - before <= p + 1e-12 && 1.0 - after >= p - 1e-12, "{p}: {quantile:?}");
+    }
+    let survival = exact.answer(&quantity("survival_probability:0.5")).unwrap().unwrap();
+    assert!((survival.value - by_series(&model, 0.5).0).abs() < 1e-12);
+}
+
+#[test]
+fn one_chain_in_every_form_has_one_fingerprint() {
+    let toml = "clock = \"rates\"\nstart = \"1\"\nabsorbing = [\"3\"]\n[moves]\n1 = { 2 = 2.5, 3 = 0.125 }\n2 = { 1 = \"12\" }\n";
+    let wanted = Model::from_toml(toml).unwrap();
+    let place = tempfile::tempdir().unwrap();
+    let write = |name: &str, text: &str| std::fs::write(place.path().join(name), text).unwrap();
+    write("moves.csv", "from,to,rate\n1,2,2.50\n1,3,0.125\n2,1,12\n");
+    write("moves.mtx", "%%MatrixMarket matrix coordinate real general\n3 3 4\n1 2 2.5\n1 3 0.125\n2 1 1.2e1\n3 3 1\n");
+    let keys = "clock = \"rates\"\nstart = \"1\"\nabsorbing = [\"3\"]\n";
+    write("csv.toml", &format!("{keys}moves_file = \"moves.csv\"\n"));
+    write("mtx.toml", &format!("{keys}moves_file = \"moves.mtx\"\n"));
+    let options = ReadOptions { start: Some("1".into()), absorbing: vec!["3".into()], ..ReadOptions::default() };
+    for (name, options) in
+        [("moves.csv", &options), ("csv.toml", &ReadOptions::default()), ("mtx.toml", &ReadOptions::default())]
+    {
+        let model = Model::read(&place.path().join(name), options).unwrap_or_else(|error| panic!("{name}: {error}"));
+        assert_eq!(model.fingerprint(), wanted.fingerprint(), "{name}");
+        assert_eq!(model.chain().rate(0).unwrap().to_string(), "21/8");
+    }
+    // A list of rates beside a clock in steps is no list of probabilities.
+    write("steps.toml", "start = \"1\"\nabsorbing = [\"3\"]\nmoves_file = \"moves.csv\"\n");
+    let refused = Model::read(&place.path().join("steps.toml"), &ReadOptions::default()).unwrap_err().to_string();
+    assert!(refused.contains("set clock = \"rates\""), "{refused}");
 }
 
 // An exponential time with rate 3 in forty equally likely cells: chi-square, alarm odds 1e-6.
