@@ -1,5 +1,7 @@
 //! The model: a finite Markov chain with a start, read from a file or made in code, and proven well formed.
 //!
+//! Files are our own TOML, CSV tables, Matrix Market matrices and NumPy arrays; see [`Model::read`] and [`ReadOptions`].
+//!
 //! Limits of this version: the clock counts steps (discrete time); costs and hits are not read yet. States number up to
 //! 2³² − 1. Probabilities are kept exactly as written, as rationals; see [`Row`].
 //!
