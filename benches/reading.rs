@@ -52,7 +52,7 @@ fn main() -> io::Result<()> {
 /// Writes a model of so many states, the last of them absorbing.
 type Writer = fn(&mut BufWriter<File>, u64) -> io::Result<()>;
 
-const FORMS: [(&str, Writer); 1] = [("moves.csv", write_csv)];
+const FORMS: [(&str, Writer); 2] = [("moves.csv", write_csv), ("moves.mtx", write_matrix_market)];
 
 /// Every move of the model: from, to (from 1), probability.
 fn moves(states: u64) -> impl Iterator<Item = (u64, u64, &'static str)> {
@@ -65,6 +65,12 @@ fn moves(states: u64) -> impl Iterator<Item = (u64, u64, &'static str)> {
 fn write_csv(out: &mut BufWriter<File>, states: u64) -> io::Result<()> {
     writeln!(out, "from,to,probability")?;
     moves(states).try_for_each(|(from, to, probability)| writeln!(out, "{from},{to},{probability}"))
+}
+
+fn write_matrix_market(out: &mut BufWriter<File>, states: u64) -> io::Result<()> {
+    writeln!(out, "%%MatrixMarket matrix coordinate real general")?;
+    writeln!(out, "{states} {states} {}", moves(states).count())?;
+    moves(states).try_for_each(|(from, to, probability)| writeln!(out, "{from} {to} {probability}"))
 }
 
 fn read(path: &Path) -> io::Result<()> {

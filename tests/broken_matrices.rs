@@ -231,12 +231,17 @@ fn array_files_that_are_cut_or_something_else() {
     }
     let directory = tempfile::tempdir().unwrap();
     let path = directory.path().join("bench.npy");
-    fs::write(&path, "PK\x03\x04").unwrap();
     let said = "the file does not begin as an array file of NumPy does";
-    let read = Model::read(&path, &options("0", &[]));
-    let error = read.unwrap_err();
-    assert_eq!((error.faults()[0].kind, error.faults()[0].remedy.as_str()), (Syntax, save));
-    assert!(error.faults()[0].text.contains(said));
+    for (bytes, value, said, remedy) in [
+        (&b"0.5,0.5\n"[..], "0.5,0.", said, save),
+        (b"", "", said, save),
+        (b"\x1f\x8b\x08\x00", "", "the file is compressed", "unpack it first"),
+        (b"PK\x03\x04", "", "the file is compressed", "unpack it first"),
+    ] {
+        fs::write(&path, bytes).unwrap();
+        let read = Model::read(&path, &options("0", &[]));
+        hold(read, "no array", &[(Syntax, 0, "", value, said, remedy)]);
+    }
 }
 
 #[test]

@@ -1,7 +1,6 @@
 //! The checked chain: states, exact moves, ends, and the order in which classes are left.
 
 use std::collections::HashMap;
-use std::fmt::{self, Write};
 use std::sync::Arc;
 
 use dashu_ratio::RBig;
@@ -127,45 +126,82 @@ impl Chain {
     /// SHA-256 over the chain's meaning: names, exact probabilities in lowest terms, start and ends, in a fixed form.
     /// Two files that say the same chain in the same order have the same fingerprint, however they write it.
     pub fn fingerprint(&self) -> String {
-        let mut hash = Sha256::new();
-        let mut text = |part: &str| {
-            hash.update((part.len() as u64).to_le_bytes());
-            hash.update(part.as_bytes());
-        };
-        let mut part = String::new();
-        text(&format!("tallystone chain 1, {}", self.clock.name()));
+        let mut parts = Parts::default();
+        parts.text(&format!("tallystone chain 1, {}", self.clock.name()));
         for name in &self.names {
-            text(name);
+            parts.text(name);
         }
         let rows = std::iter::once(self.start()).chain((0..self.states()).map(|state| self.row(state)));
         for row in rows {
-            text("row");
-            // Written into one buffer, since there can be millions; writing to a text cannot fail.
-            let mut written = |what: fmt::Arguments<'_>| {
-                part.clear();
-                let _written = part.write_fmt(what);
-                text(&part);
-            };
+            parts.text("row");
             match row.weights {
                 Weights::Narrow { numerators, denominator } => {
-                    written(format_args!("{denominator}"));
-                    row.targets.iter().zip(numerators).for_each(|(to, weight)| written(format_args!("{to} {weight}")));
+                    parts.written(&[denominator]);
+                    row.targets
+                        .iter()
+                        .zip(numerators)
+                        .for_each(|(to, weight)| parts.written(&[u64::from(*to), *weight]));
                 }
                 Weights::Wide { numerators, denominator } => {
-                    written(format_args!("{denominator}"));
-                    row.targets.iter().zip(numerators).for_each(|(to, weight)| written(format_args!("{to} {weight}")));
+                    parts.text(&denominator.to_string());
+                    row.targets.iter().zip(numerators).for_each(|(to, weight)| parts.text(&format!("{to} {weight}")));
                 }
             }
         }
         for rate in &self.rates {
-            text(&format!("rate {rate}"));
+            parts.text(&format!("rate {rate}"));
         }
         for end in &self.ends {
-            text("end");
-            text(&end.name);
-            end.states.iter().for_each(|state| text(&state.to_string()));
+            parts.text("end");
+            parts.text(&end.name);
+            end.states.iter().for_each(|state| parts.written(&[*state as u64]));
         }
-        hexadecimal(hash)
+        parts.hash()
+    }
+}
+
+/// Texts to be hashed, each behind its length. They are collected first, since there are tens of millions of short ones.
+#[derive(Default)]
+struct Parts {
+    hash: Sha256,
+    open: Vec<u8>,
+}
+
+impl Parts {
+    /// Bytes that are worth hashing at once.
+    const ENOUGH: usize = 1 << 14;
+
+    fn text(&mut self, part: &str) {
+        self.open.extend((part.len() as u64).to_le_bytes());
+        self.open.extend(part.as_bytes());
+        if self.open.len() > Self::ENOUGH {
+            self.hash.update(&self.open);
+            self.open.clear();
+        }
+    }
+
+    /// Numbers in decimal digits, with a blank between them.
+    fn written(&mut self, numbers: &[u64]) {
+        // Digits from the last one on; two numbers of 64 bits have 40 at most.
+        let (mut digits, mut at) = ([b' '; 64], 64);
+        for number in numbers.iter().rev() {
+            at -= usize::from(at < 64);
+            let mut left = *number;
+            loop {
+                at -= 1;
+                digits[at] = b'0' + (left % 10) as u8;
+                left /= 10;
+                if left == 0 {
+                    break;
+                }
+            }
+        }
+        self.text(std::str::from_utf8(&digits[at..]).unwrap_or_default());
+    }
+
+    fn hash(mut self) -> String {
+        self.hash.update(&self.open);
+        hexadecimal(self.hash)
     }
 }
 

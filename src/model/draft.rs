@@ -231,6 +231,12 @@ impl Draft {
         }
     }
 
+    /// Makes room for so many states.
+    pub(super) fn expect(&mut self, states: usize) {
+        self.states.reserve(states);
+        self.index.reserve(states);
+    }
+
     /// The number of a state, given at its first mention.
     pub(super) fn state(&mut self, name: &str, file: usize, line: u64) -> u32 {
         if let Some(number) = self.index.get(name) {

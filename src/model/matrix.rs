@@ -109,6 +109,7 @@ impl Matrix {
                 let said = format!("the matrix has {states} rows, but only {entries} entries: most rows hold no moves");
                 return shape(draft, said, "give every state moves; if it is absorbing, a stay of 1");
             }
+            draft.expect(states as usize);
             for number in 0..states {
                 let state = draft.state(&(number + u64::from(first)).to_string(), draft.moves_file, 0);
                 draft.states[state as usize].row = Some(0);

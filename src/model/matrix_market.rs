@@ -206,11 +206,18 @@ fn entry<'l, R: BufRead>(lines: &'l Lines<R>, states: u32, draft: &Draft) -> Res
 
 /// A whole number of digits alone.
 fn whole(word: &[u8]) -> Option<u64> {
-    std::str::from_utf8(word).ok().filter(|word| word.bytes().all(|byte| byte.is_ascii_digit()))?.parse().ok()
+    word.iter().try_fold(0u64, |number, byte| {
+        let digit = byte.is_ascii_digit().then(|| u64::from(byte - b'0'))?;
+        number.checked_mul(10)?.checked_add(digit)
+    })
 }
 
 /// The value of an entry. The format knows neither fractions nor blanks within a number.
 fn value(text: &[u8], is_integer: bool, clock: Clock) -> Result<Number, BadValue> {
+    // Nearly every value; what is left is looked at more closely.
+    if !is_integer && let Some(number) = Number::plain(text).filter(|number| !number.exceeds_one()) {
+        return Ok(number);
+    }
     let bad = |kind, reason: &str, remedy| Err(BadValue { kind, reason: reason.to_owned(), remedy });
     let Some(text) = std::str::from_utf8(text).ok().filter(|text| !text.contains(['/', '_'])) else {
         return bad(FaultKind::NotANumber, &NumberFault::NotANumber.to_string(), HOW_TO_WRITE);

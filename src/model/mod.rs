@@ -1,6 +1,8 @@
 //! The model: a finite Markov chain with a start, read from a file or made in code, and proven well formed.
 //!
-//! The clock counts steps (discrete time, moves have probabilities) or runs in rates (continuous time). States number up to 2³² − 1. Probabilities and rates are kept exactly as written, as rationals; see [`Row`].
+//! Files are our own TOML, CSV tables, Matrix Market matrices and NumPy arrays; see [`Model::read`] and [`ReadOptions`].
+//! The clock counts steps (discrete time, moves have probabilities) or runs in rates (continuous time). States number up to
+//! 2³² − 1. Probabilities and rates are kept exactly as written, as rationals; see [`Row`].
 //!
 //! ```
 //! use tallystone::model::Model;

@@ -59,10 +59,10 @@ impl Number {
     /// # Ok::<(), tallystone::model::NumberFault>(())
     /// ```
     pub fn parse(text: &str) -> Result<Self, NumberFault> {
-        let text = text.trim();
-        if let Some(number) = plain(text.as_bytes()) {
+        if let Some(number) = Self::plain(text.as_bytes()) {
             return Ok(number);
         }
+        let text = text.trim();
         if text.len() > LONGEST {
             return Err(NumberFault::TooExtreme);
         }
@@ -76,6 +76,30 @@ impl Number {
                 Ok(Self::Ratio(Box::new(over / under)))
             }
         }
+    }
+
+    /// A short decimal of digits and a point alone: nearly every number of a large model.
+    pub(super) fn plain(text: &[u8]) -> Option<Self> {
+        let (mut mantissa, mut behind_point, mut digits) = (0u64, None, 0);
+        for byte in text {
+            match byte {
+                b'0'..=b'9' => {
+                    mantissa = mantissa.checked_mul(10)?.checked_add(u64::from(byte - b'0'))?;
+                    digits += 1;
+                    behind_point = behind_point.map(|count: u8| count + 1);
+                }
+                b'.' if behind_point.is_none() => behind_point = Some(0),
+                _ => return None,
+            }
+            if digits > NARROW_DIGITS {
+                return None;
+            }
+        }
+        let mut scale = behind_point.unwrap_or(0);
+        while scale > 0 && mantissa % 10 == 0 {
+            (mantissa, scale) = (mantissa / 10, scale - 1);
+        }
+        (digits > 0).then_some(Self::Decimal { mantissa, scale })
     }
 
     /// The exact value.
@@ -136,30 +160,6 @@ impl Number {
             Self::Ratio(value) => **value > RBig::ONE,
         }
     }
-}
-
-/// A short decimal of digits and a point alone: nearly every number of a large model.
-fn plain(text: &[u8]) -> Option<Number> {
-    let (mut mantissa, mut behind_point, mut digits) = (0u64, None, 0);
-    for byte in text {
-        match byte {
-            b'0'..=b'9' => {
-                mantissa = mantissa.checked_mul(10)?.checked_add(u64::from(byte - b'0'))?;
-                digits += 1;
-                behind_point = behind_point.map(|count: u8| count + 1);
-            }
-            b'.' if behind_point.is_none() => behind_point = Some(0),
-            _ => return None,
-        }
-        if digits > NARROW_DIGITS {
-            return None;
-        }
-    }
-    let mut scale = behind_point.unwrap_or(0);
-    while scale > 0 && mantissa % 10 == 0 {
-        (mantissa, scale) = (mantissa / 10, scale - 1);
-    }
-    (digits > 0).then_some(Number::Decimal { mantissa, scale })
 }
 
 fn decimal(text: &str) -> Result<Number, NumberFault> {

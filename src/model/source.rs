@@ -8,12 +8,15 @@ use std::sync::Arc;
 use sha2::{Digest, Sha256};
 
 use super::draft::Draft;
-use super::fault::ModelError;
+use super::fault::{Fault, FaultKind, ModelError};
 use super::input::{Input, as_text};
 use super::kind::Kind;
 use super::matrix::{Names, Reading};
 use super::number::Number;
 use super::{InputFile, LARGEST_CORRECTION, Model, matrix_market, npy, table, toml_file};
+
+/// How files that gzip and zip have packed begin.
+const PACKED: [&[u8]; 2] = [b"\x1f\x8b", b"PK\x03\x04"];
 
 /// What a file cannot say of itself, and how it is to be taken.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
@@ -175,6 +178,11 @@ impl Draft {
         };
         let reading = Reading { names, transpose: options.transpose };
         match kind {
+            _ if PACKED.iter().any(|magic| input.head().starts_with(magic)) => {
+                let place = self.place(self.moves_file, 0);
+                self.fault(Fault::new(FaultKind::Syntax, place, "the file is compressed", "unpack it first"));
+                self.moves_unread = true;
+            }
             Kind::MatrixMarket => matrix_market::read(&mut input, reading, self),
             Kind::Npy => npy::read(&mut input, reading, self),
             Kind::Toml | Kind::Table => table::read(&mut input, options.transpose, self),

@@ -2,7 +2,7 @@
 
 use std::collections::HashMap;
 
-use csv::ByteRecord;
+use csv::StringRecord;
 
 use super::Clock;
 use super::draft::{Draft, DraftMove};
@@ -23,40 +23,44 @@ const COMMENT: Option<u8> = Some(b'#');
 struct Table<'i, 's> {
     records: Records<&'i mut Input<'s>>,
     delimiter: u8,
-    row: ByteRecord,
+    row: StringRecord,
 }
 
 impl<'i, 's> Table<'i, 's> {
     fn of(input: &'i mut Input<'s>) -> Self {
         let delimiter = records::delimiter(input.head(), COMMENT);
-        Self { records: Records::new(input, delimiter, COMMENT), delimiter, row: ByteRecord::new() }
+        Self { records: Records::new(input, delimiter, COMMENT), delimiter, row: StringRecord::new() }
     }
 
     /// Reads the next row that is not blank; gives its line. Rows that are not text become faults.
     fn next(&mut self, draft: &mut Draft) -> Option<u64> {
-        // An input always reads; see there.
-        while self.records.read(&mut self.row).unwrap_or(false) {
-            let line = self.records.line(&self.row);
-            let is_text = |cell| std::str::from_utf8(cell).is_ok();
-            if !self.row.as_slice().is_ascii() && !self.row.iter().all(is_text) {
+        loop {
+            let mut row = std::mem::take(&mut self.row).into_byte_record();
+            // An input always reads; see there.
+            if !self.records.read(&mut row).unwrap_or(false) {
+                return None;
+            }
+            let line = self.records.line(&row);
+            if let Ok(row) = StringRecord::from_byte_record(row) {
+                self.row = row;
+                if !self.cells().all(str::is_empty) {
+                    return Some(line);
+                }
+            } else {
                 let place = draft.place(draft.moves_file, line);
                 let said = "the line is not UTF-8 text";
                 draft.fault(Fault::new(FaultKind::Syntax, place, said, "save the file as UTF-8"));
-            } else if !self.cells().all(str::is_empty) {
-                return Some(line);
             }
         }
-        None
     }
 
     /// A cell of the row that was read last, without the blanks around it.
     fn cell(&self, column: usize) -> Option<&str> {
-        // Rows that are not text never get here.
-        self.row.get(column).map(|cell| std::str::from_utf8(cell).unwrap_or_default().trim())
+        self.row.get(column).map(str::trim)
     }
 
     fn cells(&self) -> impl Iterator<Item = &str> {
-        (0..self.row.len()).filter_map(|column| self.cell(column))
+        self.row.iter().map(str::trim)
     }
 
     /// The first row, the line that the table is known by.
