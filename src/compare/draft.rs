@@ -238,15 +238,24 @@ fn method<'a>(
     }
 }
 
-/// What rounding to ticks can shift a mean by: half a tick each time that a state is held.
+/// What rounding to ticks can shift a mean by: half a tick each time that a state is held, of those that are counted.
 fn rounding(exact: &Exact<'_>, quantity: &Quantity, ticks: Ticks) -> f64 {
-    let is_time = matches!(quantity, Quantity::MeanTime | Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_));
-    if ticks.is_steps() || !is_time { 0.0 } else { exact.mean_moves() * ticks.length() }
+    let share = match quantity {
+        _ if ticks.is_steps() => return 0.0,
+        Quantity::MeanTime => 1.0,
+        Quantity::MeanTimeGiven(name) => exact.absorption(&named(exact, name)).low,
+        Quantity::MeanTimeGivenHit(name) => {
+            let hit = exact.answer(&Quantity::HitProbability(name.clone())).ok().flatten();
+            hit.map_or(0.0, |hit| hit.low)
+        }
+        _ => return 0.0,
+    };
+    exact.mean_moves() * ticks.length() / share
 }
 
 /// Rates so unlike one another that the ticks, which the slowest states choose, are too coarse for what is compared.
 fn is_fine_enough(exact: &Exact<'_>, quantity: &Quantity, bounds: Bounded, ticks: Ticks) -> Result<(), String> {
-    let off = exact.mean_moves() * ticks.length();
+    let off = rounding(exact, quantity, ticks).max(exact.mean_moves() * ticks.length());
     let size = match quantity {
         _ if ticks.is_steps() => return Ok(()),
         Quantity::MeanTime | Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_) | Quantity::SdTime => {

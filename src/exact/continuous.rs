@@ -144,7 +144,8 @@ impl Uniform {
     /// Relative error of [`Uniform::advance`].
     fn advance_error(&self) -> f64 {
         let terms = TERMS as f64;
-        terms * self.step_error + U2 * (terms * (20.0 + 3.0) + 3.0 * terms + 30.0 + INPUT)
+        // A weight has k factors Λt/k, each with the error of Λt too; so have the terms of the exponential.
+        terms * self.step_error + U2 * (2.0 * terms * (20.0 + INPUT + 10.0) + 3.0 * terms + 30.0 + INPUT)
     }
 }
 
@@ -222,7 +223,10 @@ impl ContinuousLaw {
         let digits = U2 * f64::from(u64::BITS) * (3.0 * n as f64 + 8.0);
         law.relative = (2.0 * error + digits + 2.0 * advance_error + U2 * 3.0 * width as f64) * (1.0 + 1e-6);
         if request.law {
-            let affordable = BUDGET / ((n * width) as f64 * 0.5 * squarings) / 2.0;
+            let moves: usize = law.uniform.moves.iter().map(Vec::len).sum();
+            let of_one = (n * width) as f64 * 0.5 * squarings + (TERMS * (moves + width)) as f64;
+            // Each cell takes two times at its end and one or two on the way.
+            let affordable = BUDGET / of_one / 4.0;
             let cell = CELL.max(2.0 * law.uniform.ends as f64 / MOST_KEPT).max(1.0 / affordable);
             law.edges = law.cut(cell, progress)?;
         }
