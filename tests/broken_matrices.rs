@@ -293,9 +293,9 @@ fn arrays_that_make_no_chain() {
         (
             [0.75, 0.5, 0.25, 0.5],
             &[
+                (RowSum, 0, "", "", "every column sums to 1, but not every row", "read it with --transpose"),
                 (RowSum, 0, "0", "1.25", "sum to 1.25", "correct one"),
                 (RowSum, 0, "1", "0.75", "sum to 0.75", "correct one"),
-                (RowSum, 0, "", "", "every column sums to 1, but not every row", "read it with --transpose"),
             ],
         ),
     ];

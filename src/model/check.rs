@@ -174,7 +174,8 @@ impl Draft {
         if column_sums.iter().all(|sum| (sum - 1.0).abs() <= LARGEST_CORRECTION) {
             let said = "every column sums to 1, but not every row: the table seems to be meant the other way round";
             let place = self.place(self.moves_file, 0);
-            self.fault(Fault::new(FaultKind::RowSum, place, said, remedy));
+            // First, since it explains the others.
+            self.faults.insert(0, Fault::new(FaultKind::RowSum, place, said, remedy));
         }
     }
 

@@ -271,6 +271,25 @@ mod tests {
         assert_eq!(Number::parse(&"1".repeat(1001)), Err(NumberFault::TooExtreme));
     }
 
+    // The standard library rounds a decimal to the nearest double.
+    #[test]
+    fn the_nearest_double_is_the_one_that_the_text_reads_as() {
+        for text in [
+            "0.1",
+            "0.92",
+            "0.3333333333333333",
+            "1e-19",
+            "0.0000000000000000001",
+            "9007199254740993",
+            "0.9007199254740993",
+            "1.7976931348623157",
+            "0.000",
+            "1e-300",
+        ] {
+            assert_eq!(Number::parse(text).unwrap().to_f64(), text.parse::<f64>().unwrap(), "{text}");
+        }
+    }
+
     #[test]
     fn comparisons_are_exact_beside_one() {
         assert!(!Number::parse("1").unwrap().exceeds_one());
