@@ -125,7 +125,7 @@ impl Sampler {
     #[inline]
     pub fn walk(&self, rng: &mut Lcg128CmDxsm64, progress: &dyn Progress) -> Result<Outcome, Interrupted> {
         if self.holding.is_some() {
-            return self.follow(rng, progress, |_| {});
+            return self.walk_in_ticks(rng, progress);
         }
         let mut place = self.resolve(self.tables.draw(self.places, rng), rng);
         if place >= self.places {
@@ -147,6 +147,12 @@ impl Sampler {
                 return Err(Interrupted { done: 0 });
             }
         }
+    }
+
+    /// Apart from the walk in steps, whose loop is worth its registers.
+    #[inline(never)]
+    fn walk_in_ticks(&self, rng: &mut Lcg128CmDxsm64, progress: &dyn Progress) -> Result<Outcome, Interrupted> {
+        self.follow(rng, progress, |_| {})
     }
 
     /// Walks one path and shows every place that it comes to. Places number the reachable transient states, ends come after
