@@ -51,7 +51,7 @@ fn quantities(arguments: &Arguments, model: &Model) -> Result<Vec<Quantity>, Fai
 fn answer(exact: &Exact<'_>, quantity: Quantity) -> Answer {
     let (answer, note) = match exact.answer(&quantity) {
         Ok(Some(answer)) => (Some(answer), None),
-        Ok(None) => (None, Some("undefined, since no replication can finish there".to_owned())),
+        Ok(None) => (None, Some("undefined, since no replication comes there".to_owned())),
         Err(refusal) => (None, Some(refusal.to_string())),
     };
     Answer { quantity, exact: answer, note }

@@ -182,13 +182,11 @@ fn method<'a>(
     ticks: Ticks,
 ) -> Result<Chosen<'a>, String> {
     let undefined = || "it is undefined under the model".to_owned();
-    if matches!(quantity, Quantity::Law) {
-        let law = exact.law_in_ticks().map_err(ToString::to_string)?;
-        let curves = Curves::new(exact, law);
-        let no_tolerance = matches!(given, Some(Tolerance::Absolute(value)) if value == 0.0);
-        return Ok(if no_tolerance { Chosen::of(ChiSquare(curves)) } else { Chosen::of(Band(curves)) });
-    }
-    let bounds = answer.ok_or_else(undefined)?;
+    let bounds = match quantity {
+        // The distance from the exact law, which is 0.
+        Quantity::Law => Bounded::exactly(0.0),
+        _ => answer.ok_or_else(undefined)?,
+    };
     let clock = ticks.per_unit();
     is_fine_enough(exact, quantity, bounds, ticks)?;
     match quantity {
@@ -226,15 +224,18 @@ fn method<'a>(
         | Quantity::MeanTimeGivenHit(_) => of_observable(exact, quantity, bounds, ticks),
         Quantity::TimeQuantile(p) => {
             let law = exact.law_in_ticks().map_err(ToString::to_string)?;
-            let counted = law.quantile(*p).ok_or(UNKNOWN_SHAPE)?;
+            let counted =
+                law.quantile(*p).ok_or("the law of the time, as it is counted, does not decide this quantile")?;
             let quantile = Quantile { p: *p, exact: counted, law, unit: clock };
             let default = tolerance::of_quantile(&quantile);
             Ok(Chosen::with(quantile, default))
         }
-        Quantity::Law => Err(UNKNOWN_SHAPE.to_owned()),
-        // The list of quantities may grow before their methods do.
-        #[expect(unreachable_patterns, reason = "see above")]
-        _ => Err("this version has no method for it".to_owned()),
+        Quantity::Law => {
+            let law = exact.law_in_ticks().map_err(ToString::to_string)?;
+            let curves = Curves::new(exact, law);
+            let no_tolerance = matches!(given, Some(Tolerance::Absolute(value)) if value == 0.0);
+            Ok(if no_tolerance { Chosen::of(ChiSquare(curves)) } else { Chosen::of(Band(curves)) })
+        }
     }
 }
 
@@ -248,24 +249,44 @@ fn rounding(exact: &Exact<'_>, quantity: &Quantity, ticks: Ticks) -> f64 {
             let hit = exact.answer(&Quantity::HitProbability(name.clone())).ok().flatten();
             hit.map_or(0.0, |hit| hit.low)
         }
+        Quantity::MeanCost(name) => return steepness(exact, name) * exact.mean_moves() * ticks.length(),
         _ => return 0.0,
     };
     exact.mean_moves() * ticks.length() / share
 }
 
+/// The most that a tick can add to a cost, in its unit a clock unit.
+fn steepness(exact: &Exact<'_>, cost: &str) -> f64 {
+    let model = exact.model();
+    model.cost_named(cost).map_or(0.0, |number| model.costs()[number].steepest())
+}
+
 /// Rates so unlike one another that the ticks, which the slowest states choose, are too coarse for what is compared.
 fn is_fine_enough(exact: &Exact<'_>, quantity: &Quantity, bounds: Bounded, ticks: Ticks) -> Result<(), String> {
-    let off = rounding(exact, quantity, ticks).max(exact.mean_moves() * ticks.length());
-    let size = match quantity {
-        _ if ticks.is_steps() => return Ok(()),
-        Quantity::MeanTime | Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_) | Quantity::SdTime => {
-            bounds.value
+    let off_time = exact.mean_moves() * ticks.length();
+    let deviation = |variance: Quantity| root_of(exact, &variance);
+    let is_fine = |off: f64, size: f64| off <= 1e-3 * size;
+    let cost_is_fine =
+        |name: &String| is_fine(steepness(exact, name) * off_time, deviation(Quantity::VarianceCost(name.clone())));
+    let is_fine_enough = match quantity {
+        _ if ticks.is_steps() => true,
+        Quantity::MeanTime | Quantity::MeanTimeGiven(_) | Quantity::MeanTimeGivenHit(_) => {
+            is_fine(rounding(exact, quantity, ticks), bounds.value)
         }
-        Quantity::VarianceTime => bounds.value.sqrt(),
-        _ => return Ok(()),
+        Quantity::SdTime | Quantity::VarianceTime => is_fine(off_time, deviation(Quantity::VarianceTime)),
+        Quantity::MeanCost(name) | Quantity::VarianceCost(name) => cost_is_fine(name),
+        Quantity::CovarianceTimeCost(name) => {
+            cost_is_fine(name) && is_fine(off_time, deviation(Quantity::VarianceTime))
+        }
+        _ => true,
     };
     let text = "the rates of the model differ by so much that this version cannot sample it finely enough";
-    if off > 1e-3 * size { Err(text.to_owned()) } else { Ok(()) }
+    if is_fine_enough { Ok(()) } else { Err(text.to_owned()) }
+}
+
+/// The standard deviation that belongs to a variance.
+fn root_of(exact: &Exact<'_>, variance: &Quantity) -> f64 {
+    exact.answer(variance).ok().flatten().map_or(0.0, |variance| variance.value.sqrt())
 }
 
 fn squares(shape: &Shape) -> Result<Squares, &'static str> {
@@ -290,11 +311,7 @@ fn of_observable<'a>(
         }
         Quantity::CovarianceTimeCost(of) => {
             let spread = Spread::of(&shape).ok_or(UNKNOWN_SHAPE)?;
-            let deviation = |quantity: &Quantity| {
-                let variance = exact.answer(quantity).ok().flatten();
-                variance.map_or(0.0, |variance| variance.value.sqrt())
-            };
-            let product = deviation(&Quantity::VarianceCost(of.clone())) * deviation(&Quantity::VarianceTime);
+            let product = root_of(exact, &Quantity::VarianceCost(of.clone())) * root_of(exact, &Quantity::VarianceTime);
             let units = (unit, ticks.per_unit());
             let covariance = Covariance { cost: observable, units, exact: bounds, spread };
             Ok(Chosen::with(covariance, tolerance::of_covariance(product)))

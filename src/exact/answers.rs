@@ -109,7 +109,7 @@ impl<'a> Exact<'a> {
         let reachable =
             chain.ends().iter().map(|end| end.states.iter().any(|state| chain.is_reachable(*state))).collect();
         let all: Vec<usize> = (0..chain.ends().len()).collect();
-        let only = only_time(chain, &all).filter(|time| model.clock() == Clock::Steps || *time == 0);
+        let only = only_time(chain, &all);
         if let Some(time) = only {
             linear.mean = Bounded::exactly(time as f64);
             linear.variance = Bounded::exactly(0.0);
@@ -208,8 +208,7 @@ impl<'a> Exact<'a> {
     /// # Panics
     /// When there is no such end.
     pub fn only_time(&self, ends: &[usize]) -> Option<u64> {
-        // In continuous time only a start in the ends takes one time.
-        only_time(self.model.chain(), ends).filter(|time| self.is_in_steps() || *time == 0)
+        only_time(self.model.chain(), ends)
     }
 
     /// A quantile that is a number of ticks, in clock units: the truth lies after the tick before it.

@@ -40,7 +40,7 @@ impl Gathered<'_> {
     }
 
     fn error(&self) -> f64 {
-        self.losses.map_or(0.0, |losses| losses.error + 3.0 * U2).max(0.0) + self.gains.error
+        self.losses.map_or(0.0, |losses| losses.error + 3.0 * U2) + self.gains.error
     }
 
     /// What a visit of a state adds while it lasts, in the mean, with its absolute error.
@@ -141,7 +141,8 @@ impl Products {
         } else {
             self.sum = self.sum.sum(weight.times(d.times(e)));
             self.size += weight.hi * size * (1.0 + 1e-10);
-            self.absolute += weight.hi * slack;
+            // Deviations may be so small that their product underflows.
+            self.absolute += weight.hi * (slack + f64::MIN_POSITIVE);
         }
         self.terms += 1.0;
     }

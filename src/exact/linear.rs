@@ -96,8 +96,7 @@ impl Linear {
         }
         let variance = narrower(squares, second_moment);
         let variance = variance.ok_or_else(around_start)?;
-        let transient: Vec<usize> = stopped.classes().iter().flatten().map(|state| *state as usize).collect();
-        reference::confirm(chain, &transient, &holding, mean_bound)?;
+        reference::confirm(chain, &going_on().collect::<Vec<_>>(), &holding, mean_bound)?;
         Ok(Self { ends, errors, mean: mean_bound, variance, longest, moves, costs })
     }
 }

@@ -1,6 +1,6 @@
 //! Which outcomes can happen at all: facts about the moves alone, without any rounding.
 
-use crate::model::Chain;
+use crate::model::{Chain, Clock};
 
 /// Work, in moves, after which the search for the cycle of reachable sets ends.
 const WORK_LIMIT: u64 = 100_000_000;
@@ -173,7 +173,8 @@ pub(super) fn only_time(chain: &Chain, ends: &[usize]) -> Option<u64> {
             }
         }
     }
-    only
+    // In continuous time only a start in the ends takes one time.
+    only.filter(|time| chain.clock() == Clock::Steps || *time == 0)
 }
 
 #[cfg(test)]

@@ -31,6 +31,12 @@ impl Cost {
         found.map_or(0, |at| self.moves[at].1)
     }
 
+    /// The largest amount, in size, of a step or clock unit spent in a state, in the cost's unit.
+    pub fn steepest(&self) -> f64 {
+        let largest = self.visits.iter().map(|(_, amount)| amount.unsigned_abs()).max().unwrap_or(0);
+        largest as f64 / self.denominator as f64
+    }
+
     /// Whether nothing accumulates while a state is held.
     pub fn is_of_moves_alone(&self) -> bool {
         self.visits.iter().all(|(_, amount)| *amount == 0)
